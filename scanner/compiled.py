@@ -1,0 +1,58 @@
+"""The one door to numba: every kernel is compiled with the same flags and cached by the hash of all kernel sources.
+
+Kernels hold no lock (``nogil``) and use plain IEEE arithmetic (no fast-math, no contraction), so that their
+results have the same bits on every processor.
+"""
+
+from __future__ import annotations
+
+import getpass
+import hashlib
+import os
+import tempfile
+from collections.abc import Callable
+from pathlib import Path
+from typing import TypeVar
+
+import llvmlite
+import numba
+
+Function = TypeVar("Function", bound=Callable[..., object])
+
+KERNEL_ROOMS = ("compiled.py", "elementary.py", "tables", "bounce", "indicators")
+
+
+def _sources_fingerprint() -> str:
+    """Hash the sources that hold kernels, and the compiler's versions.
+
+    numba looks only at the file of the cached function itself, so a change in a kernel that another one calls
+    would go unnoticed; a folder named by this hash cannot be stale.
+    """
+    package = Path(__file__).parent
+    digest = hashlib.sha256(f"{numba.__version__} {llvmlite.__version__}".encode())
+    for room in KERNEL_ROOMS:
+        path = package / room
+        for source in sorted(path.rglob("*.py")) if path.is_dir() else [path]:
+            digest.update(source.read_bytes())
+    return digest.hexdigest()[:16]
+
+
+def cache_folder() -> Path:
+    """Folder of compiled kernels: ``SCANNER_CACHE`` or a node-local temporary folder, by user and source hash."""
+    base = os.environ.get("SCANNER_CACHE") or Path(tempfile.gettempdir()) / f"scanner-kernels-{getpass.getuser()}"
+    return Path(base) / _sources_fingerprint()
+
+
+numba.config.CACHE_DIR = str(cache_folder())
+
+
+def kernel(function: Function) -> Function:
+    """Compile a function of numbers and flat arrays to machine code on first use, kept on disk."""
+    compiled: Function = numba.njit(function, nogil=True, cache=True, error_model="numpy", fastmath=False)
+    return compiled
+
+
+def inlined(function: Function) -> Function:
+    """Compile a small scalar function that is copied into the kernels that call it, so that their loops vectorise."""
+    compiled: Function = numba.njit(function, nogil=True, inline="always", error_model="numpy", fastmath=False)
+    return compiled

@@ -1,0 +1,154 @@
+"""Register of every stored variable: dimensions, type, units, meaning and where it is defined.
+
+A variable that is not listed here cannot be stored; the store, the summary, the exports and the documentation
+read this list and nothing else.  Dimensions named here come after those of the swept parameters.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+TABLE_STATUS = ("pending", "done", "not_convex", "failed")
+VERDICTS = ("pending", "regular_rotational", "regular_librational", "chaotic", "undecided")
+PENDING, DONE, NOT_CONVEX, FAILED = range(4)
+REGULAR_ROTATIONAL, REGULAR_LIBRATIONAL, CHAOTIC, UNDECIDED = range(1, 5)
+
+P_BINS = 20
+PERIODS = tuple(range(2, 65))
+
+ROOT = "root"
+ORBITS = "orbits"
+
+
+@dataclass(frozen=True)
+class Quantity:
+    """One stored variable.
+
+    ``flags`` lists the meanings of the codes 0, 1, 2, ... of a variable that is a code; code 0 is "pending".
+    ``units`` is "1" where dimensionless, "length" for the family's own unit of length.
+    """
+
+    name: str
+    group: str
+    dims: tuple[str, ...]
+    dtype: str
+    units: str
+    long_name: str
+    reference: str = ""
+    flags: tuple[str, ...] = ()
+
+    @property
+    def fill_value(self) -> float | int:
+        """What a table that is not done holds: NaN, or 0 for whole numbers and codes."""
+        return float("nan") if self.dtype.startswith("float") else 0
+
+    def attributes(self) -> dict[str, object]:
+        """CF attributes of the variable."""
+        found: dict[str, object] = {"long_name": self.long_name, "units": self.units}
+        if self.flags:
+            found["flag_values"] = list(range(len(self.flags)))
+            found["flag_meanings"] = " ".join(self.flags)
+        if self.reference:
+            found["references"] = self.reference
+        return found
+
+
+def _root(name: str, long_name: str, *dims: str, units: str = "1", reference: str = "") -> Quantity:
+    return Quantity(name, ROOT, dims, "float64", units, long_name, reference)
+
+
+def _orbit(name: str, long_name: str, *dims: str, units: str = "1", reference: str = "") -> Quantity:
+    return Quantity(name, ORBITS, ("orbit", *dims), "float64", units, long_name, reference)
+
+
+_SANTALO = "Santalo, Integral Geometry and Geometric Probability, 1976; Chernov, J. Stat. Phys. 88:1, 1997"
+_WEIGHTED = "Das, Saiki, Sander and Yorke, Nonlinearity 30:4111, 2017"
+_LASKAR = "Laskar, Icarus 88:266, 1990"
+_BERRY_ROBNIK = "Berry and Robnik, J. Phys. A 17:2413, 1984"
+
+_QUANTITIES = (
+    Quantity("table_status", ROOT, (), "int8", "1", "state of the table", flags=TABLE_STATUS),
+    _root("regular_area_fraction", "regular fraction of the section area ds dp"),
+    _root("regular_area_fraction_stderr", "standard error of the regular fraction of the section area"),
+    _root("regular_area_fraction_replicates", "regular fraction of the section area by replicate", "replicate"),
+    _root("regular_volume_fraction", "regular fraction of the energy shell", reference=_BERRY_ROBNIK),
+    _root("regular_volume_fraction_stderr", "standard error of the regular fraction of the energy shell"),
+    _root("regular_volume_fraction_replicates", "regular fraction of the energy shell by replicate", "replicate"),
+    _root(
+        "regular_area_fraction_by_horizon",
+        "regular fraction of the section area as judged after fewer bounces",
+        "horizon",
+    ),
+    _root(
+        "regular_volume_fraction_by_horizon",
+        "regular fraction of the energy shell as judged after fewer bounces",
+        "horizon",
+    ),
+    _root("chaotic_area_fraction", "chaotic fraction of the section area"),
+    _root("undecided_area_fraction", "fraction of the section area without a verdict"),
+    _root("rotational_area_fraction", "fraction of the section area on rotational invariant curves"),
+    _root("librational_area_fraction", "fraction of the section area inside islands"),
+    _root("regular_area_fraction_by_p", "regular fraction of the section area in a bin of p", "p_bin"),
+    _root("island_area_fraction", "fraction of the section area in islands of period q", "period"),
+    _root("lyapunov_per_bounce", "mean Lyapunov exponent of the chaotic orbits, per bounce"),
+    _root("lyapunov_per_bounce_stderr", "standard error of the mean Lyapunov exponent per bounce"),
+    _root(
+        "lyapunov_per_length",
+        "mean Lyapunov exponent of the chaotic orbits, per unit length",
+        units="length-1",
+        reference="Abramov's formula: exponent per bounce over the mean chord of the chaotic orbits",
+    ),
+    _root(
+        "lyapunov_per_length_stderr", "standard error of the mean Lyapunov exponent per length", units="length-1"
+    ),
+    _root(
+        "entropy_per_bounce",
+        "integral of the Lyapunov exponent of the chaotic orbits over the section measure",
+        reference="Pesin's formula",
+    ),
+    _root("diffusion_median", "median log10 of the frequency diffusion of the chaotic orbits", reference=_LASKAR),
+    _root("perimeter", "perimeter of the table", units="length"),
+    _root("area", "area of the table", units="length2"),
+    _root("curvature_min", "smallest curvature of the boundary", units="length-1"),
+    _root("curvature_max", "largest curvature of the boundary", units="length-1"),
+    _root("mean_chord", "mean chord over the sampled orbits", units="length"),
+    _root("mean_chord_exact", "mean chord over the section, pi A / L", units="length", reference=_SANTALO),
+    _root("boundary_error", "distance of the stored boundary from the family's curve, over its size"),
+    _orbit("s0", "arc length at the start as a fraction of the perimeter"),
+    _orbit("p0", "sine of the angle from the inward normal at the start"),
+    _orbit("lyapunov_per_bounce", "finite-time Lyapunov exponent per bounce"),
+    _orbit("rotation_number", "mean advance along the boundary per bounce, in perimeters", reference=_WEIGHTED),
+    _orbit(
+        "frequency_diffusion",
+        "log10 of the change of the rotation number between the two halves",
+        reference=_LASKAR,
+    ),
+    _orbit(
+        "agreement_digits",
+        "digits to which the weighted averages of advance, p and chord agree between the two halves",
+        reference=_WEIGHTED,
+    ),
+    _orbit("mean_chord", "mean chord of the orbit", units="length"),
+    Quantity("verdict", ORBITS, ("orbit",), "int8", "1", "what the orbit is", flags=VERDICTS),
+    Quantity(
+        "verdict_by_horizon",
+        ORBITS,
+        ("orbit", "horizon"),
+        "int8",
+        "1",
+        "what the orbit is as judged after fewer bounces",
+        flags=VERDICTS,
+    ),
+    Quantity("island_period", ORBITS, ("orbit",), "int16", "1", "q of the island p/q the orbit is in, 0 outside"),
+    Quantity("island_rotation", ORBITS, ("orbit",), "int16", "1", "p of the island p/q the orbit is in, 0 outside"),
+    _orbit(
+        "island_winding", "turns of the q-fold map about the island's centre, folded to [0, 1/2]", reference=_WEIGHTED
+    ),
+)
+
+REGISTER: dict[tuple[str, str], Quantity] = {(entry.group, entry.name): entry for entry in _QUANTITIES}
+
+
+def in_group(group: str) -> tuple[Quantity, ...]:
+    """Quantities of one group of the store, in the order they are listed."""
+    return tuple(entry for entry in _QUANTITIES if entry.group == group)
