@@ -1,0 +1,24 @@
+"""Reading a finished or half-finished sweep: picking tables, averaging, the summary, exports to other formats.
+
+Works on labelled data alone, so also on a store of last year.
+"""
+
+from __future__ import annotations
+
+from scanner.analysis.export import export_sweep
+from scanner.analysis.files import check_target, replace_whole
+from scanner.analysis.summary import failures, summarise
+from scanner.analysis.sweep import Study, average_tables, pick_tables, study_of, swept_parameters
+
+__all__ = [
+    "Study",
+    "average_tables",
+    "check_target",
+    "export_sweep",
+    "failures",
+    "pick_tables",
+    "replace_whole",
+    "study_of",
+    "summarise",
+    "swept_parameters",
+]

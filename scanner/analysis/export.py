@@ -1,0 +1,118 @@
+"""A sweep in other people's formats: netCDF-4 whole, csv and parquet as rows of tables or of orbits."""
+
+from __future__ import annotations
+
+import importlib.util
+from collections.abc import Iterator
+from pathlib import Path
+
+import numpy as np
+import pandas as pd
+import xarray as xr
+
+from scanner.analysis.files import check_target, replace_whole
+from scanner.analysis.rows import blocks, to_rows
+from scanner.analysis.sweep import swept_parameters
+from scanner.errors import ScannerError
+from scanner.quantities import DONE, ORBITS, TABLE_STATUS
+
+SUFFIXES = (".nc", ".csv", ".parquet")
+
+
+def export_sweep(tree: xr.DataTree, target: Path, *, orbits: bool = False, force: bool = False) -> None:
+    """Write a sweep to a file of another format, whole or not at all.
+
+    Parameters
+    ----------
+    tree
+        A sweep.
+    target
+        File to write: ``.nc`` is the whole sweep as netCDF-4 with the group ``orbits``; ``.csv`` and ``.parquet``
+        are rows with codes as words.
+    orbits
+        Rows of orbits of the tables that are done, instead of one row a table; netCDF holds both in any case.
+    force
+        Replace a file that exists.
+
+    Raises
+    ------
+    ScannerError
+        The file cannot or must not be written, or pyarrow is not installed.
+    """
+    check_target(target, SUFFIXES, force=force)
+    suffix = target.suffix.lower()
+    if suffix == ".parquet" and importlib.util.find_spec("pyarrow") is None:
+        raise ScannerError(f"{target}: parquet needs pyarrow, install it with: pip install 'scanner[parquet]'")
+    with replace_whole(target) as partial:
+        if suffix == ".nc":
+            _write_netcdf(tree, partial)
+        elif suffix == ".csv":
+            _write_csv(_frames(tree, orbits=orbits), partial)
+        else:
+            _write_parquet(_frames(tree, orbits=orbits), partial)
+
+
+def _frames(tree: xr.DataTree, *, orbits: bool) -> Iterator[pd.DataFrame]:
+    """Rows of tables or of orbits, in blocks of bounded size."""
+    names = swept_parameters(tree)
+    root = tree.to_dataset()
+    if not orbits:
+        yield from (to_rows(block, names) for block in blocks(root, names))
+        return
+    with_status = tree[ORBITS].to_dataset().assign(table_status=root["table_status"].drop_encoding())
+    for block in blocks(with_status, [*names, "orbit"]):
+        rows = to_rows(block, [*names, "orbit"])
+        yield rows[rows["table_status"] == TABLE_STATUS[DONE]].drop(columns="table_status")
+
+
+def _write_csv(frames: Iterator[pd.DataFrame], path: Path) -> None:
+    for number, frame in enumerate(frames):
+        frame.to_csv(path, mode="a" if number else "w", header=number == 0, index=False, encoding="utf-8")
+
+
+def _write_parquet(frames: Iterator[pd.DataFrame], path: Path) -> None:
+    import pyarrow as pa
+    import pyarrow.parquet as pq
+
+    first = pa.Table.from_pandas(next(frames), preserve_index=False)
+    with pq.ParquetWriter(path, first.schema) as writer:
+        writer.write_table(first)
+        for frame in frames:
+            writer.write_table(pa.Table.from_pandas(frame, schema=first.schema, preserve_index=False))
+
+
+def _write_netcdf(tree: xr.DataTree, path: Path) -> None:
+    """Write all groups a chunk at a time, in this thread: HDF5 takes one writer."""
+    groups = {node.path: _plain_dataset(node.to_dataset(inherit=False)) for node in tree.subtree}
+    compressed = {
+        path: {name: {"zlib": True, "complevel": 1} for name, variable in data.data_vars.items() if variable.ndim}
+        for path, data in groups.items()
+    }
+    plain = xr.DataTree.from_dict(groups).chunk()
+    writing = plain.to_netcdf(path, engine="h5netcdf", encoding=compressed, compute=False)
+    writing.compute(scheduler="synchronous")  # type: ignore[no-untyped-call]
+
+
+def _plain_dataset(data: xr.Dataset) -> xr.Dataset:
+    """Copy the data with attributes that netCDF can hold, and without the encoding of where it came from."""
+    plain = data.copy()
+    plain.attrs = _plain_attributes(data.attrs)
+    for name, variable in data.variables.items():
+        plain[name].attrs = _plain_attributes(variable.attrs)
+        if "flag_values" in variable.attrs:
+            plain[name].attrs["flag_values"] = np.asarray(variable.attrs["flag_values"], dtype=variable.dtype)
+    return plain.drop_encoding()
+
+
+def _plain_attributes(attributes: dict[str, object]) -> dict[str, object]:
+    """Numbers, arrays of numbers and texts stay; the rest becomes text, and what is empty goes."""
+    found: dict[str, object] = {}
+    for name, value in attributes.items():
+        if value is None:
+            continue
+        array = np.asarray(value) if isinstance(value, int | float | list | tuple | np.ndarray) else None
+        if array is not None and array.dtype.kind in "iuf" and array.size:
+            found[str(name)] = value
+        else:
+            found[str(name)] = value if isinstance(value, str) else str(value)
+    return found

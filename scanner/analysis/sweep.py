@@ -1,0 +1,154 @@
+"""What a sweep is about: its swept parameters, the study behind it, picking tables and averaging over them."""
+
+from __future__ import annotations
+
+import tomllib
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import xarray as xr
+
+from scanner.errors import ScannerError
+from scanner.quantities import DONE
+
+
+@dataclass(frozen=True)
+class Study:
+    """The parts of a study that a reader of its results wants to see; empty or None where the store does not say."""
+
+    title: str = ""
+    family: str = ""
+    bounces: int | None = None
+    orbits: int | None = None
+
+
+def study_of(tree: xr.DataTree) -> Study:
+    """Read the study that a sweep answers from its root attributes."""
+    try:
+        entries = tomllib.loads(str(tree.attrs.get("study", "")))
+    except tomllib.TOMLDecodeError:
+        return Study()
+    orbits = entries.get("orbits", {})
+    return Study(
+        title=str(entries.get("study", {}).get("title", "")),
+        family=str(entries.get("table", {}).get("family", "")),
+        bounces=orbits.get("bounces"),
+        orbits=orbits.get("per_table"),
+    )
+
+
+def swept_parameters(sweep: xr.DataTree | xr.Dataset) -> tuple[str, ...]:
+    """Names of the swept parameters, in the study's order."""
+    return tuple(str(name) for name in sweep["table_status"].dims)
+
+
+def pick_tables(tree: xr.DataTree, wanted: Mapping[str, float | str]) -> tuple[xr.DataTree, dict[str, float | str]]:
+    """Hold swept parameters at their stored values nearest to the wanted ones.
+
+    Parameters
+    ----------
+    tree
+        A sweep.
+    wanted
+        Value by name of swept parameter; a text is taken as a number where the parameter is one.
+
+    Returns
+    -------
+    tree
+        The sweep without the dimensions that are now held.
+    taken
+        The stored values that were taken.
+
+    Raises
+    ------
+    ScannerError
+        The name is not swept, or the value is not a number of the parameter's kind.
+    """
+    positions: dict[str, int] = {}
+    taken: dict[str, float | str] = {}
+    for name, value in wanted.items():
+        require_swept(tree, name)
+        stored = tree.coords[name].values
+        positions[name] = _nearest(name, stored, value)
+        taken[name] = stored[positions[name]].item() if stored.dtype.kind in "fiu" else str(stored[positions[name]])
+    return tree.isel(positions), taken
+
+
+def require_swept(sweep: xr.DataTree | xr.Dataset, name: str) -> None:
+    """Refuse a name that is not a swept parameter of this sweep."""
+    names = swept_parameters(sweep)
+    if name not in names:
+        known = f"it sweeps {', '.join(names)}" if names else "it holds a single table"
+        raise ScannerError(f"{name!r} is not a swept parameter of this study: {known}")
+
+
+def _nearest(name: str, stored: np.ndarray, value: float | str) -> int:
+    if stored.dtype.kind not in "fiu":
+        found = [index for index, entry in enumerate(stored) if str(entry) == str(value)]
+        if not found:
+            raise ScannerError(f"{name} = {value!r} is not stored: choose from {', '.join(map(str, stored))}")
+        return found[0]
+    try:
+        number = float(value)
+    except ValueError:
+        raise ScannerError(f"{name} = {value!r} is not a number: give one, for example {name}={stored[0]}") from None
+    if not np.isfinite(number):
+        raise ScannerError(f"{name} = {value!r} is not a finite number: give one, for example {name}={stored[0]}")
+    return int(np.abs(stored - number).argmin())
+
+
+def average_tables(root: xr.Dataset, names: Sequence[str]) -> xr.Dataset:
+    """Average the root variables over swept parameters, as over the realisations of a random family.
+
+    Only tables that are done count.  Each ``_stderr`` becomes the standard error of that mean from the scatter
+    between the tables, which holds the sampling error too; with fewer than two tables it is NaN.
+
+    Parameters
+    ----------
+    root
+        Root variables of a sweep.
+    names
+        Swept parameters to average over.
+
+    Returns
+    -------
+    Dataset
+        The root variables without these dimensions, and ``tables_averaged``, how many tables stand behind each.
+
+    Raises
+    ------
+    ScannerError
+        A name is not swept.
+    """
+    for name in names:
+        require_swept(root, name)
+    if not names:
+        return root
+    done = root["table_status"] == DONE
+    count = done.sum(names).drop_attrs()
+    averaged: dict[str, xr.DataArray] = {}
+    for key, variable in root.data_vars.items():
+        if not set(names) & set(variable.dims) or key == "table_status":
+            continue
+        finite = variable.where(done)
+        source = str(key).removesuffix("_stderr")
+        if str(key).endswith("_stderr") and source in root:
+            scattered = root[source].where(done)
+            several = scattered.count(names)
+            averaged[str(key)] = scattered.std(names, ddof=1).where(several > 1) / np.sqrt(several.clip(1))
+        else:
+            averaged[str(key)] = finite.mean(names)
+        averaged[str(key)].attrs = dict(variable.attrs)
+    status = root["table_status"].max(names).where(count == 0, DONE).astype(root["table_status"].dtype)
+    status.attrs = dict(root["table_status"].attrs)
+    kept = root.drop_vars([name for name in [*root.data_vars, *names] if name in root.variables])
+    return kept.assign({"table_status": status, **averaged, "tables_averaged": count})
+
+
+def describe(parameters: Mapping[str, float | str]) -> str:
+    """Write parameter values as people do: ``amplitude = 0.05, harmonic = 2``."""
+    return ", ".join(
+        f"{name} = {value:.6g}" if isinstance(value, float) else f"{name} = {value}"
+        for name, value in parameters.items()
+    )
