@@ -1,0 +1,86 @@
+"""How a grid of tables is cut into tasks.
+
+The cut depends on the study alone, never on the machine or the number of workers, so that stores of one study are the
+same to the byte.  It takes a nominal cost of a bounce for that; the true one may be two times more or less.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from math import prod
+
+NOMINAL_BOUNCE = 80
+"""Nanoseconds."""
+NOMINAL_TABLE = 20_000_000
+"""Nanoseconds to build a table and to sum up its orbits."""
+LONGEST_TASK = 20_000_000_000
+"""Nanoseconds, while that makes no more than MOST_TASKS."""
+SHORTEST_TASK = 500_000_000
+"""Nanoseconds that a task of a small study should last at least."""
+STRETCHED_TASK = 60_000_000_000
+"""Nanoseconds a task of a very large study may last."""
+FEW_TASKS = 64
+"""Tasks wanted of a small study, so that several workers finish together."""
+MOST_TASKS = 100_000
+ORBITS_AT_ONCE = 2**19
+"""Orbits of one task, which bounds its memory."""
+LANES = 64
+"""Orbits advance in blocks of this many."""
+
+
+@dataclass(frozen=True)
+class Layout:
+    """Size of one task.
+
+    Attributes
+    ----------
+    box
+        Tables along each swept dimension; also the chunk of every array there.
+    orbit_chunk
+        Orbits of a table in one task; all of them unless a single table is too much for one task.
+    """
+
+    box: tuple[int, ...]
+    orbit_chunk: int
+
+
+def lay_out(shape: tuple[int, ...], per_table: int, bounces: int) -> Layout:
+    """Choose the size of the tasks of a grid of tables.
+
+    Parameters
+    ----------
+    shape
+        Tables along each swept dimension.
+    per_table, bounces
+        Orbits of a table and bounces of an orbit.
+    """
+    orbits_cost = per_table * bounces * NOMINAL_BOUNCE
+    table_cost = orbits_cost + NOMINAL_TABLE
+    target = _choose_target(prod(shape) * table_cost)
+    parts = max((2 * orbits_cost + target) // (2 * target), _ceil_divide(per_table, ORBITS_AT_ONCE))
+    chunk = LANES * _ceil_divide(_ceil_divide(per_table, parts), LANES) if parts > 1 else per_table
+    if chunk < per_table:
+        return Layout((1,) * len(shape), chunk)
+    budget = max(1, min(target // table_cost, ORBITS_AT_ONCE // per_table))
+    return Layout(_fill_box(shape, budget), per_table)
+
+
+def _choose_target(total: int) -> int:
+    """Choose how long a task should last, in nominal nanoseconds, from the cost of the whole study."""
+    longest = max(LONGEST_TASK, min(STRETCHED_TASK, total // MOST_TASKS))
+    return min(max(total // FEW_TASKS, SHORTEST_TASK), longest)
+
+
+def _fill_box(shape: tuple[int, ...], budget: int) -> tuple[int, ...]:
+    """Take whole trailing dimensions while they fit, an even part of the next one, and 1 of the others."""
+    box: list[int] = []
+    for size in reversed(shape):
+        taken = _ceil_divide(size, _ceil_divide(size, min(size, budget)))
+        box.append(taken)
+        budget = budget // size if taken == size else 1
+    return tuple(reversed(box))
+
+
+def _ceil_divide(whole: int, part: int) -> int:
+    """Count the parts of one size that make up the whole, the last one perhaps smaller."""
+    return -(-whole // part)

@@ -1,0 +1,224 @@
+"""What a study asks for, and, apart from it, where it runs."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+from collections.abc import Mapping
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Annotated, Literal
+
+from pydantic import Field, field_validator, model_validator
+
+from scanner.indicators.schedule import MINIMUM_BOUNCES
+from scanner.study.messages import Section, shown
+
+LARGEST_SEED = 2**63 - 1
+MOST_ORBITS = 2**30
+MOST_BOUNCES = 10_000_000
+MOST_REPLICATES = 1024
+MOST_WORKERS = 100_000
+SMALLEST_MEMORY = 500_000_000
+"""Bytes a worker may need; see the limits in ``scanner.study.limits``."""
+
+UNITS = {"MB": 10**6, "MiB": 2**20, "GB": 10**9, "GiB": 2**30, "TB": 10**12, "TiB": 2**40}
+
+Number = int | float
+Value = int | float | str
+Lines = Annotated[tuple[str, ...], Field(strict=False)]
+
+
+def _plain(text: str) -> bool:
+    """Tell whether a text is one line of printable characters."""
+    return text.isprintable() and text.strip() != ""
+
+
+class Heading(Section):
+    """Table [study] of the study file."""
+
+    title: str = Field(
+        max_length=200, description="one line of plain text, up to 200 characters", examples=["My study"]
+    )
+    seed: int = Field(ge=0, le=LARGEST_SEED, description="a whole number from 0 to 2^63 - 1", examples=[1])
+
+    @field_validator("title")
+    @classmethod
+    def _check_title(cls, title: str) -> str:
+        if not _plain(title):
+            raise ValueError
+        return title
+
+
+class Orbits(Section):
+    """Table [orbits] of the study file: what is sampled on every table."""
+
+    per_table: int = Field(ge=2, le=MOST_ORBITS, description="a whole number from 2 to 2^30", examples=[1024])
+    bounces: int = Field(
+        ge=MINIMUM_BOUNCES,
+        le=MOST_BOUNCES,
+        description=f"a whole number from {MINIMUM_BOUNCES} to {MOST_BOUNCES}",
+        examples=[8192],
+    )
+    replicates: int = Field(
+        8, ge=2, le=MOST_REPLICATES, description=f"a whole number from 2 to {MOST_REPLICATES}", examples=[8]
+    )
+
+    @model_validator(mode="after")
+    def _check_division(self) -> Orbits:
+        share, rest = divmod(self.per_table, self.replicates)
+        if rest:
+            fitting = [count * self.replicates for count in (share, share + 1) if count > 0]
+            raise ValueError(
+                f"per_table = {self.per_table} must be a multiple of replicates = {self.replicates}; "
+                f"write per_table = {' or '.join(map(str, fitting))}"
+            )
+        return self
+
+
+class Resources(Section):
+    """Table [resources] of the study file: where it runs.  Never changes a result, nor the fingerprint.
+
+    Attributes
+    ----------
+    runner
+        "local", "scheduler" (one that is running already) or a batch system.
+    workers
+        Number of worker processes; None for one per core, or as many as the scheduler has.
+    scheduler, scheduler_file
+        Address of the running scheduler, or the file that holds it; at most one of them.
+    account, queue, walltime, memory, directives
+        What a job of the batch system asks for; ``memory`` is that of one worker.
+    setup
+        Shell lines that prepare the environment before a worker starts.
+    """
+
+    runner: Literal["local", "scheduler", "slurm", "pbs", "lsf", "sge"] = Field(
+        "local", description="one of local, scheduler, slurm, pbs, lsf, sge", examples=["local"]
+    )
+    workers: int | None = Field(
+        None, ge=1, le=MOST_WORKERS, description=f"a whole number from 1 to {MOST_WORKERS}", examples=[2]
+    )
+    scheduler: str | None = Field(
+        None,
+        pattern=r"^([a-z]+://)?[^\s/:]+:\d{1,5}$",
+        description="an address like tcp://host:8786",
+        examples=["tcp://host:8786"],
+    )
+    scheduler_file: str | None = Field(
+        None, description="the path of a scheduler file, as one line of text", examples=["scheduler.json"]
+    )
+    account: str | None = Field(None, pattern=r"^\S+$", description="a name without spaces", examples=["physics"])
+    queue: str | None = Field(None, pattern=r"^\S+$", description="a name without spaces", examples=["normal"])
+    walltime: str | None = Field(
+        None,
+        pattern=r"^(\d{1,3}-)?\d{1,3}:[0-5]\d:[0-5]\d$",
+        description="a time like 12:00:00 or 2-00:00:00 (days-hours:minutes:seconds)",
+        examples=["12:00:00"],
+    )
+    memory: str | None = Field(
+        None,
+        pattern=r"^\d{1,9}(\.\d{1,3})? ?([MGT]i?B)$",
+        description="a size for one worker like 2GB or 1500MB, at least 500MB",
+        examples=["2GB"],
+    )
+    directives: Lines = Field((), description="a list of lines of text", examples=[["--constraint=avx2"]])
+    setup: Lines = Field((), description="a list of shell lines", examples=[["module load python"]])
+
+    @field_validator("scheduler_file")
+    @classmethod
+    def _check_line(cls, text: str | None) -> str | None:
+        if text is not None and not _plain(text):
+            raise ValueError
+        return text
+
+    @field_validator("directives", "setup")
+    @classmethod
+    def _check_lines(cls, lines: tuple[str, ...]) -> tuple[str, ...]:
+        if not all(map(_plain, lines)):
+            raise ValueError
+        return lines
+
+    @field_validator("memory")
+    @classmethod
+    def _check_memory(cls, memory: str | None) -> str | None:
+        if memory is not None and _bytes_of(memory) < SMALLEST_MEMORY:
+            raise ValueError
+        return memory
+
+    @model_validator(mode="after")
+    def _check_together(self) -> Resources:
+        given = self.model_fields_set
+        if self.scheduler and self.scheduler_file:
+            raise ValueError(
+                f"scheduler = {shown(self.scheduler)} and scheduler_file = {shown(self.scheduler_file)} "
+                "must not both be given; keep one of them"
+            )
+        unused = sorted(given - {"runner", "workers"})
+        if unused and "runner" not in given:
+            wanted = "scheduler" if unused[-1].startswith("scheduler") else "slurm"
+            raise ValueError(f'runner must be given beside {unused[-1]}; add for instance runner = "{wanted}"')
+        return self
+
+    @property
+    def memory_bytes(self) -> int | None:
+        """Memory of one worker in bytes, None where it was left to the batch system."""
+        return None if self.memory is None else _bytes_of(self.memory)
+
+
+def _bytes_of(memory: str) -> int:
+    """Read a size like 2GB."""
+    digits = memory.rstrip("MGTiB ")
+    return int(float(digits) * UNITS[memory[len(digits) :].strip()])
+
+
+@dataclass(frozen=True)
+class Study:
+    """A valid study.
+
+    Attributes
+    ----------
+    title, seed, family
+        As written.
+    fixed
+        Parameters with one value.  The path of an outline is absolute.
+    swept
+        Values of every swept parameter, increasing; in the order written, which is that of the dimensions.
+    orbits
+        ``per_table``, ``bounces`` and ``replicates``.
+    resources
+        Where it runs.
+    text
+        The study file as written.
+    allow_code
+        Whether a ``module:function`` family may run.
+    sources
+        SHA-256 of the contents of every file outside the study that decides a result, by its role.
+    """
+
+    title: str
+    seed: int
+    family: str
+    fixed: Mapping[str, Value]
+    swept: Mapping[str, tuple[Number, ...]]
+    orbits: Orbits
+    resources: Resources
+    text: str
+    allow_code: bool
+    sources: Mapping[str, str]
+
+    @cached_property
+    def fingerprint(self) -> str:
+        """SHA-256, in hexadecimal, of everything that decides a result; the title and the resources do not.
+
+        A file outside the study counts by its contents, not by its path.
+        """
+        deciding = {
+            "seed": self.seed,
+            "family": self.family,
+            "fixed": {name: value for name, value in self.fixed.items() if name not in self.sources},
+            "swept": [[name, list(values)] for name, values in self.swept.items()],
+            "orbits": self.orbits.model_dump(),
+            "sources": dict(self.sources),
+        }
+        return hashlib.sha256(json.dumps(deciding, sort_keys=True, allow_nan=False).encode()).hexdigest()
