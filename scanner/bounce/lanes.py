@@ -1,0 +1,53 @@
+"""How a block of orbits lies in memory: every quantity is a row of ``LANES`` numbers, one for each orbit.
+
+A loop over a row is plain arithmetic without branches, which the compiler turns into vector instructions.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+import numpy.typing as npt
+
+LANES = 64
+"""Orbits in a block; its rows stay in the processor's first cache."""
+
+BUFFER = 16
+"""Most bounces that are computed before the indicators look at them."""
+
+# Rows of the state of a block: what is known of the last bounce, and the scratch of the next one.
+(
+    MOMENTUM,  # p, sine of the angle from the inward normal
+    COSINE,  # sqrt(1 - p^2), carried beside p: near glancing it cannot be had back from p
+    TANGENT_X,  # unit tangent, counter-clockwise
+    TANGENT_Y,
+    CURVATURE,
+    POINT_X,
+    POINT_Y,
+    RAY_X,  # unit vector of the outgoing ray
+    RAY_Y,
+    HALF_COS,  # cosine and sine of half the advance of the boundary parameter
+    HALF_SIN,
+    SUM_0,  # running sums over the harmonics
+    SUM_1,
+    SUM_2,
+    SUM_3,
+    SUM_4,
+    SUM_5,
+    POWER_RE,  # running power of a unit complex number, and the factor from one to the next
+    POWER_IM,
+    FACTOR_RE,
+    FACTOR_IM,
+    FAILED,  # 0, or 1 once a chord of this orbit could not be found
+) = range(22)
+STATE_ROWS = 22
+
+# Rows of the buffer, each of shape (BUFFER, LANES).
+ADVANCE, P_AFTER, CHORD, D_SS, D_SP, D_PS, D_PP = range(7)
+BUFFER_ROWS = 7
+OBSERVABLES = 3
+"""The first rows of the buffer (advance, p, chord) are averaged; the others are the tangent map in (s, p)."""
+
+
+def fill_up(values: npt.NDArray[np.float64]) -> npt.NDArray[np.float64]:
+    """Repeat the last orbit until the last block is full."""
+    return np.concatenate([values, np.full(-values.size % LANES, values[-1])])

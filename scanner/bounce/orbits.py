@@ -1,0 +1,180 @@
+"""From one bounce to the next, for a block of orbits: chord, reflection and the tangent map in (s, p).
+
+The tangent map of one bounce, with curvatures k0 and k1, cosines c0 and c1 and chord length l, is
+
+    [ (k0 l - c0) / c1                -l / (c0 c1)      ]
+    [ k0 c1 + k1 c0 - k0 k1 l         (k1 l - c1) / c0  ]
+
+with determinant 1 (Berry, Eur. J. Phys. 2:91, 1981).
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+import numpy.typing as npt
+
+from scanner.bounce.chord import aim, find_half_advance
+from scanner.bounce.lanes import (
+    ADVANCE,
+    CHORD,
+    COSINE,
+    CURVATURE,
+    D_PP,
+    D_PS,
+    D_SP,
+    D_SS,
+    FAILED,
+    HALF_COS,
+    HALF_SIN,
+    LANES,
+    MOMENTUM,
+    P_AFTER,
+    POINT_X,
+    POINT_Y,
+    RAY_X,
+    RAY_Y,
+    STATE_ROWS,
+    SUM_0,
+    SUM_1,
+    SUM_2,
+    SUM_3,
+    SUM_4,
+    SUM_5,
+    TANGENT_X,
+    TANGENT_Y,
+)
+from scanner.compiled import inlined
+from scanner.elementary import angle_turns, cos_sin_turns
+
+Floats = npt.NDArray[np.float64]
+
+
+@inlined
+def evaluate_boundary(harmonics: Floats, state: Floats, powers: Floats) -> None:
+    """Sum point, tangent and second derivative at exp(i t) of every lane, and refill the powers of exp(i t)."""
+    xc = harmonics[0, 1]
+    xs = harmonics[1, 1]
+    yc = harmonics[2, 1]
+    ys = harmonics[3, 1]
+    for j in range(LANES):
+        re = powers[2, j]
+        im = powers[3, j]
+        x = xc * re + xs * im
+        y = yc * re + ys * im
+        state[SUM_0, j] = harmonics[0, 0] + x
+        state[SUM_1, j] = harmonics[2, 0] + y
+        state[SUM_2, j] = xs * re - xc * im
+        state[SUM_3, j] = ys * re - yc * im
+        state[SUM_4, j] = -x
+        state[SUM_5, j] = -y
+    for k in range(2, harmonics.shape[1]):
+        xc = harmonics[0, k]
+        xs = harmonics[1, k]
+        yc = harmonics[2, k]
+        ys = harmonics[3, k]
+        order = float(k)
+        square = order * order
+        for j in range(LANES):
+            re = powers[2 * k - 2, j] * powers[2, j] - powers[2 * k - 1, j] * powers[3, j]
+            im = powers[2 * k - 2, j] * powers[3, j] + powers[2 * k - 1, j] * powers[2, j]
+            powers[2 * k, j] = re
+            powers[2 * k + 1, j] = im
+            x = xc * re + xs * im
+            y = yc * re + ys * im
+            state[SUM_0, j] += x
+            state[SUM_1, j] += y
+            state[SUM_2, j] += order * (xs * re - xc * im)
+            state[SUM_3, j] += order * (ys * re - yc * im)
+            state[SUM_4, j] -= square * x
+            state[SUM_5, j] -= square * y
+
+
+@inlined
+def place_on_boundary(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats, powers: Floats) -> None:
+    """Set up a block at boundary parameters ``turns`` and momenta ``momenta``, both of shape (LANES,)."""
+    for j in range(LANES):
+        powers[2, j], powers[3, j] = cos_sin_turns(turns[j])
+    evaluate_boundary(harmonics, state, powers)
+    for j in range(LANES):
+        x1 = state[SUM_2, j]
+        y1 = state[SUM_3, j]
+        over_speed = 1.0 / math.sqrt(x1 * x1 + y1 * y1)
+        state[MOMENTUM, j] = momenta[j]
+        state[COSINE, j] = math.sqrt((1.0 - momenta[j]) * (1.0 + momenta[j]))
+        state[TANGENT_X, j] = x1 * over_speed
+        state[TANGENT_Y, j] = y1 * over_speed
+        state[CURVATURE, j] = (x1 * state[SUM_5, j] - y1 * state[SUM_4, j]) * over_speed * over_speed * over_speed
+        state[POINT_X, j] = state[SUM_0, j]
+        state[POINT_Y, j] = state[SUM_1, j]
+        state[FAILED, j] = 0.0
+
+
+@inlined
+def move_to_end(state: Floats, powers: Floats, buffer: Floats, row: int) -> None:
+    """Turn exp(i t) by the full advance, and note the advance in turns."""
+    for j in range(LANES):
+        vr = state[HALF_COS, j]
+        vi = state[HALF_SIN, j]
+        unit = 1.5 - 0.5 * (vr * vr + vi * vi)
+        vr *= unit
+        vi *= unit
+        buffer[ADVANCE, row, j] = 2.0 * angle_turns(vi, vr)
+        ur = vr * vr - vi * vi
+        ui = 2.0 * vr * vi
+        re = powers[2, j] * ur - powers[3, j] * ui
+        im = powers[2, j] * ui + powers[3, j] * ur
+        unit = 1.5 - 0.5 * (re * re + im * im)
+        powers[2, j] = re * unit
+        powers[3, j] = im * unit
+
+
+@inlined
+def reflect(state: Floats, buffer: Floats, row: int) -> None:
+    """Reflect at the new point: momentum, chord and tangent map of this bounce."""
+    for j in range(LANES):
+        x1 = state[SUM_2, j]
+        y1 = state[SUM_3, j]
+        over_speed = 1.0 / math.sqrt(x1 * x1 + y1 * y1)
+        tx = x1 * over_speed
+        ty = y1 * over_speed
+        k1 = (x1 * state[SUM_5, j] - y1 * state[SUM_4, j]) * over_speed * over_speed * over_speed
+        rx = state[RAY_X, j]
+        ry = state[RAY_Y, j]
+        length = (state[SUM_0, j] - state[POINT_X, j]) * rx + (state[SUM_1, j] - state[POINT_Y, j]) * ry
+        p = tx * rx + ty * ry
+        c1 = ty * rx - tx * ry
+        unit = 1.5 - 0.5 * (p * p + c1 * c1)
+        p *= unit
+        c1 *= unit
+        c0 = state[COSINE, j]
+        k0 = state[CURVATURE, j]
+        over_both = 1.0 / (c0 * c1)
+        buffer[P_AFTER, row, j] = p
+        buffer[CHORD, row, j] = length
+        buffer[D_SS, row, j] = (k0 * length - c0) * (c0 * over_both)
+        buffer[D_SP, row, j] = -length * over_both
+        buffer[D_PS, row, j] = k0 * c1 + k1 * c0 - k0 * k1 * length
+        buffer[D_PP, row, j] = (k1 * length - c1) * (c1 * over_both)
+        state[FAILED, j] += 0.0 if c1 > 0.0 else 1.0
+        state[MOMENTUM, j] = p
+        state[COSINE, j] = c1
+        state[TANGENT_X, j] = tx
+        state[TANGENT_Y, j] = ty
+        state[CURVATURE, j] = k1
+        state[POINT_X, j] = state[SUM_0, j]
+        state[POINT_Y, j] = state[SUM_1, j]
+
+
+@inlined
+def bounce_block(
+    harmonics: Floats, state: Floats, powers: Floats, quotient: Floats, buffer: Floats, count: int
+) -> None:
+    """Bounce every orbit of a block ``count`` times (at most BUFFER) and fill as many rows of the buffer."""
+    for row in range(count):
+        aim(state)
+        find_half_advance(harmonics, state, powers, quotient)
+        move_to_end(state, powers, buffer, row)
+        evaluate_boundary(harmonics, state, powers)
+        reflect(state, buffer, row)

@@ -1,0 +1,70 @@
+"""What the streams of an orbit say at one horizon, before any verdict."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from scanner.elementary import log10_array
+from scanner.indicators.blocks import Streams
+from scanner.indicators.schedule import Schedule
+
+Floats = npt.NDArray[np.float64]
+
+MOST_DIGITS = 16.0
+"""Agreement to the last bit counts as this many digits."""
+
+
+@dataclass(frozen=True)
+class Readings:
+    """Indicators of n orbits at one horizon; every array has shape (n,).
+
+    Attributes
+    ----------
+    bounces
+        The horizon.
+    rotation
+        Weighted average of the advance over the whole horizon, in perimeters.
+    rotation_change
+        Its change between the two halves.
+    digits
+        Digits to which advance, p and chord (over the mean chord) agree between the two halves: the worst of the three.
+    exponent
+        Growth of the tangent vector per bounce after the transient.
+    growth, late_growth
+        Logarithm of its growth over the whole horizon, and over the second half.
+    """
+
+    bounces: int
+    rotation: Floats
+    rotation_change: Floats
+    digits: Floats
+    exponent: Floats
+    growth: Floats
+    late_growth: Floats
+
+
+def digits_of(change: Floats) -> Floats:
+    """Decimal digits of agreement, -log10 of a change, at most MOST_DIGITS."""
+    return -log10_array(np.maximum(np.abs(change), 10.0**-MOST_DIGITS))
+
+
+def read_streams(streams: Streams, schedule: Schedule, number: int, chord_scale: float) -> Readings:
+    """Read the streams at horizon ``number`` of the schedule; chords are compared in units of ``chord_scale``."""
+    whole, first, second = schedule.of_window[number]
+    settled, half, end = schedule.of_mark[number]
+    bounces = schedule.horizons[number]
+    change = streams.averages[second] - streams.averages[first]
+    change[2] /= chord_scale
+    since = int(schedule.marks[settled])
+    return Readings(
+        bounces=bounces,
+        rotation=streams.averages[whole, 0],
+        rotation_change=change[0],
+        digits=np.min(digits_of(change), axis=0),
+        exponent=(streams.growth[end] - streams.growth[settled]) / (bounces - since),
+        growth=streams.growth[end],
+        late_growth=streams.growth[end] - streams.growth[half],
+    )

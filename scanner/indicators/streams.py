@@ -1,0 +1,86 @@
+"""Indicators that are fed a few bounces at a time and keep a fixed amount of memory per orbit.
+
+They see only the buffer of a block, so the same code serves any area-preserving map that fills one.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+import numpy.typing as npt
+
+from scanner.bounce.lanes import CHORD, D_PP, D_PS, D_SP, D_SS, LANES, OBSERVABLES
+from scanner.compiled import kernel
+from scanner.elementary import log
+
+Floats = npt.NDArray[np.float64]
+Integers = npt.NDArray[np.int64]
+
+VECTOR_S, VECTOR_P, GROWTH, PATH = range(4)
+"""Rows of the running state: a tangent vector, the logarithm of its growth so far, the length travelled."""
+RUNNING_ROWS = 4
+
+
+@kernel
+def start_running(running: Floats) -> None:
+    """Begin with the tangent vector (1, 1) / 2, of unit size in the sum of absolute values."""
+    for j in range(LANES):
+        running[VECTOR_S, j] = 0.5
+        running[VECTOR_P, j] = 0.5
+        running[GROWTH, j] = 0.0
+        running[PATH, j] = 0.0
+
+
+@kernel
+def add_to_averages(
+    buffer: Floats, count: int, first: int, windows: Integers, weights: Floats, averages: Floats
+) -> None:
+    """Add bounces ``first`` to ``first + count`` to the weighted averages of every window they fall in.
+
+    ``averages`` has shape (windows, OBSERVABLES, LANES).
+    """
+    for w in range(windows.shape[0]):
+        start = windows[w, 0]
+        shift = windows[w, 2] - start
+        low = max(start, first)
+        high = min(start + windows[w, 1], first + count)
+        for number in range(low, high):
+            weight = weights[shift + number]
+            row = number - first
+            for q in range(OBSERVABLES):
+                for j in range(LANES):
+                    averages[w, q, j] += weight * buffer[q, row, j]
+
+
+@kernel
+def grow_tangent(buffer: Floats, count: int, running: Floats) -> None:
+    """Carry the tangent vector through ``count`` bounces, then bring it back to unit size and note the growth.
+
+    A bounce stretches by at most about 1 / cos of the angle from the normal: 16 of them cannot overflow.
+    """
+    for row in range(count):
+        for j in range(LANES):
+            s = running[VECTOR_S, j]
+            p = running[VECTOR_P, j]
+            running[VECTOR_S, j] = buffer[D_SS, row, j] * s + buffer[D_SP, row, j] * p
+            running[VECTOR_P, j] = buffer[D_PS, row, j] * s + buffer[D_PP, row, j] * p
+            running[PATH, j] += buffer[CHORD, row, j]
+    for j in range(LANES):
+        size = abs(running[VECTOR_S, j]) + abs(running[VECTOR_P, j])
+        running[GROWTH, j] += log(size)
+        running[VECTOR_S, j] /= size
+        running[VECTOR_P, j] /= size
+
+
+@kernel
+def absorb(
+    buffer: Floats,
+    count: int,
+    first: int,
+    windows: Integers,
+    weights: Floats,
+    averages: Floats,
+    running: Floats,
+) -> None:
+    """Feed all indicators with ``count`` bounces, the first of which has number ``first``."""
+    add_to_averages(buffer, count, first, windows, weights, averages)
+    grow_tangent(buffer, count, running)
