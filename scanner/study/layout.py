@@ -57,8 +57,8 @@ def lay_out(shape: tuple[int, ...], per_table: int, bounces: int) -> Layout:
     orbits_cost = per_table * bounces * NOMINAL_BOUNCE
     table_cost = orbits_cost + NOMINAL_TABLE
     target = _choose_target(prod(shape) * table_cost)
-    parts = max((2 * orbits_cost + target) // (2 * target), _ceil_divide(per_table, ORBITS_AT_ONCE))
-    chunk = LANES * _ceil_divide(_ceil_divide(per_table, parts), LANES) if parts > 1 else per_table
+    parts = max((2 * orbits_cost + target) // (2 * target), ceil_divide(per_table, ORBITS_AT_ONCE))
+    chunk = LANES * ceil_divide(ceil_divide(per_table, parts), LANES) if parts > 1 else per_table
     if chunk < per_table:
         return Layout((1,) * len(shape), chunk)
     budget = max(1, min(target // table_cost, ORBITS_AT_ONCE // per_table))
@@ -75,12 +75,12 @@ def _fill_box(shape: tuple[int, ...], budget: int) -> tuple[int, ...]:
     """Take whole trailing dimensions while they fit, an even part of the next one, and 1 of the others."""
     box: list[int] = []
     for size in reversed(shape):
-        taken = _ceil_divide(size, _ceil_divide(size, min(size, budget)))
+        taken = ceil_divide(size, ceil_divide(size, min(size, budget)))
         box.append(taken)
         budget = budget // size if taken == size else 1
     return tuple(reversed(box))
 
 
-def _ceil_divide(whole: int, part: int) -> int:
+def ceil_divide(whole: int, part: int) -> int:
     """Count the parts of one size that make up the whole, the last one perhaps smaller."""
     return -(-whole // part)

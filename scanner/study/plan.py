@@ -11,7 +11,7 @@ from typing import Literal, overload
 
 from scanner.indicators.schedule import horizons
 from scanner.quantities import ORBITS, P_BINS, PERIODS, ROOT, Quantity
-from scanner.study.layout import lay_out
+from scanner.study.layout import ceil_divide, lay_out
 from scanner.study.model import Study, Value
 
 Kind = Literal["survey", "orbits", "reduce"]
@@ -71,8 +71,8 @@ class TaskList(Sequence[Task]):
         self._box = box
         self._per_table = per_table
         self._orbit_chunk = orbit_chunk
-        self._boxes = tuple(-(-size // part) for size, part in zip(shape, box, strict=True))
-        self._chunks = -(-per_table // orbit_chunk)
+        self._boxes = tuple(map(ceil_divide, shape, box))
+        self._chunks = ceil_divide(per_table, orbit_chunk)
         self._tasks_per_box = 1 if self._chunks == 1 else self._chunks + 1
 
     def __len__(self) -> int:

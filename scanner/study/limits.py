@@ -1,0 +1,97 @@
+"""What a study may take of memory and disk."""
+
+from __future__ import annotations
+
+import shutil
+from math import ceil, prod
+from pathlib import Path
+
+import numpy as np
+
+from scanner.errors import StudyError
+from scanner.quantities import REGISTER, Quantity
+from scanner.study.layout import ceil_divide
+from scanner.study.plan import Plan
+
+WORKER_BYTES = 500_000_000
+"""Memory a worker may take, whatever the size of the study."""
+STANDING_BYTES = 250_000_000
+"""What a worker takes before its first task: the interpreter, the libraries, the compiled kernels."""
+WORKING_COPIES = 2
+"""Arrays of a task are held this many times over while they are computed or encoded."""
+MOST_TASK_BYTES = (WORKER_BYTES - STANDING_BYTES) // WORKING_COPIES
+DISK_BLOCK = 4096
+"""Bytes by which a file grows on usual disks."""
+RECEIPT_BYTES = 8192
+"""What is kept of a finished task beside its arrays."""
+
+
+def task_bytes(plan: Plan) -> int:
+    """Size of the arrays that the largest task holds: whole tables, as even split orbits are summed up together."""
+    tables, sizes = prod(plan.box), plan.sizes
+    return tables * sum(_item_bytes(entry) * prod(sizes[dim] for dim in entry.dims) for entry in REGISTER.values())
+
+
+def store_bytes(plan: Plan) -> int:
+    """Size of the store on disk: chunks in whole blocks, as if compression gained nothing, and the receipts."""
+    blocks = 0
+    for entry in REGISTER.values():
+        chunk = plan.chunk_shape(entry)
+        chunks = prod(map(ceil_divide, plan.array_shape(entry), chunk))
+        blocks += chunks * ceil_divide(prod(chunk) * _item_bytes(entry), DISK_BLOCK)
+    return blocks * DISK_BLOCK + len(plan.tasks) * RECEIPT_BYTES
+
+
+def _item_bytes(quantity: Quantity) -> int:
+    """Size of one value of a quantity."""
+    return np.dtype(quantity.dtype).itemsize
+
+
+def check_limits(plan: Plan, target: Path | None = None, remaining: float = 1.0) -> None:
+    """Refuse a study that does not fit the memory of a worker or the disk of its store.
+
+    Parameters
+    ----------
+    plan
+        The plan of the study.
+    target
+        Where the store will be; it need not exist.  None leaves the disk out.
+    remaining
+        Share of the study that is still to be written.
+
+    Raises
+    ------
+    StudyError
+        One line.
+    """
+    per_table = plan.study.orbits.per_table
+    held = task_bytes(plan)
+    if held > MOST_TASK_BYTES:
+        replicates = plan.study.orbits.replicates
+        fitting = per_table * MOST_TASK_BYTES // held // replicates * replicates
+        raise StudyError(
+            f"orbits.per_table = {per_table} makes one task hold {megabytes(held)}, must be at most "
+            f"{megabytes(MOST_TASK_BYTES)} so that a worker stays below {megabytes(WORKER_BYTES)}; "
+            f"lower per_table to {fitting} or less"
+        )
+    if target is not None:
+        needed, free = ceil(store_bytes(plan) * remaining), free_bytes(target)
+        if needed > free:
+            raise StudyError(
+                f"orbits.per_table = {per_table} on {plan.table_count} tables needs {megabytes(needed)} for the store, "
+                f"must be at most the {megabytes(free)} free at {target}; "
+                "lower per_table or a count, or choose another disk"
+            )
+
+
+def free_bytes(target: Path) -> int:
+    """Free space on the disk of a path, which need not exist yet."""
+    place = target.absolute()
+    while not place.exists():
+        place = place.parent
+    return shutil.disk_usage(place).free
+
+
+def megabytes(size: int) -> str:
+    """Write a size in bytes for people."""
+    return f"{size / 1e6:.4g} MB" if size < 1e9 else f"{size / 1e9:.4g} GB"
