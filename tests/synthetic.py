@@ -96,8 +96,8 @@ def _invent_root(
     if name.endswith("_stderr"):
         return np.full(shape, 0.0123)
     if name.endswith("_by_horizon"):
-        excess = 0.12 * (1.0 - level) * np.array([1.0, 0.5, 0.2, 0.0])
-        return np.minimum(level + excess, 1.0)
+        final = level**0.7 if "volume" in name else level
+        return np.minimum(final + 0.12 * (1.0 - final) * np.array([1.0, 0.5, 0.2, 0.0]), 1.0)
     if name.endswith("_replicates"):
         return np.clip(level + 0.03 * random.standard_normal(shape), 0.0, 1.0)
     if name == "regular_area_fraction_by_p":
@@ -110,6 +110,8 @@ def _invent_root(
         return 1.0 - level
     if name.startswith(("lyapunov", "entropy")):
         return 0.1 + 0.5 * (1.0 - level)
+    if name.startswith("regular_volume"):
+        return np.broadcast_to(level**0.7, shape).copy()
     if name == "diffusion_median":
         return -4.0 + 2.0 * (1.0 - level)
     return np.broadcast_to(level, shape).copy()
@@ -142,7 +144,7 @@ def _invent_orbits(
 def study_text(swept: Mapping[str, Sequence[float | int | str]], orbits: int, title: str) -> str:
     """Write the study such a sweep would come from."""
     quoted = title.replace("\\", "\\\\").replace('"', '\\"')
-    lines = ["[study]", f'title = "{quoted}"', "seed = 1", "", "[table]", 'family = "radial_harmonic"']
+    lines = ["[study]", f'title = "{quoted}"', "seed = 1", "", "[table]", 'family = "invented"', "decay = 2.5"]
     lines += [f"{name} = {{ values = {list(values)!r} }}" for name, values in swept.items()]
     lines += ["", "[orbits]", f"per_table = {orbits}", f"bounces = {BOUNCES}", f"replicates = {REPLICATES}", ""]
     return "\n".join(lines)

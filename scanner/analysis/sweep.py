@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import tomllib
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 import xarray as xr
@@ -19,6 +19,7 @@ class Study:
 
     title: str = ""
     family: str = ""
+    fixed: Mapping[str, float | str] = field(default_factory=dict)
     bounces: int | None = None
     orbits: int | None = None
 
@@ -29,10 +30,11 @@ def study_of(tree: xr.DataTree) -> Study:
         entries = tomllib.loads(str(tree.attrs.get("study", "")))
     except tomllib.TOMLDecodeError:
         return Study()
-    orbits = entries.get("orbits", {})
+    table, orbits = entries.get("table", {}), entries.get("orbits", {})
     return Study(
         title=str(entries.get("study", {}).get("title", "")),
-        family=str(entries.get("table", {}).get("family", "")),
+        family=str(table.get("family", "")),
+        fixed={name: value for name, value in table.items() if name != "family" and not isinstance(value, dict)},
         bounces=orbits.get("bounces"),
         orbits=orbits.get("per_table"),
     )

@@ -1,0 +1,139 @@
+"""From a request to a finished figure: which tables, which kind, drawn in one style and saved whole."""
+
+from __future__ import annotations
+
+import warnings
+from pathlib import Path
+
+import matplotlib
+import xarray as xr
+from matplotlib.axes import Axes
+from matplotlib.figure import Figure
+
+from scanner.analysis import average_tables, pick_tables, replace_whole, study_of, swept_parameters
+from scanner.analysis.sweep import describe
+from scanner.errors import ScannerError
+from scanner.figures.curves import MOST_LINES, draw_curve, draw_fractions
+from scanner.figures.heat_map import draw_map
+from scanner.figures.portrait import draw_portrait
+from scanner.figures.request import Request
+from scanner.figures.style import STYLE, figure_of, write_title
+from scanner.quantities import DONE, ORBITS, TABLE_STATUS
+
+DEFAULT_QUANTITY = "regular_area_fraction"
+
+
+def draw_figure(tree: xr.DataTree, request: Request) -> tuple[Figure, str]:
+    """Draw a figure of a sweep.
+
+    Parameters
+    ----------
+    tree
+        A sweep.
+    request
+        What to draw; see `Request`.
+
+    Returns
+    -------
+    figure
+        The figure, not tied to any window.
+    taken
+        The stored tables it shows in words, empty when it shows all of them.
+
+    Raises
+    ------
+    ScannerError
+        The sweep has no such parameter or variable, or has too many or too few dimensions for this kind of figure.
+    """
+    picked, taken = pick_tables(tree, request.select)
+    root = average_tables(picked.to_dataset(), request.average)
+    kind = request.kind or _default_kind(root, request)
+    with matplotlib.rc_context(STYLE):  # type: ignore[arg-type]
+        axes = _draw(kind, picked, root, request)
+        write_title(axes, study_of(tree).title, _notes(tree, describe(taken), request))
+    return figure_of(axes), describe(taken)
+
+
+def save_figure(figure: Figure, target: Path) -> None:
+    """Write a figure as its suffix says, whole or not at all; the same figure gives the same bytes."""
+    undated = {".pdf": {"CreationDate": None}, ".svg": {"Date": None}}.get(target.suffix.lower())
+    with replace_whole(target) as partial, matplotlib.rc_context(STYLE), warnings.catch_warnings():  # type: ignore[arg-type]
+        # a letter of the title that the typeface lacks is drawn as a box, which says enough
+        warnings.filterwarnings("ignore", message="Glyph .* missing from font")
+        figure.savefig(partial, metadata=undated)
+
+
+def _default_kind(root: xr.Dataset, request: Request) -> str:
+    count = len(swept_parameters(root))
+    further = len(root[request.quantity].dims) - count if request.quantity in root else 0
+    if count + further == 2:
+        return "map"
+    if count == 1:
+        return "curve" if request.quantity else "fractions"
+    if count == 0:
+        return "portrait"
+    raise ScannerError(_too_many(swept_parameters(root), 2))
+
+
+def _draw(kind: str, picked: xr.DataTree, root: xr.Dataset, request: Request) -> Axes:
+    names = swept_parameters(root)
+    if kind == "portrait":
+        return _draw_one_table(picked, names, request)
+    quantity = request.quantity or DEFAULT_QUANTITY
+    if quantity not in root:
+        choices = ", ".join(str(name) for name in root.data_vars if name != "table_status")
+        raise ScannerError(f"there is no variable {quantity!r} of tables: choose from {choices}")
+    further = tuple(str(name) for name in root[quantity].dims if name not in names)
+    if kind == "map":
+        dims = names + further
+        if len(dims) != 2:
+            raise ScannerError(_too_many(dims, 2) if len(dims) > 2 else _too_few(dims, 2, "map"))
+        return draw_map(root, quantity, (dims[0], dims[1]), request.width)
+    if further:
+        raise ScannerError(f"{quantity} also runs over {', '.join(further)}: draw it with --kind map")
+    along = request.along or (max(names, key=lambda name: root.sizes[name]) if names else "")
+    if along not in names:
+        raise ScannerError(_too_few(names, 1, kind) if not along else f"--along {along}: not one of {', '.join(names)}")
+    if kind == "fractions":
+        if len(names) > 1:
+            raise ScannerError(_too_many(names, 1))
+        return draw_fractions(root, along, request.width)
+    if len(names) > 2:
+        raise ScannerError(_too_many(names, 2))
+    lines = max((root.sizes[name] for name in names if name != along), default=1)
+    if lines > MOST_LINES:
+        raise ScannerError(f"{lines} lines cannot be told apart, the most is {MOST_LINES}: draw it with --kind map")
+    return draw_curve(root, quantity, along, request.width)
+
+
+def _draw_one_table(picked: xr.DataTree, names: tuple[str, ...], request: Request) -> Axes:
+    if names or request.average:
+        raise ScannerError(
+            f"a portrait shows one table: give a value of {', '.join([*names, *request.average])} with --select"
+        )
+    status = int(picked["table_status"].item())
+    if status != DONE:
+        raise ScannerError(f"this table has no orbits to draw, its status is {TABLE_STATUS[status]}: select another")
+    return draw_portrait(picked[ORBITS].to_dataset(), request.colour, request.width)
+
+
+def _notes(tree: xr.DataTree, taken: str, request: Request) -> list[str]:
+    study = study_of(tree)
+    notes = [note for note in (study.family.replace("_", " "), describe(study.fixed), taken) if note]
+    if request.average:
+        notes.append(f"mean over {', '.join(request.average)}")
+    if study.orbits and study.bounces:
+        notes.append(f"{study.orbits} orbits of {study.bounces} bounces a table")
+    return notes
+
+
+def _too_many(names: tuple[str, ...], most: int) -> str:
+    return (
+        f"{', '.join(names)} are too many dimensions for this figure, at most {most}: "
+        "hold some with --select NAME=VALUE or average over them with --average NAME"
+    )
+
+
+def _too_few(names: tuple[str, ...], least: int, kind: str) -> str:
+    found = ", ".join(names) or "a single table"
+    return f"a figure of kind {kind} needs {least} dimensions and this is {found}: choose another --kind"

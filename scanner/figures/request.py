@@ -1,0 +1,46 @@
+"""What a user can ask of a figure; light, so that the command line can list the choices."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+KINDS = ("fractions", "curve", "map", "portrait")
+COLOURS = ("verdict", "exponent", "diffusion", "rotation")
+WIDTHS = ("single", "double")
+SUFFIXES = (".png", ".pdf", ".svg")
+
+
+@dataclass(frozen=True)
+class Request:
+    """What to draw of a sweep.
+
+    Parameters
+    ----------
+    kind
+        ``fractions``: the regular fractions against one parameter, with error bands and earlier horizons.
+        ``curve``: one variable against one parameter, a line for each value of a second one.
+        ``map``: one variable as colours over two dimensions.
+        ``portrait``: the orbits of one table, p against s.
+        Empty: the kind that suits how many parameters are left.
+    select
+        Values at which to hold swept parameters, the nearest stored one is taken.
+    average
+        Swept parameters to average over.
+    quantity
+        Variable of a curve or a map; empty for the regular area fraction.
+    along
+        Parameter of the horizontal axis of a curve; empty for the one of most values.
+    colour
+        What the colours of a portrait mean, one of `COLOURS`.
+    width
+        ``single`` or ``double`` column.
+    """
+
+    kind: str = ""
+    select: Mapping[str, float | str] = field(default_factory=dict)
+    average: tuple[str, ...] = ()
+    quantity: str = ""
+    along: str = ""
+    colour: str = "verdict"
+    width: str = "single"
