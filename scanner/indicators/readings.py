@@ -29,8 +29,11 @@ class Readings:
         Weighted average of the advance over the whole horizon, in perimeters.
     rotation_change
         Its change between the two halves.
+    disagreement
+        Change of the averages of advance, p and chord (over the mean chord) between the two halves: the largest of
+        the three.
     digits
-        Digits to which advance, p and chord (over the mean chord) agree between the two halves: the worst of the three.
+        The same in decimal digits of agreement.
     exponent
         Growth of the tangent vector per bounce after the transient.
     growth, late_growth
@@ -40,6 +43,7 @@ class Readings:
     bounces: int
     rotation: Floats
     rotation_change: Floats
+    disagreement: Floats
     digits: Floats
     exponent: Floats
     growth: Floats
@@ -58,12 +62,14 @@ def read_streams(streams: Streams, schedule: Schedule, number: int, chord_scale:
     bounces = schedule.horizons[number]
     change = streams.averages[second] - streams.averages[first]
     change[2] /= chord_scale
+    disagreement = np.max(np.abs(change), axis=0)
     since = int(schedule.marks[settled])
     return Readings(
         bounces=bounces,
         rotation=streams.averages[whole, 0],
         rotation_change=change[0],
-        digits=np.min(digits_of(change), axis=0),
+        disagreement=disagreement,
+        digits=digits_of(disagreement),
         exponent=(streams.growth[end] - streams.growth[settled]) / (bounces - since),
         growth=streams.growth[end],
         late_growth=streams.growth[end] - streams.growth[half],

@@ -1,0 +1,40 @@
+"""Numbers with the names, dimensions and attributes that the register gives them."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import TYPE_CHECKING
+
+import numpy as np
+import numpy.typing as npt
+
+from scanner.quantities import in_group
+
+if TYPE_CHECKING:
+    import xarray as xr
+
+
+def label(
+    group: str, values: Mapping[str, npt.ArrayLike], coords: Mapping[str, npt.ArrayLike]
+) -> xr.Dataset:
+    """Dataset of the variables of one group of the register that are in ``values``.
+
+    Parameters
+    ----------
+    group
+        ``quantities.ROOT`` or ``quantities.ORBITS``.
+    values
+        Name to array, with the dimensions of the register's entry.
+    coords
+        Name of a dimension to its values.
+    """
+    import xarray as xr
+
+    return xr.Dataset(
+        {
+            entry.name: (entry.dims, np.asarray(values[entry.name], dtype=entry.dtype), entry.attributes())
+            for entry in in_group(group)
+            if entry.name in values
+        },
+        coords=dict(coords),
+    )
