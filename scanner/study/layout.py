@@ -9,6 +9,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from math import prod
 
+from scanner.bounce.lanes import LANES
+
 NOMINAL_BOUNCE = 80
 """Nanoseconds."""
 NOMINAL_TABLE = 20_000_000
@@ -24,8 +26,6 @@ FEW_TASKS = 64
 MOST_TASKS = 100_000
 ORBITS_AT_ONCE = 2**19
 """Orbits of one task, which bounds its memory."""
-LANES = 64
-"""Orbits advance in blocks of this many."""
 
 
 @dataclass(frozen=True)

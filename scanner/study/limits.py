@@ -9,7 +9,7 @@ from pathlib import Path
 import numpy as np
 
 from scanner.errors import StudyError
-from scanner.quantities import REGISTER, Quantity
+from scanner.quantities import ORBITS, REGISTER, Quantity, in_group
 from scanner.study.layout import ceil_divide
 from scanner.study.plan import Plan
 
@@ -68,7 +68,8 @@ def check_limits(plan: Plan, target: Path | None = None, remaining: float = 1.0)
     held = task_bytes(plan)
     if held > MOST_TASK_BYTES:
         replicates = plan.study.orbits.replicates
-        fitting = per_table * MOST_TASK_BYTES // held // replicates * replicates
+        growth = sum(_item_bytes(entry) * prod(plan.sizes[dim] for dim in entry.dims[1:]) for entry in in_group(ORBITS))
+        fitting = (per_table - ceil_divide(held - MOST_TASK_BYTES, growth)) // replicates * replicates
         raise StudyError(
             f"orbits.per_table = {per_table} makes one task hold {megabytes(held)}, must be at most "
             f"{megabytes(MOST_TASK_BYTES)} so that a worker stays below {megabytes(WORKER_BYTES)}; "

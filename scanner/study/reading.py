@@ -110,6 +110,8 @@ def _build(document: Mapping[str, object], text: str, allow_code: bool, folder: 
     parameters = read_parameters(family, entries, allow_code)
     orbits = read_section(Orbits, document["orbits"], "orbits")
     resources = read_section(Resources, document.get("resources", {}), "resources")
+    if resources.scheduler_file:
+        resources = resources.model_copy(update={"scheduler_file": str(_place(resources.scheduler_file, folder))})
     fixed, sources = _read_sources(family, parameters.fixed, folder)
     return Study(
         heading.title, heading.seed, family, fixed, parameters.swept, orbits, resources, text, allow_code, sources
@@ -140,11 +142,16 @@ def _refuse_misplaced(section: str, entries: Mapping[str, object]) -> None:
             )
 
 
+def _place(written_path: str, folder: Path) -> Path:
+    """Absolute path of a file named in the study."""
+    return (folder / Path(written_path).expanduser()).resolve()
+
+
 def _read_sources(family: str, fixed: Mapping[str, Value], folder: Path) -> tuple[dict[str, Value], dict[str, str]]:
     """Find the files outside the study that decide a result, with the hash of what is in them."""
     values, sources = dict(fixed), {}
     if family == "outline_file":
-        path = (folder / Path(str(fixed["file"])).expanduser()).resolve()
+        path = _place(str(fixed["file"]), folder)
         try:
             sources["file"] = hashlib.sha256(path.read_bytes()).hexdigest()
         except OSError as error:

@@ -7,10 +7,10 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from scanner.bounce.lanes import LANES
 from scanner.quantities import ORBITS, REGISTER, ROOT, in_group
 from scanner.study import make_plan
 from scanner.study.layout import (
-    LANES,
     LONGEST_TASK,
     NOMINAL_BOUNCE,
     NOMINAL_TABLE,
@@ -68,8 +68,8 @@ def test_tasks_are_neither_long_nor_many_more_than_needed(shape, pairs, bounces)
     nominal = tables * (layout.orbit_chunk * one_orbit + NOMINAL_TABLE)
     total = prod(shape) * (per_table * one_orbit + NOMINAL_TABLE)
     stretched = max(LONGEST_TASK, min(3 * LONGEST_TASK, total // 100_000))
-    # Half as much again at most, as a table counts as one task up to that; but no less than one block of lanes.
-    assert nominal <= max(1.5 * stretched, LANES * one_orbit) + NOMINAL_TABLE
+    # Half as much again at most, as a table counts as one task up to that, and what fills up a block of lanes.
+    assert nominal <= 1.5 * stretched + (LANES - 1) * one_orbit + NOMINAL_TABLE
     assert tables * layout.orbit_chunk <= ORBITS_AT_ONCE
     assert layout.orbit_chunk == per_table or (layout.orbit_chunk % LANES == 0 and tables == 1)
     assert all(1 <= part <= size for part, size in zip(layout.box, shape, strict=True))

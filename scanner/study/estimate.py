@@ -1,0 +1,151 @@
+"""What a study will cost, before anything runs."""
+
+from __future__ import annotations
+
+import itertools
+import time
+from array import array
+from collections import Counter
+from collections.abc import Callable, Iterable
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+
+from scanner.bounce.lanes import LANES
+from scanner.indicators import orbit_numbers
+from scanner.indicators.schedule import MINIMUM_BOUNCES
+from scanner.measure import section_points
+from scanner.study.checking import TableCheck, check_table, check_tables
+from scanner.study.limits import check_limits, store_bytes
+from scanner.study.plan import Plan
+from scanner.tables import Table
+
+CALIBRATION_SECONDS = 2.0
+CALIBRATION_BOUNCES = 8192
+CALIBRATION_TABLES = 4
+MOST_FAULTS = 5
+
+
+@dataclass(frozen=True)
+class Estimate:
+    """What a study will cost.
+
+    Attributes
+    ----------
+    tables, not_convex, failed
+        Tables in all, those that are not convex and those that cannot be built; there are no orbits on these two.
+    faults
+        The first few of these two, each with its reason.
+    orbits, bounces
+        On all convex tables together.
+    store_bytes
+        Size of the store on disk, at most.
+    tasks
+        Units of work.
+    nanoseconds_per_bounce
+        Of one core of this machine, from the calibration; None if no table is convex.
+    core_hours
+        What all bounces and tables will take on cores like this machine's.
+    """
+
+    tables: int
+    not_convex: int
+    failed: int
+    faults: tuple[TableCheck, ...]
+    orbits: int
+    bounces: int
+    store_bytes: int
+    tasks: int
+    nanoseconds_per_bounce: float | None
+    core_hours: float
+
+
+def estimate_cost(
+    plan: Plan,
+    store: Path | None = None,
+    seconds: float = CALIBRATION_SECONDS,
+    report: Callable[[int], None] = lambda checked: None,
+) -> Estimate:
+    """Check every table of a study and time a few of its orbits.
+
+    Parameters
+    ----------
+    plan
+        The plan of the study.
+    store
+        Where the store will be, to compare with the free space there; need not exist.
+    seconds
+        How long to time orbits.
+    report
+        Called with the number of tables checked so far, after each.
+
+    Raises
+    ------
+    StudyError
+        One line: the study does not fit the memory of a worker or the disk.
+    """
+    check_limits(plan, store)
+    counts: Counter[str] = Counter()
+    faults: list[TableCheck] = []
+    convex = array("q")
+    begun = time.perf_counter()
+    for number, check in enumerate(check_tables(plan)):
+        counts[check.state] += 1
+        if check.state == "convex":
+            convex.append(number)
+        elif len(faults) < MOST_FAULTS:
+            faults.append(check)
+        report(number + 1)
+    building = time.perf_counter() - begun
+    pace = _calibrate(plan, _pick_tables(plan, convex), seconds) if convex else None
+    orbits = len(convex) * plan.study.orbits.per_table
+    bounces = orbits * plan.study.orbits.bounces
+    return Estimate(
+        tables=plan.table_count,
+        not_convex=counts["not_convex"],
+        failed=counts["failed"],
+        faults=tuple(faults),
+        orbits=orbits,
+        bounces=bounces,
+        store_bytes=store_bytes(plan),
+        tasks=len(plan.tasks),
+        nanoseconds_per_bounce=pace,
+        core_hours=(building + bounces * (pace or 0.0) * 1e-9) / 3600,
+    )
+
+
+def _pick_tables(plan: Plan, convex: array[int]) -> list[Table]:
+    """Take a few convex tables, evenly spread over the study."""
+    places = sorted({(2 * i + 1) * len(convex) // (2 * CALIBRATION_TABLES) for i in range(CALIBRATION_TABLES)})
+    found = []
+    for place in places:
+        index = tuple(int(i) for i in np.unravel_index(convex[place], plan.shape)) if plan.shape else ()
+        check = check_table(plan, index, plan.parameters_at(index))
+        if check.table is not None:
+            found.append(check.table)
+    return found
+
+
+def _calibrate(plan: Plan, tables: Iterable[Table], seconds: float) -> float:
+    """Nanoseconds a bounce of the whole job of a task takes on one core, the mean over tables in turn."""
+    orbits = plan.study.orbits
+    starts = [
+        (
+            table,
+            *section_points(
+                table, plan.study.seed, orbits.replicates, orbits.per_table, 0, min(LANES, orbits.per_table)
+            ),
+        )
+        for table in tables
+    ]
+    orbit_numbers(*starts[0], MINIMUM_BOUNCES)  # compiles, or loads what is compiled
+    bounces = min(orbits.bounces, CALIBRATION_BOUNCES)
+    spent: list[float] = []
+    for table, s, p in itertools.cycle(starts):
+        begun = time.perf_counter()
+        orbit_numbers(table, s, p, bounces)
+        spent.append((time.perf_counter() - begun) / (len(s) * bounces))
+        if len(spent) >= len(starts) and sum(spent) * len(s) * bounces >= seconds:
+            break
+    return 1e9 * sum(spent) / len(spent)
