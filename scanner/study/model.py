@@ -194,6 +194,8 @@ class Study:
         Whether a ``module:function`` family may run.
     sources
         SHA-256 of the contents of every file outside the study that decides a result, by its role.
+    folder
+        Where relative paths in the text start, absolute: with the text it makes the same study elsewhere.
     """
 
     title: str
@@ -206,6 +208,7 @@ class Study:
     text: str
     allow_code: bool
     sources: Mapping[str, str]
+    folder: str = "."
 
     @cached_property
     def fingerprint(self) -> str:

@@ -114,7 +114,17 @@ def _build(document: Mapping[str, object], text: str, allow_code: bool, folder: 
         resources = resources.model_copy(update={"scheduler_file": str(_place(resources.scheduler_file, folder))})
     fixed, sources = _read_sources(family, parameters.fixed, folder)
     return Study(
-        heading.title, heading.seed, family, fixed, parameters.swept, orbits, resources, text, allow_code, sources
+        heading.title,
+        heading.seed,
+        family,
+        fixed,
+        parameters.swept,
+        orbits,
+        resources,
+        text,
+        allow_code,
+        sources,
+        str(folder.absolute()),
     )
 
 

@@ -1,0 +1,71 @@
+"""What a study will cost, against what is known of it."""
+
+import pytest
+
+from scanner.errors import StudyError
+from scanner.study import check_tables, estimate_cost, make_plan, parse_study
+from scanner.study.limits import store_bytes
+
+TEXT = """\
+[study]
+title = "Estimate"
+seed = 1
+[table]
+family = "radial_harmonic"
+amplitude = { start = 0.0, stop = 0.12, count = 13 }
+harmonic = { values = [2, 3] }
+[orbits]
+per_table = 64
+bounces = 256
+replicates = 4
+"""
+# Convex up to an amplitude of 1/(1 + harmonic^2) (closed form): 0.2, and 0.1, where the curvature is zero at points.
+NOT_CONVEX = [(11, 1), (12, 1)]
+
+
+def test_every_table_is_checked():
+    checks = list(check_tables(make_plan(parse_study(TEXT))))
+    assert len(checks) == 26
+    assert [check.index for check in checks if check.state == "not_convex"] == NOT_CONVEX
+    assert all(check.state == "convex" and not check.reason for check in checks if check.index not in NOT_CONVEX)
+    assert checks[-1].parameters == {"amplitude": 0.12, "harmonic": 3}
+    assert "curvature" in checks[-1].reason
+
+
+def test_the_estimate_counts_what_will_run():
+    plan = make_plan(parse_study(TEXT))
+    seen: list[int] = []
+    estimate = estimate_cost(plan, seconds=0.05, report=seen.append)
+    assert (estimate.tables, estimate.not_convex, estimate.failed) == (26, 2, 0)
+    assert [check.index for check in estimate.faults] == NOT_CONVEX
+    assert estimate.orbits == 24 * 64
+    assert estimate.bounces == 24 * 64 * 256
+    assert (estimate.tasks, estimate.store_bytes) == (len(plan.tasks), store_bytes(plan))
+    assert seen == list(range(1, 27))
+    # No machine takes less than a nanosecond or, with the fixed cost of such short orbits, more than 20 microseconds.
+    assert estimate.nanoseconds_per_bounce is not None
+    assert 1 < estimate.nanoseconds_per_bounce < 20_000
+    assert estimate.core_hours >= estimate.bounces * estimate.nanoseconds_per_bounce * 1e-9 / 3600
+
+
+def test_a_study_without_convex_tables_costs_next_to_nothing():
+    text = TEXT.replace("start = 0.0, stop = 0.12", "start = 0.3, stop = 0.42")
+    estimate = estimate_cost(make_plan(parse_study(text)), seconds=0.05)
+    assert (estimate.not_convex, estimate.orbits, estimate.bounces) == (26, 0, 0)
+    assert estimate.nanoseconds_per_bounce is None
+    assert len(estimate.faults) == 5
+    assert estimate.core_hours < 0.01
+
+
+def test_a_single_table_can_be_estimated():
+    text = TEXT.replace("{ start = 0.0, stop = 0.12, count = 13 }", "0.05").replace("{ values = [2, 3] }", "2")
+    estimate = estimate_cost(make_plan(parse_study(text)), seconds=0.01)
+    assert (estimate.tables, estimate.orbits, estimate.tasks) == (1, 64, 1)
+
+
+def test_a_study_too_large_is_refused_before_its_tables_are_built():
+    text = TEXT.replace("per_table = 64", "per_table = 4194304")
+    seen: list[int] = []
+    with pytest.raises(StudyError, match=r"^orbits\.per_table = 4194304 makes one task hold"):
+        estimate_cost(make_plan(parse_study(text)), report=seen.append)
+    assert seen == []
