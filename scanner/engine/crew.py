@@ -1,0 +1,94 @@
+"""Where the workers come from: this machine, a scheduler that is running already, or the caller's client."""
+
+from __future__ import annotations
+
+import logging
+import os
+from collections.abc import Iterator
+from contextlib import ExitStack, contextmanager
+from pathlib import Path
+
+import dask
+from distributed import Client, LocalCluster
+
+from scanner.engine.interrupts import interrupts_held_back
+from scanner.errors import EngineError
+from scanner.indicators import MINIMUM_BOUNCES, orbit_numbers
+from scanner.study import Resources
+from scanner.tables import build_table
+
+CONNECT_SECONDS = 20
+DEATHS_ALLOWED = 10
+"""Workers a task may lose before the scheduler gives it up; any death counts for all tasks waiting there."""
+
+
+@contextmanager
+def hire(
+    resources: Resources,
+    client: Client | None = None,
+    workers: int | None = None,
+    scheduler: str | None = None,
+    scheduler_file: str | None = None,
+) -> Iterator[Client]:
+    """Give a client with workers behind it, and dismiss at the end what was started here.
+
+    Parameters
+    ----------
+    resources
+        What the study says about it; the other arguments go first.
+    client
+        The caller's own, used as it is.
+    workers
+        Processes on this machine, one for each core by default; only where no scheduler is given.
+    scheduler, scheduler_file
+        Address of a running scheduler, or the file that holds it.
+
+    Raises
+    ------
+    EngineError
+        No scheduler answers, or the workers do not start.
+    """
+    with ExitStack() as stack:
+        if client is not None:
+            yield client
+        elif scheduler or scheduler_file:
+            yield _remote_client(stack, scheduler, scheduler_file)
+        elif resources.runner == "scheduler":
+            yield _remote_client(stack, resources.scheduler, resources.scheduler_file)
+        else:
+            yield _local_client(stack, workers or resources.workers or len(os.sched_getaffinity(0)))
+
+
+def _local_client(stack: ExitStack, workers: int) -> Client:
+    _warm_up()
+    stack.enter_context(dask.config.set({"distributed.scheduler.allowed-failures": DEATHS_ALLOWED}))
+    with interrupts_held_back():
+        try:
+            cluster = LocalCluster(
+                n_workers=workers,
+                threads_per_worker=1,
+                processes=True,
+                host="127.0.0.1",
+                dashboard_address="127.0.0.1:0",
+                worker_dashboard_address="127.0.0.1:0",
+                silence_logs=logging.CRITICAL,
+            )
+        except (OSError, RuntimeError) as error:
+            raise EngineError(f"{workers} workers could not be started ({error}); try fewer") from None
+        return stack.enter_context(Client(stack.enter_context(cluster)))
+
+
+def _remote_client(stack: ExitStack, scheduler: str | None, scheduler_file: str | None) -> Client:
+    if scheduler_file is not None and not Path(scheduler_file).exists():
+        raise EngineError(f"{scheduler_file}: no such scheduler file; start `dask scheduler --scheduler-file` first")
+    try:
+        client = Client(scheduler, scheduler_file=scheduler_file, timeout=CONNECT_SECONDS)
+    except (OSError, ValueError) as error:
+        where = scheduler or scheduler_file
+        raise EngineError(f"{where}: no scheduler answers there ({error}); start `dask scheduler` first") from None
+    return stack.enter_context(client)
+
+
+def _warm_up() -> None:
+    """Have every kernel compiled and cached before the workers start: many that race to do it lose entries."""
+    orbit_numbers(build_table("ellipse", eccentricity=0.5), [0.1], [0.2], MINIMUM_BOUNCES)

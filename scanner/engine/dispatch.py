@@ -1,0 +1,183 @@
+"""Give tasks to workers, a bounded number at a time, and make sure that each ends somewhere."""
+
+from __future__ import annotations
+
+import logging
+import queue
+import time
+from collections import Counter, deque
+from collections.abc import Callable
+from uuid import uuid4
+
+from distributed import Client, Future, KilledWorker
+
+from scanner.engine.agenda import Agenda
+from scanner.engine.work import Order, Outcome, run_task
+from scanner.errors import EngineError
+
+PER_THREAD = 3
+"""Tasks submitted for each thread: enough to keep it busy, few enough to be taken back."""
+ATTEMPTS = 3
+TURN_SECONDS = 1.0
+LONELY_SECONDS = 300.0
+"""Time without workers after which that is said, again and again."""
+
+log = logging.getLogger(__name__)
+
+
+class Dispatcher:
+    """One run over an agenda.
+
+    A task that raises is tried again, then the run ends: the cause (a full disk, say) would meet the others too.
+    A task whose workers die is tried again after all others, when each worker has one task alone, so that it cannot
+    drag innocent ones along; one that kills its workers even so is abandoned.
+
+    Parameters
+    ----------
+    client
+        Where the workers are.
+    order, agenda
+        What they are to do.
+    land
+        Called with the outcome of every finished task.
+    say
+        Called with one line when something happens that people should know.
+    """
+
+    def __init__(
+        self,
+        client: Client,
+        order: Order,
+        agenda: Agenda,
+        land: Callable[[Outcome], None],
+        say: Callable[[str], None],
+    ) -> None:
+        self.abandoned: dict[int, str] = {}
+        self.workers: dict[str, int] = {}
+        self._client = client
+        self._order = order
+        self._agenda = agenda
+        self._land = land
+        self._say = say
+        self._run = uuid4().hex[:12]
+        self._flying: dict[str, tuple[int, Future]] = {}
+        self._landed: queue.SimpleQueue[Future] = queue.SimpleQueue()
+        self._attempts: Counter[int] = Counter()
+        self._failures: Counter[int] = Counter()
+        self._deaths: Counter[int] = Counter()
+        self._suspects: deque[int] = deque()
+        self._draining = False
+        self._next_count = 0.0
+        self._lonely_since = time.monotonic()
+
+    @property
+    def flying(self) -> int:
+        """Number of tasks that are submitted and not finished."""
+        return len(self._flying)
+
+    def turn(self) -> bool:
+        """Do what is to be done now, wait up to a second for outcomes; false when nothing is left in flight.
+
+        Raises
+        ------
+        EngineError
+            The scheduler is gone, or a task fails again and again.
+        """
+        self._count_workers()
+        self._fill_window()
+        if not self._flying:
+            return False
+        try:
+            future = self._landed.get(timeout=TURN_SECONDS)
+            while True:
+                self._receive(future)
+                future = self._landed.get_nowait()
+        except queue.Empty:
+            return True
+
+    def drain(self) -> None:
+        """Take back what no worker has begun; what is being computed may finish."""
+        self._draining = True
+        running = {key for stacks in self._client.call_stack(self._futures()).values() for key in stacks}
+        idle = [self._flying.pop(key)[1] for key in [*self._flying] if key not in running]
+        self._client.cancel(idle)
+
+    def _futures(self) -> list[Future]:
+        return [future for _, future in self._flying.values()]
+
+    def _count_workers(self) -> None:
+        """See about every second who came and went, and complain if nobody is left."""
+        if time.monotonic() < self._next_count:
+            return
+        self._next_count = time.monotonic() + TURN_SECONDS
+        if self._client.status != "running":
+            raise self._scheduler_gone()
+        try:
+            present: dict[str, int] = self._client.nthreads()
+        except (OSError, TimeoutError) as error:
+            raise self._scheduler_gone() from error
+        for address in self.workers.keys() - present.keys():
+            log.warning("worker %s is gone; what it had begun will be computed again", address)
+        for address in present.keys() - self.workers.keys():
+            log.info("worker %s has joined", address)
+        self.workers = present
+        if present:
+            self._lonely_since = time.monotonic()
+        elif time.monotonic() - self._lonely_since > LONELY_SECONDS:
+            self._lonely_since = time.monotonic()
+            self._say(f"no workers for {LONELY_SECONDS / 60:.0f} minutes; waiting for some to join, Ctrl-C stops")
+
+    def _fill_window(self) -> None:
+        threads = max(1, sum(self.workers.values()))
+        while self._agenda and not self._draining and len(self._flying) < PER_THREAD * threads:
+            self._submit(self._agenda.take())
+        alone = all(self._deaths[number] for number, _ in self._flying.values())
+        while self._suspects and not self._draining and alone and len(self._flying) < threads:
+            self._submit(self._suspects.popleft())
+
+    def _submit(self, number: int) -> None:
+        self._attempts[number] += 1
+        key = f"scanner-{self._run}-{number}-{self._attempts[number]}"
+        future = self._client.submit(run_task, self._order, number, key=key, pure=False)
+        self._flying[key] = number, future
+        future.add_done_callback(self._landed.put)
+
+    def _receive(self, future: Future) -> None:
+        if future.key not in self._flying:
+            return
+        number, _ = self._flying.pop(future.key)
+        if future.status == "finished":
+            self._agenda.settle(number)
+            self._land(future.result())
+        elif future.status == "error":
+            self._take_failure(number, future.exception())
+        elif self._client.status == "running":
+            log.warning("task %d was %s; submitting it again", number, future.status)
+            self._agenda.give_back(number)
+        else:
+            raise self._scheduler_gone()
+
+    def _take_failure(self, number: int, error: BaseException) -> None:
+        reason = " ".join(str(error).split())
+        if isinstance(error, KilledWorker):
+            self._deaths[number] += 1
+            log.warning("task %d lost its workers (%d): %s", number, self._deaths[number], reason)
+            if self._deaths[number] < ATTEMPTS:
+                self._suspects.append(number)
+            else:
+                self.abandoned[number] = "its workers died again and again while computing it"
+            return
+        self._failures[number] += 1
+        log.warning("task %d failed (%d): %s: %s", number, self._failures[number], type(error).__name__, reason)
+        if self._failures[number] == ATTEMPTS:
+            raise EngineError(
+                f"task {number} failed {ATTEMPTS} times, last with {type(error).__name__}: {reason}; "
+                "mend that and give the same command again to carry on"
+            )
+        self._agenda.give_back(number)
+
+    def _scheduler_gone(self) -> EngineError:
+        return EngineError(
+            f"the scheduler at {self._client.scheduler.addr} is gone with {self.flying} tasks in flight; "
+            "start it again and give the same command to carry on"
+        )

@@ -1,0 +1,104 @@
+"""What a worker does: compute one task, write its region, leave a receipt, return a few numbers."""
+
+from __future__ import annotations
+
+import socket
+import time
+from dataclasses import dataclass
+from functools import lru_cache
+from pathlib import Path
+
+from scanner import __version__
+from scanner.cells import CellResult, compute, reduce
+from scanner.errors import EngineError
+from scanner.quantities import DONE, FAILED, NOT_CONVEX
+from scanner.store import Ledger, Receipt, Regions, compare, list_failures, open_regions
+from scanner.study import Plan, Task, make_plan, parse_study
+
+
+@dataclass(frozen=True)
+class Order:
+    """All a worker needs to know besides the number of its task; a few hundred bytes."""
+
+    store: str
+    text: str
+    folder: str
+    allow_code: bool
+    fingerprint: str
+    version: str = __version__
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """What comes back from a task."""
+
+    task: int
+    orbits: int
+    bounces: int
+    done: int
+    not_convex: int
+    failed: int
+    seconds: float
+    host: str
+
+
+def run_task(order: Order, number: int) -> Outcome:
+    """Compute and write one task of a study; doing it twice is harmless, the same bytes are written.
+
+    Raises
+    ------
+    EngineError
+        The worker runs another version of this package, or sees other files than the client.
+    """
+    started = time.monotonic()
+    plan = _plan(order)
+    task = plan.tasks[number]
+    store = Path(order.store)
+    regions = open_regions(store, order.fingerprint)
+    ledger = Ledger(store)
+    result = _reduce(plan, task, regions, ledger) if task.kind == "reduce" else compute(plan, task)
+    chunks = regions.write(task, result.groups)
+    receipt = Receipt(
+        task=number,
+        kind=task.kind,
+        host=socket.gethostname(),
+        finished=time.time(),
+        seconds=time.monotonic() - started,
+        orbits=0 if task.kind == "reduce" else task.tables * (task.orbits.stop - task.orbits.start),
+        bounces=result.bounces,
+        done=result.count(DONE),
+        not_convex=result.count(NOT_CONVEX),
+        failed=result.count(FAILED),
+        failures=tuple(result.failures),
+        chunks=chunks,
+    )
+    ledger.write(receipt)
+    return Outcome(**{name: getattr(receipt, name) for name in Outcome.__dataclass_fields__})
+
+
+def _reduce(plan: Plan, task: Task, regions: Regions, ledger: Ledger) -> CellResult:
+    """Sum up a table from the orbits that other tasks have written, once they are seen to be all there."""
+    parts = [part for number in task.needs if (part := ledger.read(number))]
+    if len(parts) < len(task.needs) or any(True for part in parts for _ in compare(ledger.store, part.chunks)):
+        raise EngineError(
+            f"stored orbits that task {task.number} needs are lost; `scanner verify --repair` clears them"
+        )
+    return reduce(plan, task, regions.read_orbits(task), list_failures(parts))
+
+
+@lru_cache(maxsize=4)
+def _plan(order: Order) -> Plan:
+    """Parse a study once a process."""
+    host = socket.gethostname()
+    if order.version != __version__:
+        raise EngineError(
+            f"the worker on {host} runs scanner {__version__}, the client {order.version}; install the same everywhere"
+        )
+    if not Path(order.store).exists():
+        raise EngineError(
+            f"the worker on {host} does not see {order.store}; put the store on a disk that all hosts share"
+        )
+    study = parse_study(order.text, allow_code=order.allow_code, folder=order.folder)
+    if study.fingerprint != order.fingerprint:
+        raise EngineError(f"the worker on {host} reads other input files than the client; put them on a shared disk")
+    return make_plan(study)

@@ -1,0 +1,54 @@
+"""Writing that survives a power cut: content first, then its name, then the folder that holds the name."""
+
+from __future__ import annotations
+
+import hashlib
+import os
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import dataclass
+from pathlib import Path
+
+
+@dataclass(frozen=True)
+class Seal:
+    """Size and checksum of a file as it was written."""
+
+    size: int
+    digest: str
+
+    @classmethod
+    def of(cls, content: bytes) -> Seal:
+        """Seal some content."""
+        return cls(len(content), hashlib.blake2b(content, digest_size=8).hexdigest())
+
+
+def settle(paths: Iterable[Path]) -> None:
+    """Wait until these files or folders, and the folders that name them, are on the disk."""
+    listed = list(paths)
+    for path in [*listed, *dict.fromkeys(path.parent for path in listed)]:
+        handle = os.open(path, os.O_RDONLY)
+        try:
+            os.fsync(handle)
+        finally:
+            os.close(handle)
+
+
+def write_durably(path: Path, content: bytes) -> None:
+    """Write a small file so that it is found whole or not at all, whatever happens."""
+    partial = path.with_name(f".{path.name}.{os.getpid()}.partial")
+    partial.write_bytes(content)
+    settle([partial])
+    partial.replace(path)
+    settle([path])
+
+
+def compare(folder: Path, seals: Mapping[str, Seal]) -> Iterator[tuple[str, str]]:
+    """Go through the files below a folder that differ from their seals: name and kind of damage."""
+    for name, seal in seals.items():
+        try:
+            present = Seal.of((folder / name).read_bytes())
+        except FileNotFoundError:
+            yield name, "missing"
+            continue
+        if present != seal:
+            yield name, "empty" if not present.size else "truncated" if present.size < seal.size else "altered"

@@ -1,0 +1,144 @@
+"""What is finished: one small durable receipt a task, written after everything the task wrote.
+
+A missing chunk says nothing (it reads as "not done" and so does a lost one), so that receipts alone decide.
+They live in a folder of the ``table_status`` array: zarr looks for no members inside an array, so that every reader
+stays free of warnings, and a store that is moved or copied takes them along.
+"""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Iterator, Mapping
+from dataclasses import asdict, dataclass
+from pathlib import Path
+
+from scanner.errors import StoreError
+from scanner.store.durable import Seal, write_durably
+
+LEDGER = Path("table_status") / "ledger"
+LAYOUT = 1
+
+
+@dataclass(frozen=True)
+class Charter:
+    """What a store was made for; written once, never changed.
+
+    ``template`` seals every file the store was made with (array metadata and coordinates) but the root's own
+    metadata, which also holds the times of the run.
+    """
+
+    fingerprint: str
+    study: str
+    tasks: int
+    tables: int
+    orbits: int
+    bounces: int
+    template: Mapping[str, Seal]
+    layout: int = LAYOUT
+
+
+@dataclass(frozen=True)
+class Receipt:
+    """Proof that a task is finished: what it wrote and what came out.
+
+    ``orbits`` counts the orbits it settles, ``bounces`` what was really computed for them; ``failures`` lists tables
+    by their index in the grid with a one-line reason; ``chunks`` seals each file by its name in the store.
+    """
+
+    task: int
+    kind: str
+    host: str
+    finished: float
+    seconds: float
+    orbits: int
+    bounces: int
+    done: int
+    not_convex: int
+    failed: int
+    failures: tuple[tuple[tuple[int, ...], str], ...]
+    chunks: Mapping[str, Seal]
+
+
+def _sealed_lines(record: Charter | Receipt) -> bytes:
+    line = json.dumps(asdict(record), separators=(",", ":")).encode()
+    return b"%s\n%s\n" % (line, Seal.of(line).digest.encode())
+
+
+def _read_sealed(path: Path) -> dict[str, object] | None:
+    """Read a record, or None where it is missing, torn or altered."""
+    try:
+        line, digest, end = path.read_bytes().split(b"\n")
+    except (FileNotFoundError, ValueError):
+        return None
+    if end or Seal.of(line).digest.encode() != digest:
+        return None
+    record: dict[str, object] = json.loads(line)
+    return record
+
+
+def _seals(record: object) -> dict[str, Seal]:
+    assert isinstance(record, dict)
+    return {name: Seal(**seal) for name, seal in record.items()}
+
+
+class Ledger:
+    """The charter and the receipts of one store."""
+
+    def __init__(self, store: Path) -> None:
+        self.store = store
+        self.folder = store / LEDGER
+        self._receipts = self.folder / "receipts"
+
+    def found(self, charter: Charter) -> None:
+        """Begin a ledger in a store that is being made."""
+        self._receipts.mkdir(parents=True)
+        write_durably(self.folder / "charter.json", _sealed_lines(charter))
+
+    def charter(self) -> Charter:
+        """Read what the store was made for.
+
+        Raises
+        ------
+        StoreError
+            The path is missing, is no store of this tool, or was written in a layout not known here.
+        """
+        if not self.store.exists():
+            raise StoreError(f"{self.store}: there is no such store; `scanner sweep STUDY --store PATH` makes one")
+        record = _read_sealed(self.folder / "charter.json")
+        if record is None:
+            raise StoreError(f"{self.store}: not a store of this tool, or its charter is damaged; give another path")
+        if record["layout"] != LAYOUT:
+            raise StoreError(
+                f"{self.store}: written in layout {record['layout']}, this version reads layout {LAYOUT}; "
+                "use the version named in its attributes"
+            )
+        return Charter(**{**record, "template": _seals(record["template"])})  # type: ignore[arg-type]
+
+    def receipt_path(self, task: int) -> Path:
+        """Where the receipt of a task is or will be."""
+        return self._receipts / f"{task:06d}.json"
+
+    def write(self, receipt: Receipt) -> None:
+        """Put a receipt on the disk; the files it names must be there already."""
+        write_durably(self.receipt_path(receipt.task), _sealed_lines(receipt))
+
+    def read(self, task: int) -> Receipt | None:
+        """Read the receipt of a task, or None where there is no sound one."""
+        record = _read_sealed(self.receipt_path(task))
+        if record is None:
+            return None
+        listed = record.pop("failures")
+        assert isinstance(listed, list)
+        failures = tuple((tuple(index), reason) for index, reason in listed)
+        return Receipt(**{**record, "failures": failures, "chunks": _seals(record["chunks"])})  # type: ignore[arg-type]
+
+    def listed(self) -> list[int]:
+        """Tasks that have a receipt, sound or not, in order."""
+        return sorted(int(path.stem) for path in self._receipts.glob("[0-9]*.json"))
+
+    def receipts(self) -> Iterator[Receipt]:
+        """All sound receipts, in the order of their tasks."""
+        for task in self.listed():
+            receipt = self.read(task)
+            if receipt is not None:
+                yield receipt

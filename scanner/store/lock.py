@@ -1,0 +1,143 @@
+"""One client at a time on a store."""
+
+from __future__ import annotations
+
+import json
+import os
+import socket
+import time
+from dataclasses import asdict, dataclass
+from pathlib import Path
+from types import TracebackType
+
+import psutil
+
+from scanner.errors import StoreError
+from scanner.store.ledger import Ledger
+
+BEAT_SECONDS = 15.0
+SILENCE_SECONDS = 120.0
+
+
+@dataclass(frozen=True)
+class Holder:
+    """The process that holds a store; ``born`` tells it from a later one with the same number."""
+
+    host: str
+    pid: int
+    born: float
+
+    @classmethod
+    def here(cls) -> Holder:
+        """Describe this process."""
+        return cls(socket.gethostname(), os.getpid(), psutil.Process().create_time())
+
+
+class StoreLock:
+    """Hold a store while workers write to it.
+
+    The holder shows a sign of life from time to time.  On its own host a holder is judged by whether its process
+    exists, from other hosts by how long it has been silent, so that a job killed with its node never blocks for long.
+    """
+
+    def __init__(self, store: Path) -> None:
+        self.store = store
+        self._path = Ledger(store).folder / "lock"
+        self._own = Holder.here()
+        self._last_beat = 0.0
+
+    def __enter__(self) -> StoreLock:
+        """Take the store.
+
+        Raises
+        ------
+        StoreError
+            Another process is running on it.
+        """
+        while not self._take():
+            holder, silent = self._look()
+            if holder is None:
+                continue
+            if _lives(holder, silent):
+                raise StoreError(
+                    f"{self.store}: in use by process {holder.pid} on {holder.host}, which gave a sign of life "
+                    f"{silent:.0f} s ago; wait for it or stop it (silence of {SILENCE_SECONDS:.0f} s frees the store)"
+                )
+            self._evict(holder)
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        """Leave the store, unless it was taken over meanwhile."""
+        if self._look()[0] == self._own:
+            self._path.unlink()
+
+    def beat(self) -> None:
+        """Show a sign of life; cheap enough to be called at every turn of a loop.
+
+        Raises
+        ------
+        StoreError
+            The store was taken over, because this process had been silent (asleep, say) for long.
+        """
+        if time.monotonic() - self._last_beat < BEAT_SECONDS:
+            return
+        holder = self._look()[0]
+        if holder != self._own:
+            raise StoreError(f"{self.store}: taken over by {holder or 'someone'} while this process was not responding")
+        os.utime(self._path)
+        self._last_beat = time.monotonic()
+
+    def _take(self) -> bool:
+        """Put the lock in place whole, or find that there is one."""
+        offer = self._path.with_name(f".lock.{self._own.host}.{self._own.pid}")
+        offer.write_text(json.dumps(asdict(self._own)))
+        try:
+            os.link(offer, self._path)
+        except FileExistsError:
+            return False
+        finally:
+            offer.unlink()
+        self._last_beat = time.monotonic()
+        return True
+
+    def _look(self) -> tuple[Holder | None, float]:
+        return look(self.store)
+
+    def _evict(self, dead: Holder) -> None:
+        """Remove the lock of a dead holder; if another was quicker and took the store meanwhile, give it back."""
+        aside = self._path.with_name(f".evicted.{self._own.host}.{self._own.pid}")
+        try:
+            self._path.rename(aside)
+        except FileNotFoundError:
+            return
+        if json.loads(aside.read_text()) != asdict(dead):
+            os.link(aside, self._path)
+        aside.unlink()
+
+
+def look(store: Path) -> tuple[Holder | None, float]:
+    """Who holds a store, if anyone, and for how many seconds it has been silent."""
+    path = Ledger(store).folder / "lock"
+    try:
+        holder = Holder(**json.loads(path.read_text()))
+        return holder, max(0.0, time.time() - path.stat().st_mtime)
+    except FileNotFoundError:
+        return None, 0.0
+
+
+def is_running(store: Path) -> bool:
+    """Whether a living process holds the store."""
+    holder, silent = look(store)
+    return holder is not None and _lives(holder, silent)
+
+
+def _lives(holder: Holder, silent: float) -> bool:
+    if holder.host != socket.gethostname():
+        return silent < SILENCE_SECONDS
+    try:
+        born: float = psutil.Process(holder.pid).create_time()
+    except psutil.NoSuchProcess:
+        return False
+    return abs(born - holder.born) < 1.0

@@ -1,0 +1,32 @@
+"""Reading a store."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import xarray as xr
+
+from scanner.store.ledger import Ledger
+
+
+def open_sweep(path: str | Path) -> xr.DataTree:
+    """Open a store as labelled data, finished or not; values are read when they are used.
+
+    Parameters
+    ----------
+    path
+        The folder of the store.
+
+    Returns
+    -------
+    DataTree
+        One value a table at the root, one value an orbit in the group ``orbits``; swept parameters are dimensions.
+        A table that is not done is NaN, and ``table_status`` says why.
+
+    Raises
+    ------
+    StoreError
+        The path is missing or not a store of this tool.
+    """
+    Ledger(Path(path)).charter()
+    return xr.open_datatree(path, engine="zarr", consolidated=False)

@@ -1,0 +1,206 @@
+"""The empty store of a study: all metadata and coordinates, no results; workers then fill disjoint regions of it."""
+
+from __future__ import annotations
+
+import os
+import platform
+import shutil
+import socket
+import sys
+import warnings
+from collections.abc import Iterable, Iterator
+from contextlib import contextmanager
+from datetime import UTC, datetime
+from importlib.metadata import version
+from pathlib import Path
+from typing import Any
+from uuid import uuid4
+
+import numpy as np
+import zarr
+from zarr.codecs import ZstdCodec
+
+from scanner.errors import StoreError
+from scanner.quantities import ORBITS, P_BINS, PERIODS, REGISTER, ROOT
+from scanner.store.durable import Seal, settle
+from scanner.store.ledger import Charter, Ledger
+from scanner.study import Plan
+from scanner.tables import FAMILIES
+
+ROOT_METADATA = "zarr.json"
+"""The one file of a store that differs between two runs of a study, beside the ledger: it holds times and host."""
+
+
+def prepare_store(path: Path, plan: Plan) -> None:
+    """Make the store of a plan, or see that the one there is of the same study and mend its metadata.
+
+    Raises
+    ------
+    StoreError
+        The path holds something else, or cannot be written; nothing is changed then.
+    """
+    if not path.exists() or (path.is_dir() and not any(path.iterdir())):
+        try:
+            with _template(path, plan) as template:
+                template.rename(path)
+            settle([path])
+            return
+        except OSError as error:
+            if not path.exists():
+                raise StoreError(f"{path}: cannot be made ({error}); give a place that can be written") from None
+    check_fingerprint(path, plan)
+    _restore_template(path, plan)
+
+
+def check_fingerprint(path: Path, plan: Plan) -> None:
+    """See that a store was made for this plan.
+
+    Raises
+    ------
+    StoreError
+        It is not a store, or one of another study.
+    """
+    found = Ledger(path).charter().fingerprint
+    wanted = plan.study.fingerprint
+    if found != wanted:
+        raise StoreError(
+            f"{path}: holds another study (fingerprint {found[:12]}, this one {wanted[:12]}); "
+            "give another --store, or the study file it was made from"
+        )
+
+
+def note_finish(path: Path, finished: bool) -> None:
+    """Set or remove the time of completion among the root's attributes."""
+    root = zarr.open_group(path, mode="r+")
+    if finished:
+        root.attrs["finished"] = _now()
+    elif "finished" in root.attrs:
+        del root.attrs["finished"]
+
+
+def _restore_template(path: Path, plan: Plan) -> None:
+    """Write missing metadata and coordinates again; they follow from the study."""
+    missing = [name for name in Ledger(path).charter().template if not (path / name).exists()]
+    if not (path / ROOT_METADATA).exists():
+        missing.append(ROOT_METADATA)
+    if not missing:
+        return
+    with _template(path, plan) as template:
+        for name in missing:
+            (path / name).parent.mkdir(parents=True, exist_ok=True)
+            (template / name).replace(path / name)
+    settle(path / name for name in missing)
+
+
+@contextmanager
+def _template(path: Path, plan: Plan) -> Iterator[Path]:
+    """Build the empty store beside its place, whole and on the disk."""
+    path.parent.mkdir(parents=True, exist_ok=True)
+    folder = path.with_name(f".{path.name}.{uuid4().hex}.partial")
+    try:
+        _write_arrays(folder, plan)
+        files = sorted(file for file in folder.rglob("*") if file.is_file())
+        seals = {str(file.relative_to(folder)): Seal.of(file.read_bytes()) for file in files}
+        del seals[ROOT_METADATA]
+        study = plan.study
+        Ledger(folder).found(
+            Charter(
+                fingerprint=study.fingerprint,
+                study=study.text,
+                tasks=len(plan.tasks),
+                tables=plan.table_count,
+                orbits=study.orbits.per_table,
+                bounces=study.orbits.bounces,
+                template=seals,
+            )
+        )
+        settle(files)
+        yield folder
+    finally:
+        shutil.rmtree(folder, ignore_errors=True)
+
+
+def _write_arrays(folder: Path, plan: Plan) -> None:
+    root = zarr.create_group(folder, zarr_format=3, attributes=_root_attributes(plan))
+    groups = {ROOT: root, ORBITS: root.create_group(ORBITS)}
+    for quantity in REGISTER.values():
+        _create_array(
+            groups[quantity.group],
+            quantity.name,
+            plan.array_dims(quantity),
+            plan.array_shape(quantity),
+            plan.chunk_shape(quantity),
+            np.dtype(quantity.dtype),
+            quantity.fill_value,
+            quantity.attributes(),
+        )
+    for dim, values, meaning in _coordinates(plan):
+        group = groups[ORBITS if dim == "orbit" else ROOT]
+        attributes: dict[str, Any] = {"long_name": meaning, "units": "1"}
+        fill = 0 if values.dtype.kind == "i" else np.nan
+        array = _create_array(group, dim, (dim,), values.shape, values.shape, values.dtype, fill, attributes)
+        array[:] = values
+    with warnings.catch_warnings():
+        # Not yet in the specification, as zarr warns; without it plain xarray warns at every opening instead.
+        warnings.filterwarnings("ignore", "Consolidated metadata", category=UserWarning)
+        zarr.consolidate_metadata(folder)
+
+
+def _create_array(
+    group: zarr.Group,
+    name: str,
+    dims: tuple[str, ...],
+    shape: tuple[int, ...],
+    chunks: tuple[int, ...],
+    dtype: np.dtype[np.generic],
+    fill_value: float | int,
+    attributes: dict[str, Any],
+) -> zarr.Array[Any]:
+    return group.create_array(
+        name,
+        shape=shape,
+        chunks=chunks,
+        dtype=dtype,
+        fill_value=fill_value,
+        dimension_names=dims,
+        attributes=attributes,
+        # The checksum lets every reader notice a flipped byte; "." keeps all chunks of an array in one folder.
+        compressors=ZstdCodec(level=3, checksum=True),
+        chunk_key_encoding={"name": "default", "separator": "."},
+        config={"write_empty_chunks": True},
+    )
+
+
+def _coordinates(plan: Plan) -> Iterable[tuple[str, np.ndarray[tuple[int], np.dtype[np.generic]], str]]:
+    """Dimension, values and meaning of every coordinate."""
+    family = FAMILIES.get(plan.study.family)
+    meanings = {parameter.name: parameter.meaning for parameter in family.parameters} if family else {}
+    for name, values in plan.study.swept.items():
+        yield name, np.array(values), meanings.get(name, name)
+    sizes = plan.sizes
+    yield "replicate", np.arange(sizes["replicate"]), "independent scrambling of the initial conditions"
+    yield "horizon", np.array(plan.horizons), "bounces after which the verdict is given"
+    yield "p_bin", (2 * np.arange(P_BINS) + 1) / P_BINS - 1, "centre of the bin of p"
+    yield "period", np.array(PERIODS), "period q of the island"
+    yield "orbit", np.arange(sizes["orbit"]), "number of the orbit, replicate after replicate"
+
+
+def _root_attributes(plan: Plan) -> dict[str, str]:
+    libraries = ("numpy", "numba", "scipy", "zarr", "distributed")
+    return {
+        "Conventions": "CF-1.11",
+        "title": plan.study.title,
+        "study": plan.study.text,
+        "fingerprint": plan.study.fingerprint,
+        "versions": ", ".join(f"{name} {version(name)}" for name in ("scanner", *libraries)),
+        "python": sys.version.split()[0],
+        "platform": platform.platform(),
+        "processor": platform.machine(),
+        "host": socket.gethostname(),
+        "cores": str(os.cpu_count()),
+        "started": _now(),
+    }
+
+
+def _now() -> str:
+    return datetime.now(UTC).isoformat(timespec="seconds")
