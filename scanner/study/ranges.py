@@ -8,7 +8,8 @@ from __future__ import annotations
 
 from decimal import Context, Decimal, localcontext
 from fractions import Fraction
-from itertools import pairwise
+from itertools import accumulate, pairwise, repeat
+from operator import mul
 from typing import Annotated, Literal
 
 from pydantic import Field
@@ -129,8 +130,9 @@ def _spread_log(written: Range, whole: bool, path: str) -> tuple[Number, ...]:
     with localcontext(Context(prec=LOG_DIGITS)):
         first, last = Decimal(repr(written.start)), Decimal(repr(written.stop))
         steps = written.count - 1
-        pace = (last / first).ln() / steps
-        inner = [first * (pace * i).exp() for i in range(1, steps)]
+        ratio = ((last / first).ln() / steps).exp()
+        # A million products lose 6 of the 40 digits, a double holds 17.
+        inner = list(accumulate(repeat(ratio, steps - 1), mul, initial=first))[1:]
         if not whole:
             return (as_float(written.start), *map(float, inner), as_float(written.stop))
         if any(abs(value - round(value)) > WHOLE_TOLERANCE * value for value in inner):
