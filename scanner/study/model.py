@@ -193,7 +193,8 @@ class Study:
     allow_code
         Whether a ``module:function`` family may run.
     sources
-        SHA-256 of the contents of every file outside the study that decides a result, by its role.
+        SHA-256 of the contents of the file outside the study that decides a result, if there is one: of an outline
+        under ``file``, of the module of a function of the user's own under ``family``.
     folder
         Where relative paths in the text start, absolute: with the text it makes the same study elsewhere.
     """
@@ -219,9 +220,8 @@ class Study:
         deciding = {
             "seed": self.seed,
             "family": self.family,
-            "fixed": {name: value for name, value in self.fixed.items() if name not in self.sources},
+            "fixed": {**self.fixed, **self.sources},
             "swept": [[name, list(values)] for name, values in self.swept.items()],
             "orbits": self.orbits.model_dump(),
-            "sources": dict(self.sources),
         }
         return hashlib.sha256(json.dumps(deciding, sort_keys=True, allow_nan=False).encode()).hexdigest()

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import hashlib
 import re
 import tomllib
 from collections.abc import Mapping
@@ -10,8 +9,9 @@ from pathlib import Path
 
 from scanner.errors import StudyError
 from scanner.study.messages import nearest, read_section, shown, written
-from scanner.study.model import Heading, Orbits, Resources, Study, Value
+from scanner.study.model import Heading, Orbits, Resources, Study
 from scanner.study.parameters import read_parameters
+from scanner.study.sources import absolute_path, read_sources
 
 SECTIONS = {
     "study": (*Heading.model_fields,),
@@ -111,8 +111,10 @@ def _build(document: Mapping[str, object], text: str, allow_code: bool, folder: 
     orbits = read_section(Orbits, document["orbits"], "orbits")
     resources = read_section(Resources, document.get("resources", {}), "resources")
     if resources.scheduler_file:
-        resources = resources.model_copy(update={"scheduler_file": str(_place(resources.scheduler_file, folder))})
-    fixed, sources = _read_sources(family, parameters.fixed, folder)
+        resources = resources.model_copy(
+            update={"scheduler_file": str(absolute_path(resources.scheduler_file, folder))}
+        )
+    fixed, sources = read_sources(family, parameters.fixed, folder)
     return Study(
         heading.title,
         heading.seed,
@@ -150,24 +152,3 @@ def _refuse_misplaced(section: str, entries: Mapping[str, object]) -> None:
             raise StudyError(
                 f"{section}.{key} = {shown(value)} is not known: it belongs in [{homes[0]}]; move it there"
             )
-
-
-def _place(written_path: str, folder: Path) -> Path:
-    """Absolute path of a file named in the study."""
-    return (folder / Path(written_path).expanduser()).resolve()
-
-
-def _read_sources(family: str, fixed: Mapping[str, Value], folder: Path) -> tuple[dict[str, Value], dict[str, str]]:
-    """Find the files outside the study that decide a result, with the hash of what is in them."""
-    values, sources = dict(fixed), {}
-    if family == "outline_file":
-        path = _place(str(fixed["file"]), folder)
-        try:
-            sources["file"] = hashlib.sha256(path.read_bytes()).hexdigest()
-        except OSError as error:
-            raise StudyError(
-                f"table.file = {shown(fixed['file'])} cannot be read: {error.strerror or error} ({path}); "
-                "give the path of a text file of points, relative to the study's folder"
-            ) from None
-        values["file"] = str(path)
-    return values, sources

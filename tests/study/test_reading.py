@@ -3,6 +3,8 @@
 import re
 
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from scanner.errors import StudyError
 from scanner.study import load_study, make_plan, parse_study
@@ -217,16 +219,22 @@ def test_a_bad_study_gets_one_line(old, new, message):
     assert len(line) < 400
 
 
-def test_own_code_is_free_in_its_parameters():
-    text = changed("radial_harmonic", "mine:make").replace("amplitude", "width")
-    study = parse_study(
-        text.replace("harmonic = 2\n", "harmonic = { start = 1, stop = 3, count = 3 }\n"), allow_code=True
-    )
-    assert study.swept["harmonic"] == (1, 2, 3)
-    assert study.swept["width"][1] == 0.005
-    with pytest.raises(StudyError, match=r"table\.area cannot be swept: the store has a variable of that name; rename"):
-        parse_study(text.replace("width", "area"), allow_code=True)
-    with pytest.raises(StudyError, match=r"table\.class must be the name of a parameter of mine:make; rename it"):
-        parse_study(text.replace("width", "class"), allow_code=True)
-    with pytest.raises(StudyError, match=r'table\.harmonic = "2" must be a finite number'):
-        parse_study(text.replace("harmonic = 2\n", 'harmonic = "2"\n'), allow_code=True)
+PIECES = st.one_of(
+    st.sampled_from(
+        ["nan", "-inf", "1e999", '"', "'", "[", "]", "{", "}", "=", ".", ",", "\n", "\\", "true", "0x", "-"]
+    ),
+    st.text(max_size=4),
+    st.integers().map(str),
+    st.floats().map(repr),
+)
+
+
+@settings(deadline=None, max_examples=400)
+@given(st.integers(0, len(GOOD)), st.integers(0, 12), PIECES)
+def test_a_damaged_study_is_read_or_refused_in_one_line(start, length, piece):
+    text = GOOD[:start] + piece + GOOD[start + length :]
+    try:
+        outcome = parse_study(text).fingerprint
+    except StudyError as error:
+        outcome = str(error)
+    assert outcome.isprintable()
