@@ -23,7 +23,7 @@ TITLE = "Invented numbers"
 
 
 def invented_sweep(
-    swept: Mapping[str, Sequence[float | int | str]],
+    swept: Mapping[str, Sequence[float]],
     *,
     orbits: int = 64,
     title: str = TITLE,
@@ -141,7 +141,7 @@ def _invent_orbits(
     return random.random(shape)
 
 
-def study_text(swept: Mapping[str, Sequence[float | int | str]], orbits: int, title: str) -> str:
+def study_text(swept: Mapping[str, Sequence[float]], orbits: int, title: str) -> str:
     """Write the study such a sweep would come from."""
     quoted = title.replace("\\", "\\\\").replace('"', '\\"')
     lines = ["[study]", f'title = "{quoted}"', "seed = 1", "", "[table]", 'family = "invented"', "decay = 2.5"]

@@ -8,10 +8,10 @@ from __future__ import annotations
 from scanner.analysis.export import export_sweep
 from scanner.analysis.files import check_target, replace_whole
 from scanner.analysis.summary import failures, summarise
-from scanner.analysis.sweep import Study, average_tables, pick_tables, study_of, swept_parameters
+from scanner.analysis.sweep import StudyFacts, average_tables, pick_tables, study_of, swept_parameters
 
 __all__ = [
-    "Study",
+    "StudyFacts",
     "average_tables",
     "check_target",
     "export_sweep",

@@ -5,6 +5,7 @@ from __future__ import annotations
 import importlib.util
 from collections.abc import Iterator
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -89,8 +90,8 @@ def _write_netcdf(tree: xr.DataTree, path: Path) -> None:
         for path, data in groups.items()
     }
     plain = xr.DataTree.from_dict(groups).chunk()
-    writing = plain.to_netcdf(path, engine="h5netcdf", encoding=compressed, compute=False)
-    writing.compute(scheduler="synchronous")  # type: ignore[no-untyped-call]
+    writing: Any = plain.to_netcdf(path, engine="h5netcdf", encoding=compressed, compute=False)
+    writing.compute(scheduler="synchronous")
 
 
 def _plain_dataset(data: xr.Dataset) -> xr.Dataset:

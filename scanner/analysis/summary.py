@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
+
+import numpy as np
 import pandas as pd
 import xarray as xr
 
@@ -56,9 +59,25 @@ def horizon_drift(root: xr.Dataset) -> xr.DataArray:
     return drift
 
 
-def failures(root: xr.Dataset) -> pd.DataFrame:
-    """List the tables that failed or are not convex: their parameters and ``table_status``."""
-    rows = to_rows(root[["table_status"]], swept_parameters(root))
+def failures(root: xr.Dataset, reasons: Mapping[tuple[int, ...], str]) -> pd.DataFrame:
+    """List the tables that failed or are not convex.
+
+    Parameters
+    ----------
+    root
+        Root variables of a sweep.
+    reasons
+        Why a table failed, by its index in the grid.
+
+    Returns
+    -------
+    DataFrame
+        Their parameters, ``table_status`` and ``reason``, empty where none is known.
+    """
+    rows = to_rows(root[["table_status"]], swept_parameters(root)).assign(reason="")
+    shape = root["table_status"].shape
+    for index, reason in reasons.items():
+        rows.loc[int(np.ravel_multi_index(index, shape)) if shape else 0, "reason"] = reason
     return rows[rows["table_status"].isin([TABLE_STATUS[NOT_CONVEX], TABLE_STATUS[FAILED]])].reset_index(drop=True)
 
 

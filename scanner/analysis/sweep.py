@@ -14,7 +14,7 @@ from scanner.quantities import DONE
 
 
 @dataclass(frozen=True)
-class Study:
+class StudyFacts:
     """The parts of a study that a reader of its results wants to see; empty or None where the store does not say."""
 
     title: str = ""
@@ -24,14 +24,14 @@ class Study:
     orbits: int | None = None
 
 
-def study_of(tree: xr.DataTree) -> Study:
+def study_of(tree: xr.DataTree | xr.Dataset) -> StudyFacts:
     """Read the study that a sweep answers from its root attributes."""
     try:
         entries = tomllib.loads(str(tree.attrs.get("study", "")))
     except tomllib.TOMLDecodeError:
-        return Study()
+        return StudyFacts()
     table, orbits = entries.get("table", {}), entries.get("orbits", {})
-    return Study(
+    return StudyFacts(
         title=str(entries.get("study", {}).get("title", "")),
         family=str(table.get("family", "")),
         fixed={name: value for name, value in table.items() if name != "family" and not isinstance(value, dict)},
@@ -45,7 +45,7 @@ def swept_parameters(sweep: xr.DataTree | xr.Dataset) -> tuple[str, ...]:
     return tuple(str(name) for name in sweep["table_status"].dims)
 
 
-def pick_tables(tree: xr.DataTree, wanted: Mapping[str, float | str]) -> tuple[xr.DataTree, dict[str, float | str]]:
+def pick_tables(tree: xr.DataTree, wanted: Mapping[str, float | str]) -> tuple[xr.DataTree, dict[str, float]]:
     """Hold swept parameters at their stored values nearest to the wanted ones.
 
     Parameters
@@ -53,7 +53,7 @@ def pick_tables(tree: xr.DataTree, wanted: Mapping[str, float | str]) -> tuple[x
     tree
         A sweep.
     wanted
-        Value by name of swept parameter; a text is taken as a number where the parameter is one.
+        Value by name of swept parameter, as a number or its text.
 
     Returns
     -------
@@ -65,15 +65,15 @@ def pick_tables(tree: xr.DataTree, wanted: Mapping[str, float | str]) -> tuple[x
     Raises
     ------
     ScannerError
-        The name is not swept, or the value is not a number of the parameter's kind.
+        The name is not swept, or the value is not a number.
     """
     positions: dict[str, int] = {}
-    taken: dict[str, float | str] = {}
+    taken: dict[str, float] = {}
     for name, value in wanted.items():
         require_swept(tree, name)
         stored = tree.coords[name].values
         positions[name] = _nearest(name, stored, value)
-        taken[name] = stored[positions[name]].item() if stored.dtype.kind in "fiu" else str(stored[positions[name]])
+        taken[name] = stored[positions[name]].item()
     return tree.isel(positions), taken
 
 
@@ -86,17 +86,12 @@ def require_swept(sweep: xr.DataTree | xr.Dataset, name: str) -> None:
 
 
 def _nearest(name: str, stored: np.ndarray, value: float | str) -> int:
-    if stored.dtype.kind not in "fiu":
-        found = [index for index, entry in enumerate(stored) if str(entry) == str(value)]
-        if not found:
-            raise ScannerError(f"{name} = {value!r} is not stored: choose from {', '.join(map(str, stored))}")
-        return found[0]
     try:
         number = float(value)
     except ValueError:
-        raise ScannerError(f"{name} = {value!r} is not a number: give one, for example {name}={stored[0]}") from None
+        number = np.nan
     if not np.isfinite(number):
-        raise ScannerError(f"{name} = {value!r} is not a finite number: give one, for example {name}={stored[0]}")
+        raise ScannerError(f"{name} = {value!r} is not a number: give one, for example {name}={stored[0]}")
     return int(np.abs(stored - number).argmin())
 
 

@@ -51,7 +51,7 @@ def draw_curve(root: xr.Dataset, quantity: str, along: str, width: str) -> Axes:
     if others:
         (other,) = others
         for value, colour in zip(root[other].values, CYCLE, strict=False):
-            text = f"{parameter_label(other)} = {value:.6g}" if root[other].dtype.kind in "fiu" else str(value)
+            text = f"{parameter_label(other)} = {value:.6g}"
             handles.append(_draw_line(axes, scale, root.sel({other: value}), quantity, colour, text))
         status = status.max(other).where(~(status == DONE).any(other), DONE)
     else:

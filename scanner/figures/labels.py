@@ -64,10 +64,5 @@ def quantity_label(variable: xr.DataArray, width: int = 46) -> str:
     return "\n".join(textwrap.wrap(label, width)) + (f" ({powers.get(units, units)})" if units != "1" else "")
 
 
-def shorten(text: str, longest: int = 16) -> str:
-    """Cut a text that would not fit beside an axis, keeping its end, where file names differ."""
-    return text if len(text) <= longest else "..." + text[3 - longest :]
-
-
 def _plain(name: str) -> str:
     return name.replace("_", " ").replace("$", r"\$")

@@ -12,19 +12,15 @@ from matplotlib.axes import Axes
 from matplotlib.axis import Axis
 from matplotlib.ticker import MaxNLocator
 
-from scanner.figures.labels import parameter_label, shorten
+from scanner.figures.labels import parameter_label
 from scanner.quantities import DONE, TABLE_STATUS
-
-
-MOST_LETTERS_LEVEL = 34
-"""Texts of more letters than this in all are written aslant below a plot of one column."""
 
 
 @dataclass(frozen=True)
 class Scale:
     """Positions and cell edges of a parameter's values along an axis.
 
-    ``positions`` has one entry a value and ``edges`` one more; texts stand at 0, 1, 2, ...
+    ``positions`` has one entry a value and ``edges`` one more.
     """
 
     name: str
@@ -32,7 +28,6 @@ class Scale:
     edges: np.ndarray
     logarithmic: bool
     whole: bool
-    texts: tuple[str, ...] = ()
 
     def dress(self, axes: Axes, side: Literal["x", "y"]) -> None:
         """Give one side of the axes its label, limits, ticks and kind of scale."""
@@ -41,38 +36,29 @@ class Scale:
             (axes.set_xscale if side == "x" else axes.set_yscale)("log")
         (axes.set_xlim if side == "x" else axes.set_ylim)(self.edges[0], self.edges[-1])
         axis.set_label_text(parameter_label(self.name))
-        if self.texts:
-            ticks = [shorten(text) for text in self.texts]
-            axis.set_ticks(self.positions, ticks, parse_math=False)
-            if side == "x" and len("".join(ticks)) > MOST_LETTERS_LEVEL:
-                axis.set_tick_params(rotation=45, rotation_mode="xtick")
-        elif self.whole and not self.logarithmic:
+        if self.whole and not self.logarithmic:
             axis.set_major_locator(MaxNLocator(integer=True, nbins=8))
 
 
 def scale_of(data: xr.Dataset | xr.DataArray, name: str) -> Scale:
     """Find the axis that suits the values of one dimension."""
     values = data[name].values
-    texts: tuple[str, ...] = ()
-    if values.dtype.kind not in "fiu":
-        texts = tuple(str(value) for value in values)
-        values = np.arange(len(values))
-    positions = values.astype(float)
-    logarithmic = not texts and _is_geometric(positions)
-    middle = np.sqrt(positions[1:] * positions[:-1]) if logarithmic else 0.5 * (positions[1:] + positions[:-1])
+    positions, whole = values.astype(float), values.dtype.kind in "iu"
     if len(positions) == 1:
-        return Scale(name, positions, positions[0] + np.array([-0.5, 0.5]), False, values.dtype.kind in "iu", texts)
+        return Scale(name, positions, positions[0] + np.array([-0.5, 0.5]), False, whole)
+    logarithmic = _is_geometric(positions)
+    middle = np.sqrt(positions[1:] * positions[:-1]) if logarithmic else 0.5 * (positions[1:] + positions[:-1])
     first, last = (
         (positions[0] ** 2 / middle[0], positions[-1] ** 2 / middle[-1])
         if logarithmic
         else (2 * positions[0] - middle[0], 2 * positions[-1] - middle[-1])
     )
     edges = np.concatenate([[first], middle, [last]])
-    return Scale(name, positions, edges, logarithmic, values.dtype.kind in "iu", texts)
+    return Scale(name, positions, edges, logarithmic, whole)
 
 
 def _is_geometric(values: np.ndarray) -> bool:
-    """Tell whether positive values grow by one factor of more than a third in all rather than by one step."""
+    """Tell whether positive values grow by one factor rather than by one step."""
     if len(values) < 3 or (values <= 0).any() or (np.diff(values) <= 0).any():
         return False
     factors, steps = np.diff(np.log(values)), np.diff(values)

@@ -65,9 +65,7 @@ def test_netcdf_holds_both_groups_for_an_independent_reader(tmp_path):
     assert "note" not in found["attributes"]
 
 
-def test_netcdf_of_texts_and_of_one_table(tmp_path):
-    export_sweep(invented_sweep({"outline": ["a b.txt", "é.txt"]}), tmp_path / "texts.nc")
-    assert read_with_netcdf4(tmp_path / "texts.nc")["coordinates"]["outline"] == ["a b.txt", "é.txt"]
+def test_netcdf_of_one_table_has_no_parameters(tmp_path):
     export_sweep(invented_sweep({}), tmp_path / "single.nc")
     assert read_with_netcdf4(tmp_path / "single.nc")["dims"] == ["orbit"]
 

@@ -47,10 +47,17 @@ def test_failures_are_those_that_failed_or_are_not_convex():
     root = invented_sweep(SWEPT).to_dataset()
     root["table_status"].values[0, 1] = 3
     root["table_status"].values[1, 1] = 0
-    rows = failures(root)
-    assert rows.iloc[0].tolist() == [0.0, 3, "failed"]
+    rows = failures(root, {(0, 1): "it would not close"})
+    assert rows.iloc[0].tolist() == [0.0, 3, "failed", "it would not close"]
+    assert set(rows["reason"][1:]) == {""}
     assert set(rows["table_status"]) == {"failed", "not_convex"}
     counts = count_statuses(root)
     assert counts["pending"] == counts["failed"] == 1
     assert sum(counts.values()) == 14
     assert len(rows) == counts["failed"] + counts["not_convex"]
+
+
+def test_a_single_table_that_failed_is_listed_with_its_reason():
+    root = invented_sweep({}).to_dataset()
+    root["table_status"].values[()] = 3
+    assert failures(root, {(): "it would not close"}).iloc[0].tolist() == ["failed", "it would not close"]

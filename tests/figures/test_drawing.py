@@ -20,7 +20,6 @@ from scanner.figures.drawing import draw_figure
 AMPLITUDES = np.linspace(0.0, 0.12, 13).tolist()
 ONE = {"amplitude": AMPLITUDES}
 TWO = {"amplitude": AMPLITUDES, "harmonic": [2, 3, 4]}
-TEXTS = {"outline": ["a.txt", "a long name of a measured outline.txt", "c_$x^$.txt"]}
 AWKWARD_TITLE = (
     'A "quoted" title of Größe $5, 100 % as long as titles are when people describe everything they did in it'
 )
@@ -125,8 +124,7 @@ CASES = [
     (TWO, Request()),
     (TWO, Request(kind="curve", quantity="diffusion_median")),
     ({"amplitude": np.geomspace(1e-4, 0.1, 7).tolist()}, Request()),
-    (TEXTS, Request()),
-    ({**TEXTS, "amplitude": [0.0, 0.5, 1.0]}, Request()),
+    ({"eccentricity": [0.1, 0.2, 0.5], "amplitude": [0.0, 0.5, 1.0]}, Request()),
     ({"amplitude": [0.03]}, Request()),
 ]
 

@@ -1,0 +1,82 @@
+"""Commands that look after a store and an installation: progress, verify, selfcheck."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from scanner.cli.options import store_argument
+from scanner.cli.terminal import align, duration, print_lines
+
+if TYPE_CHECKING:
+    from scanner.store import SweepProgress
+
+
+@click.command(short_help="How far a sweep is.")
+@store_argument
+def progress(store: Path) -> None:
+    """Print how far the sweep in PATH is, while it is being written or long after."""
+    from scanner.store import sweep_progress
+
+    state = sweep_progress(store)
+    share = state.tasks_finished / state.tasks
+    click.echo(f"tasks   {state.tasks_finished:,} of {state.tasks:,} ({100 * share:.1f} %), {_activity(state)}")
+    click.echo(
+        f"tables  {state.settled:,} of {state.tables:,}: {state.done:,} done, "
+        f"{state.not_convex:,} not convex, {state.failed:,} failed"
+    )
+    if state.bounces_per_second is not None:
+        left = "" if state.complete or state.seconds_left is None else f", {duration(state.seconds_left)} left"
+        click.echo(f"rate    {state.bounces_per_second / 1e6:,.1f} million bounces/s{left}")
+    if state.hosts:
+        click.echo("hosts   " + ", ".join(f"{host} {100 * part:.0f} %" for host, part in state.hosts.items()))
+    if state.failed:
+        click.echo("failed  list the tables with `scanner summary --failed`")
+
+
+def _activity(state: SweepProgress) -> str:
+    if state.complete:
+        return "complete"
+    return "running" if state.running else "not running: the same `scanner sweep` carries on"
+
+
+@click.command(short_help="Look for damage in a store, and clear it.")
+@store_argument
+@click.option("--repair", is_flag=True, help="Clear damaged blocks, so that the next sweep computes them again.")
+def verify(store: Path, repair: bool) -> int:
+    """Compare every finished block of the sweep in PATH with its recorded checksum and list damage."""
+    from scanner.store import repair as repair_store
+    from scanner.store import verify as verify_store
+
+    damaged = repair_store(store) if repair else verify_store(store)
+    for damage in damaged:
+        click.echo(str(damage))
+    if not damaged:
+        click.echo("all finished blocks are as they were written")
+        return 0
+    if repair:
+        click.echo(f"cleared {len(damaged):,} files: run the same `scanner sweep` to compute them again")
+        return 0
+    click.echo(f"{len(damaged):,} files are damaged: clear them with --repair, then sweep again", err=True)
+    return 1
+
+
+@click.command(short_help="This installation against closed forms.")
+def selfcheck() -> int:
+    """Compare the numbers of this installation with closed forms, in under a minute."""
+    import pandas as pd
+
+    from scanner.selfcheck import run_checks
+
+    checks = list(run_checks())
+    rows = [
+        (check.name, f"{check.value:.15g}", f"{check.truth:.15g}", f"{check.difference:.1e}", f"{check.bound:.0e}",
+         "ok" if check.holds else "FAILED")
+        for check in checks
+    ]  # fmt: skip
+    print_lines(align(pd.DataFrame(rows, columns=["check", "value", "truth", "difference", "bound", "verdict"])))
+    failed = sum(not check.holds for check in checks)
+    click.echo(f"\n{len(checks) - failed} of {len(checks)} checks hold")
+    return 1 if failed else 0

@@ -1,0 +1,105 @@
+"""The summary as people and programs read it."""
+
+from __future__ import annotations
+
+import json
+import shutil
+import sys
+from collections.abc import Callable, Sequence
+
+import click
+import pandas as pd
+import xarray as xr
+
+from scanner.analysis import study_of, summarise, swept_parameters
+from scanner.analysis.summary import DRIFT, count_statuses, largest_drift
+from scanner.cli.terminal import align, number, on_terminal, print_lines, uncertain
+
+DISPENSABLE = ("diffusion", "undecided", "regular volume", "tables", "Lyapunov/bounce")
+"""Columns that make room on a narrow terminal, the first one first."""
+
+
+def list_tables(root: xr.Dataset, most: int) -> None:
+    """Print the summary in aligned columns, with a heading and what to make of them."""
+    study = study_of(root)
+    rows = summarise(root)
+    most = most if on_terminal() else 0
+    texts = _texts(rows if not most else _ends(rows, most), swept_parameters(root))
+    omitted = _fit(texts, shutil.get_terminal_size().columns) if on_terminal() else []
+    lines = align(texts)
+    hidden = len(rows) - len(texts)
+    if hidden:
+        lines.insert(1 + (most + 1) // 2, "...")
+    click.echo(f"{study.title}: {study.family}, {study.orbits} orbits of {study.bounces} bounces a table\n")
+    print_lines(lines)
+    counts = ", ".join(f"{count} {name.replace('_', ' ')}" for name, count in count_statuses(root).items())
+    click.echo(f"\n{len(rows)} tables: {counts}")
+    click.echo(
+        "± one standard error; drift: regular area judged after a quarter of the bounces less that after all, "
+        f"at most {number(largest_drift(root))}"
+    )
+    if hidden:
+        click.echo(f"{hidden} rows are not shown: --rows 0 shows all, --format csv writes all")
+    if omitted:
+        click.echo(f"no room for {', '.join(omitted)}: widen the terminal, or --format csv")
+
+
+def list_failures(rows: pd.DataFrame) -> None:
+    """Print the tables that failed or are not convex."""
+    if rows.empty:
+        click.echo("no table failed, and all that are done are convex")
+        return
+    texts = rows.rename(columns={"table_status": "status"})
+    texts["status"] = texts["status"].str.replace("_", " ")
+    print_lines(align(_written(texts, [name for name in texts if name not in ("status", "reason")])))
+    click.echo("\nwhy a table is not convex: scanner estimate STUDY")
+
+
+def write_rows(rows: pd.DataFrame, form: str) -> None:
+    """Write rows in full precision to standard output."""
+    if form == "csv":
+        rows.to_csv(sys.stdout, index=False)
+    else:
+        known = rows.astype(object).where(rows.notna(), None)
+        click.echo(json.dumps(known.to_dict("records"), indent=1, ensure_ascii=False))
+
+
+def _ends(rows: pd.DataFrame, most: int) -> pd.DataFrame:
+    """Return the first and the last rows."""
+    return rows if len(rows) <= most else pd.concat([rows.head((most + 1) // 2), rows.tail(most // 2)])
+
+
+def _written(rows: pd.DataFrame, names: Sequence[str]) -> pd.DataFrame:
+    """Write the columns of these swept parameters as people do."""
+    return rows.assign(**{name: [f"{value:.6g}" for value in rows[name]] for name in names})
+
+
+def _texts(rows: pd.DataFrame, names: Sequence[str]) -> pd.DataFrame:
+    """Summary as texts under the headings that people see."""
+
+    def column(write: Callable[..., str], *keys: str) -> list[str]:
+        return [write(*values) for values in zip(*(rows[key] for key in keys), strict=True)]
+
+    texts = _written(rows, names)[list(names)]
+    texts["status"] = column(lambda status: status.replace("_", " "), "table_status")
+    if "tables_averaged" in rows:
+        texts["tables"] = column(str, "tables_averaged")
+    texts["regular area"] = column(uncertain, "regular_area_fraction", "regular_area_fraction_stderr")
+    texts["regular volume"] = column(uncertain, "regular_volume_fraction", "regular_volume_fraction_stderr")
+    texts["undecided"] = column(number, "undecided_area_fraction")
+    texts["Lyapunov/bounce"] = column(uncertain, "lyapunov_per_bounce", "lyapunov_per_bounce_stderr")
+    texts["diffusion"] = column(lambda value: number(value, 2), "diffusion_median")
+    texts["drift"] = column(lambda value: number(value, 4, "+"), DRIFT)
+    return texts
+
+
+def _fit(texts: pd.DataFrame, width: int) -> list[str]:
+    """Take columns away until a line fits; say which."""
+    omitted: list[str] = []
+    for heading in DISPENSABLE:
+        if len(align(texts)[0]) <= width:
+            break
+        if heading in texts:
+            del texts[heading]
+            omitted.append(heading)
+    return omitted

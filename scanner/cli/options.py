@@ -1,0 +1,42 @@
+"""Arguments and options that several commands share."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import click
+
+PATH = click.Path(path_type=Path)
+
+store_argument = click.argument("store", metavar="PATH", type=PATH)
+study_argument = click.argument("study", metavar="STUDY", type=PATH)
+allow_code_option = click.option(
+    "--allow-code", is_flag=True, help="Let a family module:function run; it is code of whoever wrote the study."
+)
+force_option = click.option("--force", is_flag=True, help="Replace a file that exists.")
+to_option = click.option("--to", "target", required=True, metavar="FILE", type=PATH, help="The file to write.")
+
+
+def _split_selections(_: click.Context, __: click.Parameter, entries: tuple[str, ...]) -> dict[str, str]:
+    found = {}
+    for entry in entries:
+        name, sign, value = (part.strip() for part in entry.partition("="))
+        if not (name and sign and value):
+            raise click.BadParameter(f"{entry!r} is not NAME=VALUE, for example --select amplitude=0.05")
+        found[name] = value
+    return found
+
+
+select_option = click.option(
+    "--select",
+    multiple=True,
+    metavar="NAME=VALUE",
+    callback=_split_selections,
+    help="Hold a swept parameter at the stored value nearest to this one; may be repeated.",
+)
+average_option = click.option(
+    "--average",
+    multiple=True,
+    metavar="NAME",
+    help="Average over a swept parameter, such as realisation; may be repeated.",
+)

@@ -1,0 +1,132 @@
+"""Commands that read a store: summary, export, figure."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from scanner.cli.options import average_option, force_option, select_option, store_argument, to_option
+from scanner.figures.request import COLOURS, KINDS, WIDTHS
+
+if TYPE_CHECKING:
+    import xarray as xr
+
+
+@contextmanager
+def open_store(path: Path) -> Iterator[xr.DataTree]:
+    """Open a store; what goes wrong because blocks of it are damaged is said in one line."""
+    from scanner.errors import ScannerError, StoreError
+    from scanner.store import open_sweep, verify
+
+    try:
+        with open_sweep(path) as tree:
+            yield tree
+    except (ScannerError, click.ClickException):
+        raise
+    except Exception as error:
+        if damage := verify(path):
+            raise StoreError(
+                f"{path}: {len(damage)} files are damaged, the first is {damage[0]}; "
+                "list them with `scanner verify`, clear them with --repair and run the sweep again"
+            ) from error
+        raise
+
+
+@click.command(short_help="The table of results.")
+@store_argument
+@select_option
+@average_option
+@click.option("--failed", is_flag=True, help="List the tables that failed or are not convex, with reasons.")
+@click.option("--rows", default=40, show_default=True, help="Most rows to show on a terminal; 0 for all.")
+@click.option(
+    "--format",
+    "form",
+    type=click.Choice(["text", "csv", "json"]),
+    default="text",
+    show_default=True,
+    help="Aligned columns, or full precision for a pipe.",
+)
+def summary(store: Path, select: dict[str, str], average: tuple[str, ...], failed: bool, rows: int, form: str) -> None:
+    """Print the table of results of the sweep in PATH."""
+    from scanner.analysis import average_tables, failures, pick_tables, summarise
+    from scanner.analysis.sweep import describe
+    from scanner.cli.listing import list_failures, list_tables, write_rows
+    from scanner.store import sweep_progress
+
+    if failed and (select or average):
+        raise click.UsageError("--failed lists all tables without numbers: leave out --select and --average")
+    with open_store(store) as tree:
+        picked, taken = pick_tables(tree, select)
+        root = average_tables(picked.to_dataset().load(), average)
+        without_numbers = failures(root, sweep_progress(store).failures) if failed else None
+    if taken:
+        click.echo(f"tables at {describe(taken)}", err=True)
+    if form != "text":
+        write_rows(summarise(root) if without_numbers is None else without_numbers, form)
+    elif without_numbers is not None:
+        list_failures(without_numbers)
+    else:
+        list_tables(root, rows)
+
+
+@click.command(short_help="Write netCDF, csv or parquet.")
+@store_argument
+@to_option
+@click.option("--orbits", is_flag=True, help="One row an orbit instead of one row a table.")
+@force_option
+def export(store: Path, target: Path, orbits: bool, force: bool) -> None:
+    """Write the sweep in PATH to a file of another format.
+
+    .nc is the whole sweep as netCDF-4; .csv and .parquet hold one row a table.
+    """
+    from scanner.analysis import export_sweep
+
+    with open_store(store) as tree:
+        export_sweep(tree, target, orbits=orbits, force=force)
+    click.echo(f"wrote {target}", err=True)
+
+
+@click.command(short_help="Draw a figure for print.")
+@store_argument
+@to_option
+@click.option(
+    "--kind",
+    type=click.Choice(KINDS),
+    help="fractions: regular fractions against one parameter. curve: one variable against one parameter. "
+    "map: one variable over two dimensions. portrait: the orbits of one table. "
+    "By default what suits the number of swept parameters.",
+)
+@select_option
+@average_option
+@click.option("--quantity", default="", metavar="VARIABLE", help="Variable of a curve or a map.")
+@click.option("--along", default="", metavar="NAME", help="Parameter of the horizontal axis of a curve.")
+@click.option(
+    "--colour", type=click.Choice(COLOURS), default="verdict", show_default=True, help="Colours of a portrait."
+)
+@click.option(
+    "--width", type=click.Choice(WIDTHS), default="single", show_default=True, help="Columns of a journal's page."
+)
+@force_option
+def figure(
+    store: Path,
+    target: Path,
+    kind: str | None,
+    select: dict[str, str],
+    average: tuple[str, ...],
+    quantity: str,
+    along: str,
+    colour: str,
+    width: str,
+    force: bool,
+) -> None:
+    """Draw the sweep in PATH as a figure for print: PNG, PDF or SVG by the suffix of FILE."""
+    from scanner.figures import Request, write_figure
+
+    request = Request(kind or "", select, average, quantity, along, colour, width)
+    with open_store(store) as tree:
+        taken = write_figure(tree, target, request, force=force)
+    click.echo(f"wrote {target}" + (f", tables at {taken}" if taken else ""), err=True)

@@ -1,0 +1,122 @@
+"""Commands that run a study: estimate, sweep."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from scanner.cli.options import PATH, allow_code_option, study_argument
+from scanner.cli.terminal import duration, size
+from scanner.errors import ScannerError
+
+if TYPE_CHECKING:
+    from scanner.study import Study
+    from scanner.study.estimate import Estimate
+
+QUEUES = ("slurm", "pbs", "lsf", "sge")
+
+
+@click.command(short_help="What a study will cost; checks every table first.")
+@study_argument
+@click.option("--store", type=PATH, metavar="PATH", help="Where the store will be, to compare with the free space.")
+@allow_code_option
+def estimate(study: Path, store: Path | None, allow_code: bool) -> None:
+    """Check every table of STUDY and print what the sweep will cost, from a short calibration on this machine."""
+    from scanner.study import load_study
+
+    asked = load_study(study, allow_code)
+    found = _estimate(asked, store)
+    click.echo(f"{asked.title}: {asked.family}")
+    for name, value in (
+        ("tables", f"{found.tables:,}"),
+        ("not convex", f"{found.not_convex:,}"),
+        ("cannot be built", f"{found.failed:,}"),
+        ("orbits", f"{found.orbits:,}"),
+        ("bounces", f"{found.bounces:,}"),
+        ("tasks", f"{found.tasks:,}"),
+        ("store, at most", size(found.store_bytes)),
+        ("one bounce", f"{found.nanoseconds_per_bounce:.0f} ns" if found.nanoseconds_per_bounce else "-"),
+        ("core-hours", f"{found.core_hours:,.3g}"),
+        ("that is", f"{duration(3600 * found.core_hours)} on one core like this one"),
+    ):
+        click.echo(f"{name:>16}  {value}")
+    _list_faults(found)
+
+
+@click.command(short_help="Run a study, or carry on with it.")
+@study_argument
+@click.option("--store", required=True, type=PATH, metavar="PATH", help="Folder of the store; made if there is none.")
+@click.option("--workers", type=click.IntRange(min=1), metavar="N", help="Processes on this machine; one a core.")
+@click.option("--scheduler", metavar="ADDRESS", help="A scheduler that is running, such as tcp://host:8786.")
+@click.option("--scheduler-file", metavar="FILE", type=PATH, help="The file in which a running scheduler is named.")
+@allow_code_option
+@click.option("--yes", is_flag=True, help="Submit jobs to the queue of a cluster without asking.")
+def sweep(
+    study: Path,
+    store: Path,
+    workers: int | None,
+    scheduler: str | None,
+    scheduler_file: Path | None,
+    allow_code: bool,
+    yes: bool,
+) -> int:
+    """Run STUDY and write its store; on a store that holds part of it, carry on.
+
+    Ctrl-C lets the tasks in flight finish, a second one stops at once; what is finished is kept.
+    """
+    from scanner.engine import run_study
+    from scanner.study import load_study
+
+    if scheduler is not None and scheduler_file is not None:
+        raise click.UsageError("--scheduler and --scheduler-file exclude each other: give one of them")
+    asked = load_study(study, allow_code)
+    if asked.resources.runner in QUEUES and not (scheduler or scheduler_file or yes):
+        _confirm(asked, store, workers)
+    report = run_study(
+        asked,
+        store,
+        workers=workers,
+        scheduler=scheduler,
+        scheduler_file=str(scheduler_file) if scheduler_file else None,
+        allow_code=allow_code,
+    )
+    click.echo(str(report))
+    for line in report.failures:
+        click.echo(f"failed: {line}", err=True)
+    return report.exit_status
+
+
+def _estimate(asked: Study, store: Path | None) -> Estimate:
+    from scanner.study import make_plan
+    from scanner.study.estimate import estimate_cost
+
+    return estimate_cost(make_plan(asked), store)
+
+
+def _list_faults(found: Estimate) -> None:
+    """Name the first tables on which there will be no orbits, and why."""
+    from scanner.analysis.sweep import describe
+
+    for fault in found.faults:
+        click.echo(f"{fault.state.replace('_', ' ')}: {describe(fault.parameters)}: {fault.reason}")
+    hidden = found.not_convex + found.failed - len(found.faults)
+    if hidden:
+        click.echo(f"... and {hidden:,} more")
+
+
+def _confirm(asked: Study, store: Path, workers: int | None) -> None:
+    """Say what will be asked of the cluster and have it confirmed; where nobody can answer, refuse."""
+    found = _estimate(asked, store)
+    runner = asked.resources.runner
+    click.echo(
+        f"{found.tables:,} tables ({found.not_convex:,} not convex), {found.tasks:,} tasks, "
+        f"{found.core_hours:,.3g} core-hours, store at most {size(found.store_bytes)}; "
+        f"{workers or asked.resources.workers or 'no number of'} workers from {runner}",
+        err=True,
+    )
+    if not sys.stdin.isatty():
+        raise ScannerError(f'runner = "{runner}" submits jobs to a queue: confirm it with --yes')
+    click.confirm("submit?", abort=True, err=True)
