@@ -190,13 +190,13 @@ class Study:
         Where it runs.
     text
         The study file as written.
+    folder
+        Absolute path of the folder where relative paths in the text start, to read it again elsewhere.
     allow_code
         Whether a ``module:function`` family may run.
     sources
         SHA-256 of the contents of the file outside the study that decides a result, if there is one: of an outline
         under ``file``, of the module of a function of the user's own under ``family``.
-    folder
-        Where relative paths in the text start, absolute: with the text it makes the same study elsewhere.
     """
 
     title: str
@@ -207,9 +207,9 @@ class Study:
     orbits: Orbits
     resources: Resources
     text: str
+    folder: str
     allow_code: bool
     sources: Mapping[str, str]
-    folder: str = "."
 
     @cached_property
     def fingerprint(self) -> str:

@@ -116,17 +116,17 @@ def _build(document: Mapping[str, object], text: str, allow_code: bool, folder: 
         )
     fixed, sources = read_sources(family, parameters.fixed, folder)
     return Study(
-        heading.title,
-        heading.seed,
-        family,
-        fixed,
-        parameters.swept,
-        orbits,
-        resources,
-        text,
-        allow_code,
-        sources,
-        str(folder.absolute()),
+        title=heading.title,
+        seed=heading.seed,
+        family=family,
+        fixed=fixed,
+        swept=parameters.swept,
+        orbits=orbits,
+        resources=resources,
+        text=text,
+        folder=str(folder.resolve()),
+        allow_code=allow_code,
+        sources=sources,
     )
 
 

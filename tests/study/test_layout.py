@@ -28,7 +28,7 @@ big_shapes = st.lists(st.integers(1, 2000), max_size=3).map(tuple).filter(lambda
 def study_of(shape: tuple[int, ...], per_table: int, bounces: int, workers: int = 1) -> Study:
     swept = {f"axis{i}": tuple(float(value) for value in range(size)) for i, size in enumerate(shape)}
     orbits = Orbits(per_table=per_table, bounces=bounces, replicates=2)
-    return Study("grid", 1, "any", {"other": 1}, swept, orbits, Resources(workers=workers), "", False, {})
+    return Study("grid", 1, "any", {"other": 1}, swept, orbits, Resources(workers=workers), "", ".", False, {})
 
 
 @settings(deadline=None, max_examples=60)

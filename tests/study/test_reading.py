@@ -89,6 +89,7 @@ def test_paths_are_relative_to_the_study(tmp_path):
     (tmp_path / "mine.toml").write_text(text)
     resources = load_study(tmp_path / "mine.toml").resources
     assert resources.scheduler_file == str(tmp_path / "cluster" / "scheduler.json")
+    assert load_study(tmp_path / "mine.toml").folder == str(tmp_path)
 
 
 def test_load_study_names_the_file(tmp_path):
