@@ -45,9 +45,7 @@ def turned(vr: float, vi: float, step: float) -> tuple[float, float]:
 
 
 @kernel
-def bracket_half_advance(
-    highest: int, quotient: Floats, lane: int, vr: float, vi: float
-) -> tuple[bool, float, float]:
+def bracket_half_advance(highest: int, quotient: Floats, lane: int, vr: float, vi: float) -> tuple[bool, float, float]:
     """Zero of g in 0 < h < pi for one lane: (found, cos h, sin h); an estimate that has settled is kept."""
     value, slope = quotient_value(highest, quotient, lane, vr, vi)
     step = -value / slope

@@ -5,9 +5,9 @@ v = exp(i h).  With n the unit normal of the ray, the cross product of the ray a
 
     n . (w(t1) - w(t0)) = 2 sin(h) g(h),        g(h) = Re sum_j B_j v^(2 j - 1),
 
-where B_j is the sum over k >= j of i F_k exp(i k t0) and F_k the k-th Fourier coefficient of n . w.  The trivial root h = 0
-is divided out exactly, term by term, so that g keeps its full accuracy for glancing chords.  On a strictly
-convex table g has one zero in 0 < h < pi: the chord's direction turns from the tangent to its opposite.
+where B_j is the sum over k >= j of i F_k exp(i k t0) and F_k the k-th Fourier coefficient of n . w.  The trivial
+root h = 0 is divided out exactly, term by term, so that g keeps its full accuracy for glancing chords.  On a convex
+table g has one zero in 0 < h < pi: the chord's direction turns from the tangent to its opposite.
 
 For an ellipse the sum has one term and the zero is v ~ i conj(B_1): the first guess for every other table.
 """
@@ -189,9 +189,7 @@ def find_half_advance(harmonics: Floats, state: Floats, powers: Floats, quotient
 def bisect_lost_lanes(highest: int, state: Floats, quotient: Floats) -> None:
     """Hand to bisection every lane whose h is outside (0, pi) or whose next correction would not be small."""
     for j in range(LANES):
-        found, half_cos, half_sin = bracket_half_advance(
-            highest, quotient, j, state[HALF_COS, j], state[HALF_SIN, j]
-        )
+        found, half_cos, half_sin = bracket_half_advance(highest, quotient, j, state[HALF_COS, j], state[HALF_SIN, j])
         state[HALF_COS, j] = half_cos
         state[HALF_SIN, j] = half_sin
         if not found:

@@ -35,7 +35,6 @@ from scanner.bounce.lanes import (
     POINT_Y,
     RAY_X,
     RAY_Y,
-    STATE_ROWS,
     SUM_0,
     SUM_1,
     SUM_2,

@@ -120,8 +120,8 @@ def trace(table: Table, s: npt.ArrayLike, p: npt.ArrayLike, bounces: int) -> xr.
     Returns
     -------
     xarray.Dataset
-        Dimensions ``orbit`` and ``bounce`` (0 is the start, so ``bounces + 1`` entries): ``s``, ``p``, ``x``, ``y``, and
-        ``chord``, the length of the chord that ends at the bounce (NaN at the start).  ``status`` (orbit) is 1 for
+        Dimensions ``orbit`` and ``bounce`` (0 is the start, so ``bounces + 1`` entries): ``s``, ``p``, ``x``, ``y``,
+        and ``chord``, the length of the chord that ends at the bounce (NaN at the start).  ``status`` (orbit) is 1 for
         an orbit of which some chord could not be found; its values are NaN from there on.
 
     Raises

@@ -14,9 +14,7 @@ if TYPE_CHECKING:
     import xarray as xr
 
 
-def label(
-    group: str, values: Mapping[str, npt.ArrayLike], coords: Mapping[str, npt.ArrayLike]
-) -> xr.Dataset:
+def label(group: str, values: Mapping[str, npt.ArrayLike], coords: Mapping[str, npt.ArrayLike]) -> xr.Dataset:
     """Dataset of the variables of one group of the register that are in ``values``.
 
     Parameters

@@ -22,9 +22,7 @@ if TYPE_CHECKING:
     from scanner.tables import Table
 
 
-def orbit_numbers(
-    table: Table, s: npt.ArrayLike, p: npt.ArrayLike, bounces: int
-) -> dict[str, npt.NDArray[np.generic]]:
+def orbit_numbers(table: Table, s: npt.ArrayLike, p: npt.ArrayLike, bounces: int) -> dict[str, npt.NDArray[np.generic]]:
     """Indicators of orbits of one table, as plain arrays; parameters and errors as for ``measure_orbits``."""
     s, p = check_start(table, s, p)
     if bounces < MINIMUM_BOUNCES:

@@ -77,7 +77,7 @@ def make_schedule(bounces: int) -> Schedule:
         of_window.append(tuple(spans.setdefault(span, len(spans)) for span in chosen))
     lengths = sorted({length for _, length in spans})
     pieces = [window_weights(length) for length in lengths]
-    starts = dict(zip(lengths, np.cumsum([0] + lengths[:-1]), strict=True))
+    starts = dict(zip(lengths, np.cumsum([0, *lengths[:-1]]), strict=True))
     moments = sorted({moment for end in ends for moment in (end // TRANSIENT, end // 2, end)})
     place = {moment: number for number, moment in enumerate(moments)}
     return Schedule(

@@ -67,5 +67,5 @@ def section_points(
         points = sampler.random_base2(math.ceil(math.log2(share)))
         first = replicate * share
         pieces.append(points[max(start - first, 0) : min(stop - first, share)])
-    points = np.concatenate(pieces) + 0.5**(BITS + 1)
+    points = np.concatenate(pieces) + 0.5 ** (BITS + 1)
     return np.ascontiguousarray(points[:, 0]), 2.0 * points[:, 1] - 1.0

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-
 from scanner.indicators import horizons, orbit_numbers
 from scanner.indicators.labelled import label
 from scanner.measure.fractions import table_numbers
