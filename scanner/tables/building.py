@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import math
 import numbers
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
+from functools import partial
 
 from scanner.errors import TableError
+from scanner.tables.curve import Curve
 from scanner.tables.families import FAMILIES, Family, Parameter
 from scanner.tables.table import Table, Value, make_table
+from scanner.tables.user import user_curve
 
 
 def build_table(family: str, *, allow_code: bool = False, **parameters: object) -> Table:
@@ -34,14 +37,21 @@ def build_table(family: str, *, allow_code: bool = False, **parameters: object) 
         One line: the family is not known, a parameter is missing, unknown or out of bounds, or the curve needs
         more harmonics than a table may have.
     """
-    if family not in FAMILIES:
-        raise TableError(f"family {family!r} is not known: use one of {', '.join(FAMILIES)}")
-    found = FAMILIES[family]
-    values = check_parameters(found, parameters)
-    shown = ", ".join(f"{name} = {value!r}" for name, value in values.items())
+    curve: Callable[..., Curve]
+    if ":" in family:
+        if not allow_code:
+            raise TableError(f"family {family} runs code of your own: allow it with --allow-code (allow_code=True)")
+        values = _check_numbers(family, parameters)
+        curve = partial(user_curve, family)
+    elif family in FAMILIES:
+        values = check_parameters(FAMILIES[family], parameters)
+        curve = FAMILIES[family].curve
+    else:
+        raise TableError(f"family {family!r} is not known: use one of {', '.join(FAMILIES)}, or module:function")
     try:
-        return make_table(family, values, found.curve(**values), _identity(family, values))
+        return make_table(family, values, curve(**values))
     except TableError as error:
+        shown = ", ".join(f"{name} = {value!r}" for name, value in values.items())
         raise TableError(f"{family} ({shown}): {error}") from None
 
 
@@ -61,6 +71,17 @@ def check_parameters(family: Family, parameters: Mapping[str, object]) -> dict[s
         if name not in parameters:
             raise TableError(f"{family.name} needs parameter {name}: it takes {', '.join(known)}")
     return {name: _check_value(family.name, parameter, parameters[name]) for name, parameter in known.items()}
+
+
+def _check_numbers(family: str, parameters: Mapping[str, object]) -> dict[str, Value]:
+    """Check that the parameters of the user's own function are finite numbers, and keep whole ones whole."""
+    checked: dict[str, Value] = {}
+    for name, value in parameters.items():
+        number = _as_number(value, whole=isinstance(value, numbers.Integral))
+        if number is None or not math.isfinite(number):
+            raise TableError(f"{family}: {name} = {value!r} must be a finite number")
+        checked[name] = number
+    return checked
 
 
 def _check_value(family: str, parameter: Parameter, value: object) -> Value:
@@ -92,7 +113,3 @@ def _interval(parameter: Parameter) -> str:
     left = "(" if parameter.low_open or parameter.low == -math.inf else "["
     right = ")" if parameter.high_open or parameter.high == math.inf else "]"
     return f"{left}{parameter.low:g}, {parameter.high:g}{right}"
-
-
-def _identity(family: str, values: Mapping[str, Value]) -> str:
-    return f"{family}({', '.join(f'{name}={values[name]!r}' for name in sorted(values))})"

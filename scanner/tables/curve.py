@@ -26,6 +26,18 @@ Displacement = Callable[[FloatArray], tuple[FloatArray, FloatArray]]
 
 
 @dataclass(frozen=True)
+class Shape:
+    """What a family knows of its curvature in closed form, where the series of the boundary cannot tell.
+
+    ``reason`` says why the curve is not convex, and is empty if it is.
+    """
+
+    curvature_min: float
+    curvature_max: float
+    reason: str = ""
+
+
+@dataclass(frozen=True)
 class Curve:
     """A closed curve, counter-clockwise or not, as a family gives it.
 
@@ -37,14 +49,17 @@ class Curve:
         Largest distance from the family's own curve, relative to the size.
     residual : float
         R.m.s. distance of measured points from the curve fitted to them, in their unit; 0 where nothing was measured.
-    curvatures : tuple of float, optional
-        Smallest and largest curvature of a curve known to be convex whose series cannot tell: a finitely smooth one.
+    shape : Shape, optional
+        Curvature and convexity, where the family knows better than the series.
+    digest : str
+        Hash of the data that a parameter only points to, to identify the table by.
     """
 
     harmonics: FloatArray
     error: float = ROUNDING
     residual: float = 0.0
-    curvatures: tuple[float, float] | None = None
+    shape: Shape | None = None
+    digest: str = ""
 
 
 def ellipse_harmonics(major: float, minor: float) -> FloatArray:
@@ -73,7 +88,7 @@ def displaced_ellipse(eccentricity: float, displacement: Displacement) -> Curve:
     while count <= _MOST_SAMPLES:
         harmonics = series_of_samples(*displacement(np.arange(count) / count), (count - 1) // 2)
         harmonics[:, :2] += base
-        if is_resolved(harmonics):
+        if unresolved_part(harmonics) <= TOLERANCE:
             kept = trim(harmonics)
             if kept.shape[1] <= MOST_HARMONICS + 1:
                 return Curve(kept, _error_between_samples(kept, base, displacement, count))
@@ -98,18 +113,22 @@ def magnitudes(harmonics: FloatArray) -> FloatArray:
     return bound
 
 
-def is_resolved(harmonics: FloatArray) -> bool:
-    """Whether the last quarter of the harmonics that samples can tell apart is negligible."""
+def tails(sizes: FloatArray) -> FloatArray:
+    """Sum of each harmonic and all above it."""
+    sums: FloatArray = sizes[::-1].cumsum()[::-1]
+    return sums
+
+
+def unresolved_part(harmonics: FloatArray) -> float:
+    """Sum of the last quarter of the harmonics, relative to the largest: what samples as many leave open."""
     sizes = magnitudes(harmonics)
-    last_quarter = sizes[3 * len(sizes) // 4 :]
-    return bool(last_quarter.sum() <= TOLERANCE * sizes[1:].max())
+    return float(tails(sizes)[3 * len(sizes) // 4] / sizes[1:].max())
 
 
 def trim(harmonics: FloatArray) -> FloatArray:
     """Drop the highest harmonics that together stay below ``TOLERANCE`` of the largest."""
     sizes = magnitudes(harmonics)
-    tails = sizes[::-1].cumsum()[::-1]
-    needed = np.flatnonzero(tails > TOLERANCE * sizes[1:].max())
+    needed = np.flatnonzero(tails(sizes) > TOLERANCE * sizes[1:].max())
     return np.ascontiguousarray(harmonics[:, : max(2, int(needed[-1]) + 1)])
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from types import MappingProxyType
 
 import numpy as np
@@ -22,7 +22,7 @@ from scanner.tables.boundary import (
     turning_number,
     turns_from_arc,
 )
-from scanner.tables.curve import Curve
+from scanner.tables.curve import Curve, Shape, tails
 
 Value = float | int | str
 
@@ -34,7 +34,7 @@ _MOST_ARC_SAMPLES = 8192
 _ARC_SAMPLES_NOT_CONVEX = 1024
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Table:
     """A closed curve that a particle moves in, as a finite Fourier series of its boundary.
 
@@ -68,8 +68,8 @@ class Table:
 
     family: str
     parameters: Mapping[str, Value]
-    harmonics: FloatArray = field(repr=False)
-    arc: FloatArray = field(repr=False)
+    harmonics: FloatArray
+    arc: FloatArray
     perimeter: float
     area: float
     curvature_min: float
@@ -78,7 +78,16 @@ class Table:
     convexity: str
     boundary_error: float
     residual: float
-    identity: str = field(repr=False)
+    identity: str
+
+    def __repr__(self) -> str:
+        """Show the family, the parameters and the main numbers."""
+        shown = "".join(f", {name}={value!r}" for name, value in self.parameters.items())
+        shape = "convex" if self.is_convex else f"not convex: {self.convexity}"
+        return (
+            f"<Table {self.family}{shown}: perimeter {self.perimeter:.6g}, area {self.area:.6g}, curvature "
+            f"{self.curvature_min:.6g} to {self.curvature_max:.6g}, {self.harmonics.shape[1] - 1} harmonics, {shape}>"
+        )
 
     @property
     def mean_chord_exact(self) -> float:
@@ -114,7 +123,7 @@ def _flat(values: ArrayLike) -> FloatArray:
     return np.ascontiguousarray(values, dtype=np.float64).ravel()
 
 
-def make_table(family: str, parameters: Mapping[str, Value], curve: Curve, identity: str) -> Table:
+def make_table(family: str, parameters: Mapping[str, Value], curve: Curve) -> Table:
     """Measure a curve: orientation, area, curvature, convexity, arc length.
 
     Raises
@@ -122,15 +131,16 @@ def make_table(family: str, parameters: Mapping[str, Value], curve: Curve, ident
     TableError
         If the coefficients are not finite or the arc length needs too many harmonics.
     """
-    harmonics = curve.harmonics
+    used = np.flatnonzero(curve.harmonics.any(axis=0))
+    harmonics = np.ascontiguousarray(curve.harmonics[:, : max(2, int(used[-1]) + 1)])
     if not np.isfinite(harmonics).all():
         raise TableError("the boundary is not finite; lower the amplitude")
     area = signed_area(harmonics)
     if area < 0.0:
         harmonics = harmonics * np.array([[1.0], [-1.0], [1.0], [-1.0]])
         area = -area
-    least, most, convexity = _judge_shape(harmonics, area) if curve.curvatures is None else (*curve.curvatures, "")
-    arc, perimeter = _measure_arc(harmonics, convex=not convexity)
+    shape = curve.shape or _judge_shape(harmonics, area)
+    arc, perimeter = _measure_arc(harmonics, max(ARC_TOLERANCE, curve.error / 16.0), convex=not shape.reason)
     for array in (harmonics, arc):
         array.setflags(write=False)
     return Table(
@@ -140,33 +150,40 @@ def make_table(family: str, parameters: Mapping[str, Value], curve: Curve, ident
         arc=arc,
         perimeter=perimeter,
         area=area,
-        curvature_min=least,
-        curvature_max=most,
-        is_convex=not convexity,
-        convexity=convexity,
+        curvature_min=shape.curvature_min,
+        curvature_max=shape.curvature_max,
+        is_convex=not shape.reason,
+        convexity=shape.reason,
         boundary_error=curve.error,
         residual=curve.residual,
-        identity=identity,
+        identity=_identify(family, parameters, curve.digest),
     )
 
 
-def _judge_shape(harmonics: FloatArray, area: float) -> tuple[float, float, str]:
-    """Smallest and largest curvature, and the reason why the curve is not convex, if any."""
+def _identify(family: str, parameters: Mapping[str, Value], digest: str) -> str:
+    """Name a table by what decides it: the contents of a file, not where the file lies."""
+    shown = {name: digest if digest and isinstance(value, str) else value for name, value in parameters.items()}
+    return f"{family}({', '.join(f'{name}={shown[name]!r}' for name in sorted(shown))})"
+
+
+def _judge_shape(harmonics: FloatArray, area: float) -> Shape:
+    """Range of the curvature, and the reason why the curve is not convex, if any."""
     least, least_at, most, _ = curvature_range(harmonics)
     x, y, dx, dy, *_ = (float(row[0]) for row in evaluate(harmonics, np.array([least_at])))
     # The numerator of the curvature is a difference of products of these sums: rounding is relative to them.
     order = np.arange(harmonics.shape[1])
     sizes = np.abs(harmonics).sum(axis=0)
     rounding = _CONVEXITY_ROUNDING * (order * sizes).sum() * (order * order * sizes).sum()
-    if not least * (dx * dx + dy * dy) ** 1.5 >= -rounding:
-        return least, most, f"curvature {least:.6g} at t = {least_at:.6g} turns, point ({x:.6g}, {y:.6g})"
+    speed = np.sqrt(dx * dx + dy * dy)
+    if np.isneginf(least) or least * speed * speed * speed < -rounding:
+        return Shape(least, most, f"curvature {least:.6g} at t = {least_at:.6g} turns, point ({x:.6g}, {y:.6g})")
     turns = round(turning_number(harmonics))
     if turns != 1 or area == 0.0:
-        return least, most, f"crosses itself: the tangent turns {turns} times in one round"
-    return (least if least > 0.0 else 0.0), most, ""
+        return Shape(least, most, f"crosses itself: the tangent turns {turns} times in one round")
+    return Shape(least if least > 0.0 else 0.0, most)
 
 
-def _measure_arc(harmonics: FloatArray, convex: bool) -> tuple[FloatArray, float]:
+def _measure_arc(harmonics: FloatArray, tolerance: float, convex: bool) -> tuple[FloatArray, float]:
     """Series of the arc length and the perimeter, from the mean of the speed (spectrally accurate).
 
     The arc length of a curve that is not convex is of no use to anyone and is taken as far as it goes cheaply.
@@ -176,20 +193,25 @@ def _measure_arc(harmonics: FloatArray, convex: bool) -> tuple[FloatArray, float
     while count < min(4 * harmonics.shape[1], most_samples):
         count *= 2
     while True:
-        speed = fourier_series(speed_samples(harmonics, count), (count - 1) // 2)
-        mean = float(speed[0, 0])
-        order = np.arange(1, speed.shape[1])
-        arc = np.zeros_like(speed)
-        arc[:, 1:] = speed[:, 1:] / (order * (TWO_PI * mean))
-        tails = np.abs(arc).sum(axis=0)[::-1].cumsum()[::-1]
-        if tails[3 * len(tails) // 4] <= ARC_TOLERANCE or 2 * count > most_samples:
+        arc, perimeter = _arc_of_samples(speed_samples(harmonics, count))
+        beyond = tails(np.abs(arc).sum(axis=0))
+        resolved = beyond[3 * len(beyond) // 4] <= tolerance
+        if resolved or 2 * count > most_samples:
             break
         count *= 2
-    if tails[3 * len(tails) // 4] > ARC_TOLERANCE and convex:
+    if convex and not resolved:
         raise TableError(
-            f"the arc length needs more than {len(tails)} harmonics to reach {ARC_TOLERANCE:g}; "
+            f"the arc length needs more than {len(beyond)} harmonics to reach {tolerance:g}; "
             "lower the eccentricity or round the corners"
         )
-    needed = np.flatnonzero(tails > ARC_TOLERANCE)
-    kept = int(needed[-1]) + 1 if len(needed) else 1
-    return np.ascontiguousarray(arc[:, :kept]), TWO_PI * mean
+    needed = np.flatnonzero(beyond > tolerance)
+    return np.ascontiguousarray(arc[:, : int(needed[-1]) + 1 if len(needed) else 1]), perimeter
+
+
+def _arc_of_samples(speed: FloatArray) -> tuple[FloatArray, float]:
+    """Integrate the series of the speed: arc length in perimeters beyond the angle in turns, and the perimeter."""
+    series = fourier_series(speed, (len(speed) - 1) // 2)
+    perimeter = TWO_PI * float(series[0, 0])
+    arc = np.zeros_like(series)
+    arc[:, 1:] = series[:, 1:] / (np.arange(1, series.shape[1]) * perimeter)
+    return arc, perimeter
