@@ -7,6 +7,11 @@ import numpy as np
 import pytest
 from scipy.special import ellipk, ellipkinc
 
+from scanner.indicators import orbit_numbers
+from scanner.indicators.schedule import horizons
+from scanner.measure import section_points
+from scanner.tables import build_table
+
 MEASURES = [
     pytest.param(baselines.measure_scalar, id="scalar"),
     pytest.param(baselines.measure_vectorised, id="vectorised"),
@@ -99,3 +104,33 @@ def test_mean_chord_of_a_section():
     exact = math.pi * math.pi * b / (4.0 * ellipe(1.0 - b * b))
     # Midpoint rule: exact in the angle, n^-1.5 = 0.002 in p at the square-root ends.
     assert np.average(chords, weights=arc) == pytest.approx(exact, rel=2e-3)
+
+
+@pytest.mark.parametrize(
+    ("family", "parameters"),
+    [
+        ("ellipse", {"eccentricity": 0.6}),
+        ("radial_harmonic", {"amplitude": 0.02, "harmonic": 3}),
+        ("limacon", {"quadratic": 0.08}),
+        ("normal_harmonic", {"eccentricity": 0.6, "amplitude": 0.01, "harmonic": 4, "phase": 0.5}),
+    ],
+)
+def test_package_agrees_with_the_plain_loop(family, parameters):
+    """The package's lanes, polynomials and closed forms against libm, Newton and one orbit at a time."""
+    table = build_table(family, **parameters)
+    bounces = 128
+    s, p = section_points(table, seed=3, replicates=1, orbits=128)
+    mine = orbit_numbers(table, s, p, bounces)
+    plain = baselines.measure_scalar(table.harmonics, table.turns_from_arc(s), p, horizons(bounces))
+    # Rounding, about 1e-15 a bounce, grows by e^0.1 a bounce at most on these: to 4e-10 after 128.
+    calm = plain["lyapunov_per_bounce"][-1] < 0.1
+    assert calm.mean() > 0.3
+    for name in ("rotation_number", "lyapunov_per_bounce"):
+        np.testing.assert_allclose(mine[name][calm], plain[name][-1][calm], rtol=0, atol=1e-9, err_msg=name)
+    np.testing.assert_allclose(mine["mean_chord"][calm], plain["mean_chord"][calm], rtol=1e-9)
+    # A change of the averages of 1e-7 or more is then the same to a percent in both.
+    large = calm & (mine["frequency_diffusion"] > -7.0)
+    assert large.any()
+    np.testing.assert_allclose(
+        mine["frequency_diffusion"][large], plain["frequency_diffusion"][-1][large], rtol=0, atol=0.01
+    )
