@@ -24,8 +24,10 @@ STRETCHED_TASK = 60_000_000_000
 FEW_TASKS = 64
 """Tasks wanted of a small study, so that several workers finish together."""
 MOST_TASKS = 100_000
-ORBITS_AT_ONCE = 2**19
-"""Orbits of one task, which bounds its memory."""
+ORBITS_AT_ONCE = 2**16
+"""Orbits of one table in one task: an orbit takes some 600 bytes while it is computed."""
+ORBITS_HELD = 2**18
+"""Orbits of all tables of one task: an orbit takes some 70 bytes once it is computed."""
 
 
 @dataclass(frozen=True)
@@ -61,7 +63,7 @@ def lay_out(shape: tuple[int, ...], per_table: int, bounces: int) -> Layout:
     chunk = LANES * ceil_divide(ceil_divide(per_table, parts), LANES) if parts > 1 else per_table
     if chunk < per_table:
         return Layout((1,) * len(shape), chunk)
-    budget = max(1, min(target // table_cost, ORBITS_AT_ONCE // per_table))
+    budget = max(1, min(target // table_cost, ORBITS_HELD // per_table))
     return Layout(_fill_box(shape, budget), per_table)
 
 

@@ -15,7 +15,7 @@ from scanner.study.plan import Plan
 
 WORKER_BYTES = 500_000_000
 """Memory a worker may take, whatever the size of the study."""
-STANDING_BYTES = 250_000_000
+STANDING_BYTES = 400_000_000
 """What a worker takes before its first task: the interpreter, the libraries, the compiled kernels."""
 WORKING_COPIES = 2
 """Arrays of a task are held this many times over while they are computed or encoded."""

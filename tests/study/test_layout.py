@@ -15,6 +15,7 @@ from scanner.study.layout import (
     NOMINAL_BOUNCE,
     NOMINAL_TABLE,
     ORBITS_AT_ONCE,
+    ORBITS_HELD,
     SHORTEST_TASK,
     lay_out,
 )
@@ -70,7 +71,8 @@ def test_tasks_are_neither_long_nor_many_more_than_needed(shape, pairs, bounces)
     stretched = max(LONGEST_TASK, min(3 * LONGEST_TASK, total // 100_000))
     # Half as much again at most, as a table counts as one task up to that, and what fills up a block of lanes.
     assert nominal <= 1.5 * stretched + (LANES - 1) * one_orbit + NOMINAL_TABLE
-    assert tables * layout.orbit_chunk <= ORBITS_AT_ONCE
+    assert layout.orbit_chunk <= ORBITS_AT_ONCE
+    assert tables * layout.orbit_chunk <= ORBITS_HELD
     assert layout.orbit_chunk == per_table or (layout.orbit_chunk % LANES == 0 and tables == 1)
     assert all(1 <= part <= size for part, size in zip(layout.box, shape, strict=True))
 
@@ -85,8 +87,10 @@ def test_tasks_are_neither_long_nor_many_more_than_needed(shape, pairs, bounces)
         ((200, 50, 7), 1024, 8192, (1, 4, 7), 1024),
         # One long table is split over its orbits: 84 s in about 64 tasks.
         ((), 1024, 1024 * 1024, (), 64),
-        # 5.4 s a table: 11 parts of about half a second, in whole blocks of lanes.
-        ((3,), 2**20, 64, (1,), 95360),
+        # 2.7 s a table: 5 parts of about half a second, but no more than 2^16 orbits at once.
+        ((3,), 2**19, 64, (1,), 2**16),
+        # 1.5 s a table: 3 parts, in whole blocks of lanes.
+        ((3,), 30_000, 640, (1,), 10_048),
     ],
 )
 def test_known_layouts(shape, per_table, bounces, box, chunk):

@@ -56,7 +56,7 @@ def test_store_bytes_cover_the_arrays_and_not_much_more():
 
 def test_too_many_orbits_for_memory():
     plan = plan_of(2, 2**22, 64)
-    message = r"^orbits\.per_table = 4194304 makes one task hold .* must be at most 125 MB .* lower per_table to (\d+)"
+    message = r"^orbits\.per_table = 4194304 makes one task hold .* must be at most 50 MB .* lower per_table to (\d+)"
     with pytest.raises(StudyError, match=message) as caught:
         check_limits(plan)
     fitting = int(str(caught.value).split("lower per_table to ")[1].split()[0])
