@@ -43,7 +43,7 @@ def cache_folder() -> Path:
     return Path(base) / _sources_fingerprint()
 
 
-numba.config.CACHE_DIR = str(cache_folder())
+numba.config.CACHE_DIR = str(cache_folder())  # type: ignore[attr-defined]
 
 
 def kernel(function: Function) -> Function:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import numpy.typing as npt
 
-from scanner.quantities import in_group
+from scanner.quantities import Quantity, in_group
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -28,11 +28,11 @@ def label(group: str, values: Mapping[str, npt.ArrayLike], coords: Mapping[str, 
     """
     import xarray as xr
 
-    return xr.Dataset(
-        {
-            entry.name: (entry.dims, np.asarray(values[entry.name], dtype=entry.dtype), entry.attributes())
-            for entry in in_group(group)
-            if entry.name in values
-        },
-        coords=dict(coords),
-    )
+    def variable(entry: Quantity) -> tuple[tuple[str, ...], npt.NDArray[np.generic], dict[str, object]]:
+        attributes = entry.attributes()
+        if entry.flags:  # CF wants them in the type of the codes
+            attributes["flag_values"] = np.asarray(attributes["flag_values"], dtype=entry.dtype)
+        return entry.dims, np.asarray(values[entry.name], dtype=entry.dtype), attributes
+
+    found = {entry.name: variable(entry) for entry in in_group(group) if entry.name in values}
+    return xr.Dataset(found, coords=dict(coords))

@@ -29,6 +29,9 @@ REGULAR_DIGITS = 4.0
 """Digits to which the averages of a regular orbit must have settled."""
 CHANCE = 1e-3
 """Most often that a rotation number drawn at random may be taken for that of an island."""
+DRIFT = 0.02
+"""Most that an orbit of an island may seem to drift past the fraction over the whole horizon, in spacings 1/q of the
+island's parts.  Curves close to a resonance of an ellipse drift by 0.1 and more, island orbits by 0.01 and less."""
 CLOSEST = 1e-11
 """A rotation number is never held to be known better than this."""
 
@@ -42,18 +45,22 @@ class Verdicts:
     island_rotation: npt.NDArray[np.int16]
 
 
-def find_fractions(rotation: Floats, tolerance: Floats) -> tuple[npt.NDArray[np.int16], npt.NDArray[np.int16]]:
+def find_fractions(
+    rotation: Floats, disagreement: Floats, bounces: int
+) -> tuple[npt.NDArray[np.int16], npt.NDArray[np.int16]]:
     """Fraction p/q of smallest q that a rotation number cannot be told from; (0, 0) where there is none.
 
-    Fractions with denominator up to q and margins of +-tolerance cover about 0.6 q^2 tolerance of the unit interval
-    (there are 0.3 q^2 of them); q is tried only while that is below CHANCE, so that a coincidence is unlikely.
+    Fractions with denominator up to q and margins of +-t cover about 0.6 q^2 t of the unit interval (there are
+    0.3 q^2 of them); q is tried only while that is below CHANCE, so that a coincidence is unlikely.
     """
     top = np.zeros(rotation.shape, dtype=np.int16)
     bottom = np.zeros(rotation.shape, dtype=np.int16)
+    known = np.maximum(disagreement, CLOSEST)
     for q in PERIODS:
         p = np.rint(rotation * q)
-        near = np.abs(rotation - p / q) <= tolerance
-        fits = near & (bottom == 0) & (0.6 * q * q * tolerance <= CHANCE) & (p > 0) & (p < q)
+        tolerance = np.minimum(known, DRIFT / (q * bounces))
+        near = (np.abs(rotation - p / q) <= tolerance) & (0.6 * q * q * tolerance <= CHANCE)
+        fits = near & (bottom == 0) & (p > 0) & (p < q)
         top[fits] = p[fits].astype(np.int16)
         bottom[fits] = q
     return top, bottom
@@ -64,8 +71,7 @@ def judge(readings: Readings, failed: npt.NDArray[np.bool_]) -> Verdicts:
     excess = readings.growth - math.log(readings.bounces)
     regular = (excess <= SHEAR_GROWTH) & (readings.digits >= REGULAR_DIGITS) & ~failed
     chaotic = (excess > CHAOTIC_GROWTH) & ~failed
-    tolerance = np.maximum(readings.disagreement, CLOSEST)
-    top, bottom = find_fractions(np.where(regular, readings.rotation, 0.0), tolerance)
+    top, bottom = find_fractions(np.where(regular, readings.rotation, 0.0), readings.disagreement, readings.bounces)
     code = np.full(failed.shape, UNDECIDED, dtype=np.int8)
     code[chaotic] = CHAOTIC
     code[regular] = REGULAR_ROTATIONAL
