@@ -105,7 +105,7 @@ def _trace_twice(table: Table, turns: float) -> float:
 
 
 def _constant_angle() -> Iterator[Check]:
-    """Check that radius of curvature 1 + a cos 4 psi keeps an angle d with tan 4 d = 4 tan d (Gutkin, arXiv:1012.2448)."""
+    """Check that curvature radius 1 + a cos 4 psi keeps an angle d of tan 4 d = 4 tan d (Gutkin, arXiv:1012.2448)."""
     table = build_table("curvature_harmonic", amplitude=0.3, harmonic=4)
     angle = 1.1502619915109315
     orbit = trace(table, 0.1, math.cos(angle), 100)

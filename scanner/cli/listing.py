@@ -36,7 +36,7 @@ def list_tables(root: xr.Dataset, most: int) -> None:
     click.echo(f"\n{len(rows)} tables: {counts}")
     click.echo(
         "± one standard error; drift: regular area judged after a quarter of the bounces less that after all, "
-        f"at most {number(largest_drift(root))}"
+        f"up to {number(largest_drift(root))}"
     )
     if hidden:
         click.echo(f"{hidden} rows are not shown: --rows 0 shows all, --format csv writes all")
@@ -51,6 +51,8 @@ def list_failures(rows: pd.DataFrame) -> None:
         return
     texts = rows.rename(columns={"table_status": "status"})
     texts["status"] = texts["status"].str.replace("_", " ")
+    if not any(texts["reason"]):
+        del texts["reason"]
     print_lines(align(_written(texts, [name for name in texts if name not in ("status", "reason")])))
     click.echo("\nwhy a table is not convex: scanner estimate STUDY")
 
@@ -59,6 +61,7 @@ def write_rows(rows: pd.DataFrame, form: str) -> None:
     """Write rows in full precision to standard output."""
     if form == "csv":
         rows.to_csv(sys.stdout, index=False)
+        sys.stdout.flush()
     else:
         known = rows.astype(object).where(rows.notna(), None)
         click.echo(json.dumps(known.to_dict("records"), indent=1, ensure_ascii=False))

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 import sys
 from collections.abc import Sequence
 from typing import NoReturn
@@ -76,9 +75,8 @@ def run(arguments: Sequence[str] | None = None) -> int:
         return _complain(error.format_message().rstrip(".") + where, ScannerError.exit_status)
     except (click.Abort, KeyboardInterrupt):
         return _complain("interrupted", INTERRUPTED)
-    except BrokenPipeError:
-        # the reader, such as `head`, has seen enough; nothing may be flushed into the closed pipe at exit
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    except SystemExit:
+        # click leaves like this when the reader of a pipe, such as `head`, has seen enough
         return 0
     except OSError as error:
         where = f"{error.filename}: " if error.filename else ""

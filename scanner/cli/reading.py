@@ -108,6 +108,13 @@ def export(store: Path, target: Path, orbits: bool, force: bool) -> None:
     "--colour", type=click.Choice(COLOURS), default="verdict", show_default=True, help="Colours of a portrait."
 )
 @click.option(
+    "--bounces",
+    type=click.IntRange(min=0),
+    default=0,
+    metavar="N",
+    help="Follow each orbit of a portrait anew for N bounces and draw them all, not its start alone.",
+)
+@click.option(
     "--width", type=click.Choice(WIDTHS), default="single", show_default=True, help="Columns of a journal's page."
 )
 @force_option
@@ -120,13 +127,14 @@ def figure(
     quantity: str,
     along: str,
     colour: str,
+    bounces: int,
     width: str,
     force: bool,
 ) -> None:
     """Draw the sweep in PATH as a figure for print: PNG, PDF or SVG by the suffix of FILE."""
     from scanner.figures import Request, write_figure
 
-    request = Request(kind or "", select, average, quantity, along, colour, width)
+    request = Request(kind or "", select, average, quantity, along, colour, bounces, width)
     with open_store(store) as tree:
         taken = write_figure(tree, target, request, force=force)
     click.echo(f"wrote {target}" + (f", tables at {taken}" if taken else ""), err=True)

@@ -4,14 +4,17 @@ from __future__ import annotations
 
 import warnings
 from pathlib import Path
+from typing import Any
 
 import matplotlib
+import numpy as np
 import xarray as xr
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
 from scanner.analysis import average_tables, pick_tables, replace_whole, study_of, swept_parameters
 from scanner.analysis.sweep import describe
+from scanner.bounce import trace
 from scanner.errors import ScannerError
 from scanner.figures.curves import MOST_LINES, draw_curve, draw_fractions
 from scanner.figures.heat_map import draw_map
@@ -19,7 +22,9 @@ from scanner.figures.portrait import draw_portrait
 from scanner.figures.request import Request
 from scanner.figures.style import STYLE, figure_of, write_title
 from scanner.quantities import DONE, ORBITS, TABLE_STATUS
+from scanner.tables import build_table
 
+MOST_POINTS = 2_000_000
 DEFAULT_QUANTITY = "regular_area_fraction"
 
 
@@ -114,7 +119,25 @@ def _draw_one_table(picked: xr.DataTree, names: tuple[str, ...], request: Reques
     status = int(picked["table_status"].item())
     if status != DONE:
         raise ScannerError(f"this table has no orbits to draw, its status is {TABLE_STATUS[status]}: select another")
-    return draw_portrait(picked[ORBITS].to_dataset(), request.colour, request.width)
+    orbits = picked[ORBITS].to_dataset()
+    s, p = orbits["s0"].values[:, None], orbits["p0"].values[:, None]
+    if request.bounces:
+        s, p = _follow_anew(picked, s[:, 0], p[:, 0], request.bounces)
+    return draw_portrait(s, p, orbits, request.colour, request.width)
+
+
+def _follow_anew(picked: xr.DataTree, s: np.ndarray, p: np.ndarray, bounces: int) -> tuple[np.ndarray, np.ndarray]:
+    """Follow the orbits of the one table that is left, from where they started."""
+    if s.size * bounces > MOST_POINTS:
+        raise ScannerError(
+            f"{s.size} orbits of {bounces} bounces are {s.size * bounces} points, at most {MOST_POINTS} can be told "
+            f"apart: ask for {MOST_POINTS // s.size} bounces or fewer"
+        )
+    study = study_of(picked)
+    held = {str(name): value.item() for name, value in picked.coords.items() if not value.dims}
+    parameters: dict[str, Any] = {**study.fixed, **held}
+    orbits = trace(build_table(study.family, **parameters), s, p, bounces)
+    return orbits["s"].values, orbits["p"].values
 
 
 def _notes(tree: xr.DataTree, taken: str, request: Request) -> list[str]:
@@ -124,6 +147,8 @@ def _notes(tree: xr.DataTree, taken: str, request: Request) -> list[str]:
         notes.append(f"mean over {', '.join(request.average)}")
     if study.orbits and study.bounces:
         notes.append(f"{study.orbits} orbits of {study.bounces} bounces a table")
+    if request.bounces:
+        notes.append(f"{request.bounces} bounces drawn")
     return notes
 
 

@@ -1,4 +1,4 @@
-"""The section of one table: its orbits where they start, coloured by what they are."""
+"""The section of one table: its orbits, coloured by what they are."""
 
 from __future__ import annotations
 
@@ -23,11 +23,13 @@ COLOURINGS = {
 """Variable of the group ``orbits`` behind each colouring."""
 
 
-def draw_portrait(orbits: xr.Dataset, colouring: str, width: str) -> Axes:
-    """Draw one table's orbits at their starting points p against s.
+def draw_portrait(s: np.ndarray, p: np.ndarray, orbits: xr.Dataset, colouring: str, width: str) -> Axes:
+    """Draw one table's orbits, p against s.
 
     Parameters
     ----------
+    s, p
+        Points of each orbit, shape (orbits, points).
     orbits
         Variables of the group ``orbits`` over the dimension ``orbit`` alone.
     colouring
@@ -36,13 +38,11 @@ def draw_portrait(orbits: xr.Dataset, colouring: str, width: str) -> Axes:
         ``single`` or ``double`` column.
     """
     axes = new_axes(width, 1.0)
-    s, p = orbits["s0"].values, orbits["p0"].values
     values = orbits[COLOURINGS[colouring]]
-    # dots that would fill about half the plot if none hid another
-    size = float(
-        np.clip(0.5 * (72 * COLUMN_INCHES[width]) * (72 * 0.6 * COLUMN_INCHES["single"]) / max(len(s), 1), 0.4, 14.0)
-    )
-    dots: dict[str, Any] = {"s": size, "linewidths": 0, "rasterized": len(s) > 3000}
+    # dots that would fill half the plot if none hid another
+    room = 0.5 * (72 * COLUMN_INCHES[width]) * (72 * 0.6 * COLUMN_INCHES["single"])
+    size = float(np.clip(room / max(s.size, 1), 0.05, 14.0))
+    dots: dict[str, Any] = {"s": size, "linewidths": 0, "rasterized": s.size > 3000}
     if colouring == "verdict":
         handles: list[Artist] = []
         for code, name in enumerate(VERDICT_NAMES):
@@ -55,7 +55,8 @@ def draw_portrait(orbits: xr.Dataset, colouring: str, width: str) -> Axes:
         known = np.isfinite(values.values)
         axes.scatter(s[~known], p[~known], color=GREY, **dots)
         lowest = 0.0 if colouring == "exponent" else None
-        points = axes.scatter(s[known], p[known], c=values.values[known], cmap=COLOUR_MAP, vmin=lowest, **dots)
+        each = np.repeat(values.values[known], s.shape[1])
+        points = axes.scatter(s[known], p[known], c=each, cmap=COLOUR_MAP, vmin=lowest, **dots)
         axes.figure.colorbar(points, ax=axes, label=quantity_label(values), pad=0.02)
         if not known.all():
             add_legend(axes, [_dot(GREY, "no value")])

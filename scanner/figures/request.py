@@ -33,6 +33,8 @@ class Request:
         Parameter of the horizontal axis of a curve; empty for the one of most values.
     colour
         What the colours of a portrait mean, one of `COLOURS`.
+    bounces
+        Bounces for which a portrait follows each orbit anew; 0 shows the starting points alone.
     width
         ``single`` or ``double`` column.
     """
@@ -43,4 +45,5 @@ class Request:
     quantity: str = ""
     along: str = ""
     colour: str = "verdict"
+    bounces: int = 0
     width: str = "single"

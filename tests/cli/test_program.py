@@ -1,0 +1,121 @@
+"""What holds for all commands: quick help, one line for whatever is wrong, the exit status."""
+
+from __future__ import annotations
+
+import subprocess
+import sys
+import time
+
+import pytest
+
+from scanner.cli import program
+from scanner.cli.program import run, scanner
+
+COMMANDS = ["estimate", "sweep", "progress", "summary", "export", "figure", "verify", "selfcheck"]
+HEAVY = ["numpy", "numba", "xarray", "dask", "distributed", "zarr", "pandas", "scipy", "matplotlib", "pydantic"]
+
+
+def test_help_loads_nothing_heavy():
+    code = f"import sys, scanner.cli; print([name for name in {HEAVY} if name in sys.modules])"
+    found = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert found.stdout.strip() == "[]"
+
+
+@pytest.mark.parametrize("command", [[], *([name] for name in COMMANDS)])
+def test_help_is_quick_and_tells_the_exit_statuses(command):
+    def seconds():
+        begun = time.perf_counter()
+        done = subprocess.run(
+            [sys.executable, "-m", "scanner", *command, "--help"], capture_output=True, text=True, check=True
+        )
+        assert done.stdout.startswith("Usage: scanner")
+        assert "130  interrupted" in done.stdout
+        return time.perf_counter() - begun
+
+    # the best of three: other work on the machine must not count
+    assert min(seconds() for _ in range(3)) < 0.5
+
+
+def test_all_commands_are_there_in_the_order_of_use():
+    assert scanner.list_commands(None) == COMMANDS
+
+
+def test_no_command_shows_the_help(call):
+    status, output, _ = call()
+    assert status == 0
+    assert output.startswith("Usage: scanner")
+
+
+@pytest.mark.parametrize(
+    ("arguments", "said"),
+    [
+        (["swoop"], "No such command 'swoop'"),
+        (["summary"], "Missing argument 'PATH'; see scanner summary --help"),
+        (["summary", "{store}", "--formt", "csv"], "No such option"),
+        (["summary", "{store}", "--format", "xml"], "'xml' is not one of 'text', 'csv', 'json'"),
+        (["summary", "{store}", "--select", "amplitude"], "'amplitude' is not NAME=VALUE"),
+        (["summary", "{store}", "--select", "phase=1"], "'phase' is not a swept parameter"),
+        (["summary", "{store}", "--average", "phase"], "'phase' is not a swept parameter"),
+        (["summary", "{store}", "--failed", "--average", "amplitude"], "leave out --select and --average"),
+        (["summary", "{folder}/nowhere.zarr"], "nowhere.zarr"),
+        (["progress", "{folder}"], "Größe"),
+        (["verify", "{study}"], "my study.toml"),
+        (["export", "{study}", "--to", "{out}/tables.csv"], "my study.toml"),
+        (
+            ["export", "{store}", "--to", "{out}/tables.xlsx"],
+            "unknown suffix '.xlsx', it must be .nc, .csv or .parquet",
+        ),
+        (["export", "{store}", "--to", "{out}/no/tables.csv"], "there is no folder"),
+        (["export", "{store}", "--to", "{out}"], "is a folder"),
+        (["figure", "{store}", "--to", "{out}/figure.gif"], "it must be .png, .pdf or .svg"),
+        (["figure", "{store}", "--to", "{out}/figure.png", "--kind", "portrait"], "give a value of amplitude"),
+        (["figure", "{store}", "--to", "{out}/figure.png", "--quantity", "chaos"], "no variable 'chaos'"),
+        (["estimate", "{folder}"], "cannot be read: Is a directory"),
+        (["estimate", "{folder}/nowhere.toml"], "nowhere.toml cannot be read: No such file"),
+        (["estimate", "{moody_study}"], "--allow-code"),
+        (["sweep", "{study}"], "Missing option '--store'"),
+        (["sweep", "{study}", "--store", "{out}/s.zarr", "--workers", "0"], "0 is not in the range x>=1"),
+        (["sweep", "{study}", "--store", "{out}/s.zarr", "--scheduler", "a:1", "--scheduler-file", "f"], "exclude"),
+        (["sweep", "{moody_study}", "--store", "{store}", "--allow-code"], "holds another study"),
+        (["sweep", "{study}", "--store", "{study}"], "my study.toml"),
+    ],
+)
+def test_whatever_is_wrong_is_one_line_and_nothing_is_written(
+    call, arguments, said, folder, study, store, moody_study, tmp_path
+):
+    places = {"folder": folder, "study": study, "store": store, "moody_study": moody_study, "out": tmp_path}
+    status, output, complaint = call(*(argument.format(**places) for argument in arguments))
+    assert status == 2
+    assert output == ""
+    assert complaint.startswith("scanner: ")
+    assert complaint.count("\n") == 1
+    assert said in complaint
+    assert list(tmp_path.iterdir()) == []
+
+
+def test_an_interrupt_is_130(call, monkeypatch, study, tmp_path):
+    def interrupted(*arguments, **options):
+        raise KeyboardInterrupt
+
+    monkeypatch.setattr("scanner.engine.run_study", interrupted)
+    status, _, complaint = call("sweep", study, "--store", tmp_path / "s.zarr")
+    assert status == program.INTERRUPTED == 130
+    assert complaint.strip() == "scanner: interrupted"
+
+
+def test_an_error_of_the_program_itself_is_not_hidden(monkeypatch, store):
+    def broken(*arguments):
+        raise ZeroDivisionError
+
+    monkeypatch.setattr("scanner.analysis.summarise", broken)
+    with pytest.raises(ZeroDivisionError):
+        run(["summary", str(store), "--format", "csv"])
+
+
+@pytest.mark.parametrize("form", ["text", "csv", "json"])
+def test_a_reader_that_stops_early_is_no_error(store, form):
+    command = [sys.executable, "-m", "scanner", "summary", str(store), "--format", form]
+    with subprocess.Popen(command, stdout=subprocess.PIPE, stderr=subprocess.PIPE) as process:
+        process.stdout.close()
+        assert process.stderr.read() == b""
+        assert process.wait() == 0
