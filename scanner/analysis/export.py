@@ -12,7 +12,7 @@ import pandas as pd
 import xarray as xr
 
 from scanner.analysis.files import check_target, replace_whole
-from scanner.analysis.rows import blocks, to_rows
+from scanner.analysis.rows import blocks, stored_steps, to_rows
 from scanner.analysis.sweep import swept_parameters
 from scanner.errors import ScannerError
 from scanner.quantities import DONE, ORBITS, TABLE_STATUS
@@ -83,14 +83,19 @@ def _write_parquet(frames: Iterator[pd.DataFrame], path: Path) -> None:
 
 
 def _write_netcdf(tree: xr.DataTree, path: Path) -> None:
-    """Write all groups a chunk at a time, in this thread: HDF5 takes one writer."""
-    groups = {node.path: _plain_dataset(node.to_dataset(inherit=False)) for node in tree.subtree}
-    compressed = {
-        path: {name: {"zlib": True, "complevel": 1} for name, variable in data.data_vars.items() if variable.ndim}
-        for path, data in groups.items()
-    }
-    plain = xr.DataTree.from_dict(groups).chunk()
-    writing: Any = plain.to_netcdf(path, engine="h5netcdf", encoding=compressed, compute=False)
+    """Write all groups a stored block at a time, in this thread: HDF5 takes one writer."""
+    groups, encoding = {}, {}
+    for node in tree.subtree:
+        data = node.to_dataset(inherit=False)
+        steps = stored_steps(data)
+        groups[node.path] = _plain_dataset(data).chunk(steps)
+        encoding[node.path] = {
+            name: {"zlib": True, "complevel": 1, "chunksizes": tuple(steps[str(dim)] for dim in variable.dims)}
+            for name, variable in data.data_vars.items()
+            if variable.ndim
+        }
+    plain = xr.DataTree.from_dict(groups)
+    writing: Any = plain.to_netcdf(path, engine="h5netcdf", encoding=encoding, compute=False)
     writing.compute(scheduler="synchronous")
 
 

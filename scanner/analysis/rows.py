@@ -45,16 +45,22 @@ def blocks(data: xr.Dataset, dims: Sequence[str]) -> Iterator[xr.Dataset]:
 
     The order of the blocks is that of the rows, because a stored block spans whole trailing dimensions.
     """
-    stored: dict[str, int] = {}
-    for variable in data.data_vars.values():
-        stored.update(variable.encoding.get("preferred_chunks", {}))
-    cuts = []
-    for name in dims:
-        length = data.sizes[name]
-        step = stored.get(name, length) or 1
-        cuts.append([slice(start, min(start + step, length)) for start in range(0, length, step)])
+    steps = stored_steps(data)
+    cuts = [
+        [slice(start, min(start + steps[name], data.sizes[name])) for start in range(0, data.sizes[name], steps[name])]
+        for name in dims
+    ]
     for pieces in itertools.product(*cuts):
         yield data.isel(dict(zip(dims, pieces, strict=True)))
+
+
+def stored_steps(data: xr.Dataset) -> dict[str, int]:
+    """Length along each dimension of the blocks a dataset is stored in; all of it where it is in memory."""
+    steps = {str(name): max(length, 1) for name, length in data.sizes.items()}
+    for variable in data.data_vars.values():
+        for name, step in variable.encoding.get("preferred_chunks", {}).items():
+            steps[name] = min(step, data.sizes[name])
+    return steps
 
 
 def _labels(data: xr.Dataset, name: str) -> np.ndarray:
