@@ -67,6 +67,15 @@ def fourier_series(samples: FloatArray, highest: int) -> FloatArray:
 
 
 @kernel
+def even_turns(count: int) -> FloatArray:
+    """Equally spaced angles of one round, in turns."""
+    turns = np.empty(count)
+    for j in range(count):
+        turns[j] = j / count
+    return turns
+
+
+@kernel
 def evaluate(harmonics: FloatArray, turns: FloatArray) -> FloatArray:
     """Rows x, y, x', y', x'', y'' at angles in turns, shape (6, number of angles)."""
     count = turns.size
@@ -113,10 +122,17 @@ def _curvature(harmonics: FloatArray, turns: FloatArray) -> FloatArray:
 
 
 @kernel
-def _refine_extreme(harmonics: FloatArray, low: float, high: float, sign: float) -> tuple[float, float]:
-    """Largest ``sign * curvature`` between two angles by golden section, and where."""
+def _refine_extreme(harmonics: FloatArray, middle: float, width: float, sign: float) -> tuple[float, float]:
+    """Largest ``sign * curvature`` nearer than a width to an angle by golden section, and where.
+
+    The angle itself is kept if that is no worse than rounding.
+    """
     inner = np.empty(2)
     one = np.empty(1)
+    one[0] = middle
+    central = _curvature(harmonics, one)[0]
+    low = middle - width
+    high = middle + width
     inner[0] = high - _GOLDEN * (high - low)
     inner[1] = low + _GOLDEN * (high - low)
     values = _curvature(harmonics, inner)
@@ -136,6 +152,8 @@ def _refine_extreme(harmonics: FloatArray, low: float, high: float, sign: float)
             one[0] = inner[1]
             values[1] = _curvature(harmonics, one)[0]
     best = 0 if sign * values[0] > sign * values[1] else 1
+    if sign * (values[best] - central) <= 1e-14 * abs(central):
+        return central, middle
     return values[best], inner[best]
 
 
@@ -147,22 +165,20 @@ def curvature_range(harmonics: FloatArray) -> tuple[float, float, float, float]:
     points in the shortest of its waves.
     """
     count = max(64, 8 * harmonics.shape[1])
-    turns = np.arange(count) / count
+    turns = even_turns(count)
     values = _curvature(harmonics, turns)
-    low = int(np.argmin(values))
-    high = int(np.argmax(values))
-    least, least_at, most, most_at = values[low], turns[low], values[high], turns[high]
-    if least == -np.inf:
-        return least, least_at, most, most_at
+    least, least_at, most, most_at = np.inf, 0.0, -np.inf, 0.0
     for j in range(count):
+        if values[j] == -np.inf:
+            return values[j], turns[j], np.inf, turns[j]
         before = values[j - 1]
         after = values[(j + 1) % count]
         if values[j] <= before and values[j] <= after:
-            value, at = _refine_extreme(harmonics, turns[j] - 1.0 / count, turns[j] + 1.0 / count, -1.0)
+            value, at = _refine_extreme(harmonics, turns[j], 1.0 / count, -1.0)
             if value < least:
                 least, least_at = value, at
         if values[j] >= before and values[j] >= after:
-            value, at = _refine_extreme(harmonics, turns[j] - 1.0 / count, turns[j] + 1.0 / count, 1.0)
+            value, at = _refine_extreme(harmonics, turns[j], 1.0 / count, 1.0)
             if value > most:
                 most, most_at = value, at
     return least, least_at % 1.0, most, most_at % 1.0
@@ -171,8 +187,10 @@ def curvature_range(harmonics: FloatArray) -> tuple[float, float, float, float]:
 @kernel
 def speed_samples(harmonics: FloatArray, count: int) -> FloatArray:
     """Speed (length per radian of the parameter) at equally spaced angles."""
-    rows = evaluate(harmonics, np.arange(count) / count)
-    speed: FloatArray = np.sqrt(rows[2] * rows[2] + rows[3] * rows[3])
+    rows = evaluate(harmonics, even_turns(count))
+    speed = np.empty(count)
+    for j in range(count):
+        speed[j] = np.sqrt(rows[2, j] * rows[2, j] + rows[3, j] * rows[3, j])
     return speed
 
 
@@ -180,7 +198,7 @@ def speed_samples(harmonics: FloatArray, count: int) -> FloatArray:
 def turning_number(harmonics: FloatArray) -> float:
     """Count the turns of the tangent in one round: 1 for a curve that bends one way and does not cross itself."""
     count = max(64, 8 * harmonics.shape[1])
-    rows = evaluate(harmonics, np.arange(count) / count)
+    rows = evaluate(harmonics, even_turns(count))
     total = 0.0
     for j in range(count):
         dx, dy = rows[2, j], rows[3, j]

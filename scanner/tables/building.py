@@ -105,8 +105,16 @@ def _as_number(value: object, whole: bool) -> float | int | None:
     if isinstance(value, bool):
         return None
     if isinstance(value, numbers.Integral):
-        return int(value) if whole else float(value)
+        return int(value) if whole else _as_float(int(value))
     return float(value) if isinstance(value, numbers.Real) and not whole else None
+
+
+def _as_float(whole: int) -> float:
+    """Round to a double; infinite beyond their range."""
+    try:
+        return float(whole)
+    except OverflowError:
+        return math.inf if whole > 0 else -math.inf
 
 
 def _interval(parameter: Parameter) -> str:

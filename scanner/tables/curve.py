@@ -113,6 +113,11 @@ def magnitudes(harmonics: FloatArray) -> FloatArray:
     return bound
 
 
+def size(harmonics: FloatArray) -> float:
+    """Give the largest coefficient, about the semi-major axis: what errors are relative to."""
+    return float(np.abs(harmonics[:, 1:]).max())
+
+
 def tails(sizes: FloatArray) -> FloatArray:
     """Sum of each harmonic and all above it."""
     sums: FloatArray = sizes[::-1].cumsum()[::-1]
@@ -122,13 +127,13 @@ def tails(sizes: FloatArray) -> FloatArray:
 def unresolved_part(harmonics: FloatArray) -> float:
     """Sum of the last quarter of the harmonics, relative to the largest: what samples as many leave open."""
     sizes = magnitudes(harmonics)
-    return float(tails(sizes)[3 * len(sizes) // 4] / sizes[1:].max())
+    return float(tails(sizes)[3 * len(sizes) // 4] / size(harmonics))
 
 
 def trim(harmonics: FloatArray) -> FloatArray:
     """Drop the highest harmonics that together stay below ``TOLERANCE`` of the largest."""
     sizes = magnitudes(harmonics)
-    needed = np.flatnonzero(tails(sizes) > TOLERANCE * sizes[1:].max())
+    needed = np.flatnonzero(tails(sizes) > TOLERANCE * size(harmonics))
     return np.ascontiguousarray(harmonics[:, : max(2, int(needed[-1]) + 1)])
 
 
@@ -139,7 +144,7 @@ def _error_between_samples(harmonics: FloatArray, base: FloatArray, displacement
     dx, dy = displacement(turns)
     found = evaluate(harmonics, turns)
     distance = np.sqrt((found[0] - (x + dx)) ** 2 + (found[1] - (y + dy)) ** 2).max()
-    return max(ROUNDING, float(distance / magnitudes(harmonics)[1:].max()))
+    return max(ROUNDING, float(distance / size(harmonics)))
 
 
 def _bends_inwards(base: FloatArray, displacement: Displacement) -> bool:

@@ -6,7 +6,7 @@ import numpy as np
 
 from scanner.elementary import cos_sin_array, exp_array, log_array
 from scanner.tables.boundary import FloatArray, evaluate
-from scanner.tables.curve import MOST_HARMONICS, ROUNDING, Curve, Shape, magnitudes, series_of_samples, trim
+from scanner.tables.curve import MOST_HARMONICS, ROUNDING, Curve, Shape, series_of_samples, size, trim
 from scanner.tables.extremes import find_extremes
 
 _SAMPLES = 4 * MOST_HARMONICS
@@ -27,7 +27,7 @@ def lame(exponent: float, aspect: float) -> Curve:
     x, y = _points(exponent, aspect, quarter)
     found = evaluate(harmonics, quarter)
     distance = np.sqrt((found[0] - x) ** 2 + (found[1] - y) ** 2).max()
-    error = max(ROUNDING, float(distance / magnitudes(harmonics)[1:].max()))
+    error = max(ROUNDING, float(distance / size(harmonics)))
     return Curve(harmonics, error, shape=_shape(exponent, aspect))
 
 

@@ -12,7 +12,7 @@ import numpy as np
 from scanner.compiled import kernel
 from scanner.elementary import angle_array, cos_sin_turns
 from scanner.errors import TableError
-from scanner.tables.boundary import FloatArray, evaluate
+from scanner.tables.boundary import FloatArray
 from scanner.tables.curve import Curve, trim
 from scanner.tables.points import parse_points, read_content
 
@@ -23,8 +23,8 @@ _WAVES_AHEAD = 16  # looked at without gain before giving up
 _FURTHEST_BACK = 0.02
 _COST_OF_FREEDOM = 1.4  # more than 1 against following noise (Kim and Gu, J. R. Stat. Soc. B 66:337, 2004; from memory)
 _THINNEST = 1e-6
-_SAMPLES = 1024
-_ELLIPSE_STEPS = 200
+_MOST_STEPS = 60
+_STILL = 1e-14
 
 
 @dataclass(frozen=True)
@@ -41,6 +41,19 @@ class _Ellipse:
         determinant = a * d - b * c
         u, v = (d * x - b * y) / determinant, (a * y - c * x) / determinant
         return angle_array(v, u), np.sqrt(u * u + v * v)
+
+    def moved(self, wave: FloatArray) -> _Ellipse:
+        """Ellipse that takes up waves 0, 1 and 2 of the radius in its frame, to first order."""
+        size, x, y, stretch, shear = wave[0, 0], wave[0, 1], wave[1, 1], wave[0, 2], wave[1, 2]
+        (a, b), (c, d) = self.matrix
+        e, f, g = 1.0 + size + stretch, shear, 1.0 + size - stretch
+        first, second = (a * e + b * f, a * f + b * g), (c * e + d * f, c * f + d * g)
+        root = _symmetric_root(
+            first[0] * first[0] + first[1] * first[1],
+            first[0] * second[0] + first[1] * second[1],
+            second[0] * second[0] + second[1] * second[1],
+        )
+        return _Ellipse(self.centre + np.array([a * x + b * y, c * x + d * y]), root)
 
 
 @dataclass(frozen=True)
@@ -76,8 +89,8 @@ def fit_outline(content: bytes) -> _Fit:
 
     A point's angle in the frame of the ellipse says where it belongs, however the points are spaced; the radius is
     then an ordinary function of it, fitted by least squares with as many waves as generalised cross-validation asks
-    for (Craven and Wahba, Numer. Math. 31:377, 1979).  The ellipse is then fitted anew, to this curve instead of the
-    points, so that it does not depend on where points are dense.
+    for (Craven and Wahba, Numer. Math. 31:377, 1979).  The ellipse starts as that of the area's second moments and is
+    moved until the function has no waves 0, 1 and 2: it fits the curve best, wherever the points are dense.
 
     Raises
     ------
@@ -85,41 +98,25 @@ def fit_outline(content: bytes) -> _Fit:
         One line: see ``parse_points``; and if the points do not go once round their centre, or leave a gap.
     """
     points = parse_points(content)
-    first = _fit_in_frame(_fit_ellipse(points), points)
-    evenly = evaluate(first.harmonics(1.0), np.arange(_SAMPLES) / _SAMPLES)[:2]
-    return _fit_in_frame(_fit_ellipse(evenly), points)
+    fit = _fit_in_frame(_ellipse_of_moments(points), points)
+    waves = fit.wave.shape[1] - 1
+    for _ in range(_MOST_STEPS):
+        fit = _fit_in_frame(fit.ellipse.moved(fit.wave), points, waves)
+        if np.abs(fit.wave[:, : _ELLIPSE_WAVES + 1]).max() < _STILL:
+            break
+    return _fit_in_frame(fit.ellipse, points)
 
 
-def _fit_in_frame(ellipse: _Ellipse, points: FloatArray) -> _Fit:
-    """Fit the radius of the points in the frame of an ellipse."""
+def _fit_in_frame(ellipse: _Ellipse, points: FloatArray, waves: int | None = None) -> _Fit:
+    """Fit the radius of the points in the frame of an ellipse, with a given number of waves or as many as tell."""
     angles, radii = ellipse.polar(points)
     _check_round(angles)
-    coefficients, residuals = fit_waves(angles, radii - 1.0, _ELLIPSE_WAVES, _most_waves(angles))
+    fewest, most = (waves, waves) if waves else (_ELLIPSE_WAVES, _most_waves(angles))
+    coefficients, residuals = fit_waves(angles, radii - 1.0, fewest, most)
     wave = np.zeros((2, len(coefficients) // 2 + 1))
     wave[0, 0], wave[0, 1:], wave[1, 1:] = coefficients[0], coefficients[1::2], coefficients[2::2]
     distances = np.sqrt(((points - ellipse.centre[:, None]) ** 2).sum(axis=0)) / radii * residuals
     return _Fit(ellipse, wave, float(np.sqrt((distances * distances).cumsum()[-1] / len(distances))))
-
-
-def _fit_ellipse(points: FloatArray) -> _Ellipse:
-    """Ellipse that leaves least squares of the relative radius: what is left has no waves 0, 1, 2 to first order.
-
-    Starts from the ellipse of the polygon's own area and moments; each step moves by the waves that are left.
-    """
-    ellipse = _ellipse_of_moments(points)
-    for _ in range(_ELLIPSE_STEPS):
-        angles, radii = ellipse.polar(points)
-        wave, _ = fit_waves(angles, radii - 1.0, _ELLIPSE_WAVES, _ELLIPSE_WAVES)
-        size, x, y, stretch, shear = wave
-        change = np.array([[1.0 + size + stretch, shear], [shear, 1.0 + size - stretch]])
-        (a, b), (c, d) = ellipse.matrix
-        moved = np.array([a * x + b * y, c * x + d * y])
-        (e, f), (g, h) = change
-        product = np.array([[a * e + b * g, a * f + b * h], [c * e + d * g, c * f + d * h]])
-        ellipse = _Ellipse(ellipse.centre + moved, _symmetric_root(product))
-        if np.abs(wave).max() < 1e-15:
-            break
-    return ellipse
 
 
 def _ellipse_of_moments(points: FloatArray) -> _Ellipse:
@@ -136,16 +133,10 @@ def _ellipse_of_moments(points: FloatArray) -> _Ellipse:
     moments = [x * x + x * u + u * u, y * y + y * v + v * v, x * y + u * v + 0.5 * (x * v + u * y)]
     xx, yy, xy = ((moment * cross).cumsum()[-1] / (12.0 * area) for moment in moments)
     # An ellipse of matrix M has moments M M^T / 4.
-    return _Ellipse(centre + origin[:, 0], _root(4.0 * xx, 4.0 * xy, 4.0 * yy))
+    return _Ellipse(centre + origin[:, 0], _symmetric_root(4.0 * xx, 4.0 * xy, 4.0 * yy))
 
 
-def _symmetric_root(matrix: FloatArray) -> FloatArray:
-    """Symmetric matrix that maps the unit circle on the same ellipse."""
-    (a, b), (c, d) = matrix
-    return _root(a * a + b * b, a * c + b * d, c * c + d * d)
-
-
-def _root(xx: float, xy: float, yy: float) -> FloatArray:
+def _symmetric_root(xx: float, xy: float, yy: float) -> FloatArray:
     """Square root of a positive definite symmetric matrix (Cayley and Hamilton)."""
     squared = xx * yy - xy * xy
     if not squared > 0.0:
@@ -205,15 +196,12 @@ def fit_waves(angles: FloatArray, heights: FloatArray, fewest: int, most: int) -
             basis[column, j] = sine if column > 0 and column % 2 == 0 else cosine
         for _ in range(2):  # twice is enough
             for earlier in range(column):
-                part = _dot(basis[earlier], basis[column])
-                upper[earlier, column] += part
-                basis[column] -= part * basis[earlier]
+                upper[earlier, column] += _remove(basis[earlier], basis[column])
         upper[column, column] = np.sqrt(_dot(basis[column], basis[column]))
-        basis[column] /= upper[column, column]
+        for j in range(count):
+            basis[column, j] /= upper[column, column]
         for _ in range(2):
-            part = _dot(basis[column], rest)
-            along[column] += part
-            rest -= part * basis[column]
+            along[column] += _remove(basis[column], rest)
         if column % 2 == 0 and wave >= fewest:
             freedom = 1.0 - _COST_OF_FREEDOM * (column + 1.0) / count
             score = _dot(rest, rest) / (freedom * freedom)
@@ -229,6 +217,15 @@ def fit_waves(angles: FloatArray, heights: FloatArray, fewest: int, most: int) -
             value -= upper[row, beyond] * coefficients[beyond]
         coefficients[row] = value / upper[row, row]
     return coefficients, residuals
+
+
+@kernel
+def _remove(direction: FloatArray, row: FloatArray) -> float:
+    """Take its part along a unit vector out of a row, and give that part."""
+    part = _dot(direction, row)
+    for j in range(row.size):
+        row[j] -= part * direction[j]
+    return part
 
 
 @kernel

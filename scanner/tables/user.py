@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import importlib
 import sys
-from collections.abc import Callable, Mapping
+from collections.abc import Callable
 from pathlib import Path
 
 import numpy as np
@@ -20,7 +20,7 @@ SAMPLE_TOLERANCE = 1e-12
 """What the last quarter of the harmonics of samples may add up to: above rounding in the user's own arithmetic."""
 
 
-def user_curve(name: str, parameters: Mapping[str, float | int]) -> Curve:
+def user_curve(name: str, /, **parameters: float) -> Curve:
     """Call the user's function and take what it gives.
 
     The function takes the parameters by keyword and returns one of
