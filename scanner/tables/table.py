@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from types import MappingProxyType
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -145,7 +144,7 @@ def make_table(family: str, parameters: Mapping[str, Value], curve: Curve) -> Ta
         array.setflags(write=False)
     return Table(
         family=family,
-        parameters=MappingProxyType(dict(parameters)),
+        parameters=dict(parameters),
         harmonics=harmonics,
         arc=arc,
         perimeter=perimeter,

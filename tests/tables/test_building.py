@@ -1,3 +1,4 @@
+import pickle
 import time
 
 import numpy as np
@@ -51,6 +52,13 @@ def test_numbers_of_numpy_are_taken_and_stored_as_plain_ones():
 def test_identity_is_stable_text_in_alphabetical_order():
     table = build_table("radial_harmonic", harmonic=2, amplitude=0.1)
     assert table.identity == "radial_harmonic(amplitude=0.1, harmonic=2)"
+
+
+def test_a_table_can_be_sent_to_another_process():
+    table = build_table("radial_harmonic", amplitude=0.1, harmonic=2)
+    copy = pickle.loads(pickle.dumps(table))
+    assert np.array_equal(copy.harmonics, table.harmonics)
+    assert (copy.identity, copy.parameters, copy.perimeter) == (table.identity, table.parameters, table.perimeter)
 
 
 def test_a_table_shows_what_it_is():
