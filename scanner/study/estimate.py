@@ -90,7 +90,7 @@ def estimate_cost(
     faults: list[TableCheck] = []
     convex = array("q")
     check_table(plan, *next(plan.tables()))  # compiles, or loads what is compiled
-    begun = time.perf_counter()
+    begun = time.thread_time()
     for number, check in enumerate(check_tables(plan)):
         counts[check.state] += 1
         if check.state == "convex":
@@ -98,7 +98,7 @@ def estimate_cost(
         elif len(faults) < MOST_FAULTS:
             faults.append(check)
         report(number + 1)
-    building = time.perf_counter() - begun
+    building = time.thread_time() - begun
     pace = _calibrate(plan, _pick_tables(plan, convex), seconds) if convex else None
     orbits = len(convex) * plan.study.orbits.per_table
     bounces = orbits * plan.study.orbits.bounces
@@ -129,7 +129,7 @@ def _pick_tables(plan: Plan, convex: array[int]) -> list[Table]:
 
 
 def _calibrate(plan: Plan, tables: Iterable[Table], seconds: float) -> float:
-    """Nanoseconds a bounce of the whole job of a task takes on one core, the mean over tables in turn."""
+    """Nanoseconds of a core that one bounce with all its indicators takes, the mean over tables in turn."""
     orbits = plan.study.orbits
     starts = [
         (
@@ -144,9 +144,9 @@ def _calibrate(plan: Plan, tables: Iterable[Table], seconds: float) -> float:
     bounces = min(orbits.bounces, CALIBRATION_BOUNCES)
     spent: list[float] = []
     for table, s, p in itertools.cycle(starts):
-        begun = time.perf_counter()
+        begun = time.thread_time()
         orbit_numbers(table, s, p, bounces)
-        spent.append((time.perf_counter() - begun) / (len(s) * bounces))
+        spent.append((time.thread_time() - begun) / (len(s) * bounces))
         if len(spent) >= len(starts) and sum(spent) * len(s) * bounces >= seconds:
             break
     return 1e9 * sum(spent) / len(spent)
