@@ -110,7 +110,7 @@ def test_mean_chord_of_a_section():
     ("family", "parameters"),
     [
         ("ellipse", {"eccentricity": 0.6}),
-        ("radial_harmonic", {"amplitude": 0.02, "harmonic": 3}),
+        ("radial_harmonic", {"amplitude": 0.005, "harmonic": 3}),
         ("limacon", {"quadratic": 0.08}),
         ("normal_harmonic", {"eccentricity": 0.6, "amplitude": 0.003, "harmonic": 4, "phase": 0.5}),
     ],
