@@ -15,7 +15,7 @@ from scanner.analysis import study_of, summarise, swept_parameters
 from scanner.analysis.summary import DRIFT, count_statuses, largest_drift
 from scanner.cli.terminal import align, number, on_terminal, print_lines, uncertain
 
-DISPENSABLE = ("diffusion", "undecided", "regular volume", "tables", "Lyapunov/bounce")
+DISPENSABLE = ("diffusion", "undecided", "drift", "tables", "Lyapunov/bounce", "regular volume")
 """Columns that make room on a narrow terminal, the first one first."""
 
 
