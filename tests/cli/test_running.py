@@ -10,8 +10,7 @@ from scanner.cli import running
 from scanner.selfcheck import Check, run_checks
 
 
-def test_estimate_prints_what_will_be_run_and_what_cannot(call, monkeypatch, study):
-    monkeypatch.setattr("scanner.study.estimate.CALIBRATION_SECONDS", 0.0)
+def test_estimate_prints_what_will_be_run_and_what_cannot(call, study):
     status, output, _ = call("estimate", study)
     assert status == 0
     lines = dict(line.strip().split("  ", 1) for line in output.splitlines()[1:] if "  " in line.strip())
