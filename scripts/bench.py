@@ -1,7 +1,8 @@
-"""Nanoseconds per bounce and core of the whole measurement of orbits, the package beside two baselines.
+"""Speed of the package: the measurement of orbits beside two baselines, and whole sweeps.
 
-All three measure the same orbits of the same tables in one run, taking turns, so that they see the same machine;
-the median of the repeats counts.  Ratios are of medians: how many times longer the baseline takes.
+The package and the baselines measure the same orbits of the same tables in one run, taking turns, so that they see
+the same machine.  Processor time counts, the median of the repeats; ratios are of medians: how many times longer the
+baseline takes.
 """
 
 from __future__ import annotations
@@ -15,6 +16,7 @@ from typing import Any
 import click
 import numpy as np
 from baselines import measure_scalar, measure_vectorised
+from bench_sweep import compare_workers
 
 from scanner.indicators import orbit_numbers
 from scanner.indicators.schedule import horizons
@@ -39,14 +41,14 @@ TABLES: dict[str, dict[str, Any]] = {
 
 
 def interleaved_medians(rivals: dict[str, Callable[[], object]], repeats: int) -> dict[str, float]:
-    """Median seconds of each rival over ``repeats`` rounds in which each has one turn, after a round that warms up."""
+    """Median processor seconds of each rival over ``repeats`` rounds in which each has one turn, after a round that warms up."""
     seconds: dict[str, list[float]] = {name: [] for name in rivals}
     for number in range(repeats + 1):
         for name, run in rivals.items():
-            start = time.perf_counter()
+            start = time.process_time()
             run()
             if number > 0:
-                seconds[name].append(time.perf_counter() - start)
+                seconds[name].append(time.process_time() - start)
     return {name: statistics.median(values) for name, values in seconds.items()}
 
 
@@ -62,23 +64,39 @@ def rivals_on(table: Table, orbits: int, bounces: int) -> dict[str, Callable[[],
     }
 
 
-@click.command(help=__doc__)
-@click.option("--orbits", default=1024, show_default=True, help="Orbits per table.")
+@click.group(invoke_without_command=True)
+@click.pass_context
+def main(context: click.Context) -> None:
+    """Time the measurement of orbits (``orbits``, the default) or whole sweeps (``sweep``)."""
+    if context.invoked_subcommand is None:
+        context.invoke(orbits)
+
+
+@main.command()
+@click.option("--per-table", default=1024, show_default=True, help="Orbits per table.")
 @click.option("--bounces", default=2048, show_default=True, help="Bounces per orbit.")
 @click.option("--repeats", default=5, show_default=True, help="Rounds that count.")
-def main(orbits: int, bounces: int, repeats: int) -> None:
-    """Print one line a table."""
-    print(f"{orbits} orbits of {bounces} bounces, median of {repeats}; ns per bounce on one core")
+def orbits(per_table: int, bounces: int, repeats: int) -> None:
+    """Compare with a vectorised NumPy version and a plain compiled loop: nanoseconds per bounce on one core."""
+    print(f"{per_table} orbits of {bounces} bounces, median of {repeats}; ns per bounce on one core")
     print(f"{'table':<20}{'K':>4}{'package':>10}{'NumPy':>10}{'scalar':>10}{'NumPy/package':>16}{'scalar/package':>16}")
     for name, parameters in TABLES.items():
         table = build_table(name.split()[0], **parameters)
-        seconds = interleaved_medians(rivals_on(table, orbits, bounces), repeats)
-        package, vectorised, scalar = (seconds[rival] / (orbits * bounces) * 1e9 for rival in seconds)
+        seconds = interleaved_medians(rivals_on(table, per_table, bounces), repeats)
+        package, vectorised, scalar = (seconds[rival] / (per_table * bounces) * 1e9 for rival in seconds)
         print(
             f"{name:<20}{table.harmonics.shape[1] - 1:>4}{package:>10.1f}{vectorised:>10.1f}{scalar:>10.1f}"
             f"{vectorised / package:>16.1f}{scalar / package:>16.1f}",
             flush=True,
         )
+
+
+@main.command()
+@click.option("--tables", default=64, show_default=True, help="Tables of 1024 orbits.")
+@click.option("--bounces", default=16384, show_default=True, help="Bounces per orbit.")
+def sweep(tables: int, bounces: int) -> None:
+    """Time one study with one worker and with two: speed, what comes on top of the bounces, memory."""
+    compare_workers(tables, bounces)
 
 
 if __name__ == "__main__":
