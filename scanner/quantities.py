@@ -98,9 +98,7 @@ _QUANTITIES = (
         units="length-1",
         reference="Abramov's formula: exponent per bounce over the mean chord of the chaotic orbits",
     ),
-    _root(
-        "lyapunov_per_length_stderr", "standard error of the mean Lyapunov exponent per length", units="length-1"
-    ),
+    _root("lyapunov_per_length_stderr", "standard error of the mean Lyapunov exponent per length", units="length-1"),
     _root(
         "entropy_per_bounce",
         "integral of the Lyapunov exponent of the chaotic orbits over the section measure",

@@ -41,7 +41,7 @@ TABLES: dict[str, dict[str, Any]] = {
 
 
 def interleaved_medians(rivals: dict[str, Callable[[], object]], repeats: int) -> dict[str, float]:
-    """Median processor seconds of each rival over ``repeats`` rounds in which each has one turn, after a round that warms up."""
+    """Median processor seconds of each rival over rounds in which each has one turn, after one that warms up."""
     seconds: dict[str, list[float]] = {name: [] for name in rivals}
     for number in range(repeats + 1):
         for name, run in rivals.items():
