@@ -16,7 +16,7 @@ _HOMES = {
     "run_study": "scanner.engine",
 }
 
-__all__ = ["build_table", "measure_orbits", "open_sweep", "run_study", "survey_table", "trace"]  # noqa: F822 - lazy
+__all__ = ["build_table", "measure_orbits", "open_sweep", "run_study", "survey_table", "trace"]
 
 __version__ = "0.1.0"
 

@@ -90,6 +90,9 @@ _QUANTITIES = (
     _root("librational_area_fraction", "fraction of the section area inside islands"),
     _root("regular_area_fraction_by_p", "regular fraction of the section area in a bin of p", "p_bin"),
     _root("island_area_fraction", "fraction of the section area in islands of period q", "period"),
+    _root("island_area_fraction_stderr", "standard error of the section area in islands of period q", "period"),
+    _root("island_volume_fraction", "fraction of the energy shell in islands of period q", "period"),
+    _root("island_volume_fraction_stderr", "standard error of the energy shell in islands of period q", "period"),
     _root("lyapunov_per_bounce", "mean Lyapunov exponent of the chaotic orbits, per bounce"),
     _root("lyapunov_per_bounce_stderr", "standard error of the mean Lyapunov exponent per bounce"),
     _root(
@@ -118,7 +121,7 @@ _QUANTITIES = (
     _orbit("rotation_number", "mean advance along the boundary per bounce, in perimeters", reference=_WEIGHTED),
     _orbit(
         "frequency_diffusion",
-        "log10 of the change of the rotation number between the two halves",
+        "log10 of the change of the leading frequency between two halves: rotation number, or winding in an island",
         reference=_LASKAR,
     ),
     _orbit(
@@ -142,6 +145,8 @@ _QUANTITIES = (
     _orbit(
         "island_winding", "turns of the q-fold map about the island's centre, folded to [0, 1/2]", reference=_WEIGHTED
     ),
+    _orbit("island_centre_s", "arc length of the island's centre, in its part where the orbit starts"),
+    _orbit("island_centre_p", "p of the island's centre, in its part where the orbit starts"),
 )
 
 REGISTER: dict[tuple[str, str], Quantity] = {(entry.group, entry.name): entry for entry in _QUANTITIES}

@@ -5,8 +5,12 @@ A loop over a row is plain arithmetic without branches, which the compiler turns
 
 from __future__ import annotations
 
+from typing import TypeVar
+
 import numpy as np
 import numpy.typing as npt
+
+Number = TypeVar("Number", np.float64, np.int64)
 
 LANES = 64
 """Orbits in a block; its rows stay in the processor's first cache."""
@@ -48,6 +52,6 @@ OBSERVABLES = 3
 """The first rows of the buffer (advance, p, chord) are averaged; the others are the tangent map in (s, p)."""
 
 
-def fill_up(values: npt.NDArray[np.float64]) -> npt.NDArray[np.float64]:
+def fill_up(values: npt.NDArray[Number]) -> npt.NDArray[Number]:
     """Repeat the last orbit until the last block is full."""
-    return np.concatenate([values, np.full(-values.size % LANES, values[-1])])
+    return np.concatenate([values, np.repeat(values[-1:], -values.size % LANES)])

@@ -18,6 +18,8 @@ import numpy.typing as npt
 from scanner.bounce.chord import aim, find_half_advance
 from scanner.bounce.lanes import (
     ADVANCE,
+    BUFFER,
+    BUFFER_ROWS,
     CHORD,
     COSINE,
     CURVATURE,
@@ -35,6 +37,7 @@ from scanner.bounce.lanes import (
     POINT_Y,
     RAY_X,
     RAY_Y,
+    STATE_ROWS,
     SUM_0,
     SUM_1,
     SUM_2,
@@ -44,7 +47,7 @@ from scanner.bounce.lanes import (
     TANGENT_X,
     TANGENT_Y,
 )
-from scanner.compiled import inlined
+from scanner.compiled import inlined, kernel
 from scanner.elementary import angle_turns, cos_sin_turns
 
 Floats = npt.NDArray[np.float64]
@@ -90,8 +93,8 @@ def evaluate_boundary(harmonics: Floats, state: Floats, powers: Floats) -> None:
             state[SUM_5, j] -= square * y
 
 
-@inlined
-def place_on_boundary(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats, powers: Floats) -> None:
+@kernel
+def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats, powers: Floats) -> None:
     """Set up a block at boundary parameters ``turns`` and momenta ``momenta``, both of shape (LANES,)."""
     for j in range(LANES):
         powers[2, j], powers[3, j] = cos_sin_turns(turns[j])
@@ -167,13 +170,44 @@ def reflect(state: Floats, buffer: Floats, row: int) -> None:
 
 
 @inlined
-def bounce_block(
+def bounce_lanes(
     harmonics: Floats, state: Floats, powers: Floats, quotient: Floats, buffer: Floats, count: int
 ) -> None:
-    """Bounce every orbit of a block ``count`` times (at most BUFFER) and fill as many rows of the buffer."""
+    """Bounce every orbit of a block ``count`` times (at most BUFFER) and fill as many rows of the buffer.
+
+    The arrays must be made in the kernel this is copied into: then their rows have a length that the compiler knows
+    and cannot overlap, and the loops over lanes become vector instructions.
+    """
     for row in range(count):
         aim(state)
         find_half_advance(harmonics, state, powers, quotient)
         move_to_end(state, powers, buffer, row)
         evaluate_boundary(harmonics, state, powers)
         reflect(state, buffer, row)
+
+
+@kernel
+def bounce_block(harmonics: Floats, state: Floats, powers: Floats, buffer: Floats, count: int) -> None:
+    """Bounce every orbit of a block ``count`` times: for callers that need not be as fast as can be.
+
+    Parameters
+    ----------
+    harmonics
+        Boundary, shape (4, K + 1).
+    state, powers
+        Shapes (STATE_ROWS, LANES) and (2 K + 2, LANES): where the orbits are, set up by ``start_block``; updated.
+    buffer
+        Shape (BUFFER_ROWS, BUFFER, LANES): advance, p, chord and tangent map of each bounce.
+    count
+        Bounces to make, at most BUFFER.
+    """
+    here = np.empty((STATE_ROWS, LANES))
+    here[:] = state
+    turning = np.empty((2 * harmonics.shape[1], LANES))
+    turning[:] = powers
+    quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
+    seen = np.empty((BUFFER_ROWS, BUFFER, LANES))
+    bounce_lanes(harmonics, here, turning, quotient, seen, count)
+    state[:] = here
+    powers[:] = turning
+    buffer[:, :count] = seen[:, :count]

@@ -24,7 +24,7 @@ from scanner.bounce.lanes import (
     STATE_ROWS,
     fill_up,
 )
-from scanner.bounce.orbits import bounce_block, place_on_boundary
+from scanner.bounce.orbits import bounce_block, start_block
 from scanner.compiled import kernel
 from scanner.elementary import angle_turns
 from scanner.errors import TableError
@@ -45,12 +45,11 @@ def trace_block(harmonics: Floats, turns: Floats, momenta: Floats, found: Floats
     """Fill ``found``, of shape (bounces + 1, TRACE_ROWS, LANES); row 0 is the start."""
     state = np.empty((STATE_ROWS, LANES))
     powers = np.empty((2 * harmonics.shape[1], LANES))
-    quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
     buffer = np.full((BUFFER_ROWS, BUFFER, LANES), np.nan)
-    place_on_boundary(harmonics, turns, momenta, state, powers)
+    start_block(harmonics, turns, momenta, state, powers)
     for bounce in range(found.shape[0]):
         if bounce > 0:
-            bounce_block(harmonics, state, powers, quotient, buffer, 1)
+            bounce_block(harmonics, state, powers, buffer, 1)
         for j in range(LANES):
             angle = angle_turns(powers[3, j], powers[2, j])
             found[bounce, T_TURNS, j] = angle if angle >= 0.0 else angle + 1.0

@@ -8,7 +8,7 @@ import numpy as np
 import numpy.typing as npt
 
 from scanner.bounce.lanes import BUFFER, BUFFER_ROWS, FAILED, LANES, OBSERVABLES, STATE_ROWS, fill_up
-from scanner.bounce.orbits import bounce_block, place_on_boundary
+from scanner.bounce.orbits import bounce_lanes, start_block
 from scanner.compiled import kernel
 from scanner.indicators.schedule import Schedule
 from scanner.indicators.streams import GROWTH, PATH, RUNNING_ROWS, absorb, start_running
@@ -58,14 +58,14 @@ def measure_block(
     quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
     buffer = np.zeros((BUFFER_ROWS, BUFFER, LANES))
     running = np.empty((RUNNING_ROWS, LANES))
-    place_on_boundary(harmonics, turns, momenta, state, powers)
+    start_block(harmonics, turns, momenta, state, powers)
     start_running(running)
     averages[:] = 0.0
     first = 0
     for mark in range(marks.shape[0]):
         while first < marks[mark]:
             count = min(BUFFER, marks[mark] - first)
-            bounce_block(harmonics, state, powers, quotient, buffer, count)
+            bounce_lanes(harmonics, state, powers, quotient, buffer, count)
             absorb(buffer, count, first, windows, weights, averages, running)
             first += count
         growth[mark] = running[GROWTH]

@@ -55,6 +55,7 @@ class Schedule:
     of_mark: tuple[tuple[int, int, int], ...]
 
 
+@lru_cache(maxsize=256)
 def window_weights(length: int) -> npt.NDArray[np.float64]:
     """Weights exp(-1 / (t (1 - t))) at the midpoints t of ``length`` equal steps, with sum 1.
 
@@ -62,7 +63,9 @@ def window_weights(length: int) -> npt.NDArray[np.float64]:
     """
     t = (np.arange(length) + 0.5) / length
     weights = exp_array(-1.0 / (t * (1.0 - t)))
-    return weights / math.fsum(weights)
+    weights /= math.fsum(weights)
+    weights.flags.writeable = False  # shared by all who ask
+    return weights
 
 
 @lru_cache(maxsize=8)

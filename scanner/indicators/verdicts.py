@@ -44,6 +44,12 @@ class Verdicts:
     island_period: npt.NDArray[np.int16]
     island_rotation: npt.NDArray[np.int16]
 
+    def take_out_of_islands(self, orbits: npt.NDArray[np.int64]) -> None:
+        """Call these orbits rotational: they lie on a resonant invariant curve."""
+        self.code[orbits] = REGULAR_ROTATIONAL
+        self.island_period[orbits] = 0
+        self.island_rotation[orbits] = 0
+
 
 def find_fractions(
     rotation: Floats, disagreement: Floats, bounces: int

@@ -84,6 +84,15 @@ def _by_p(regular: Mask, p: Floats) -> Floats:
     return np.array([_quotient(float(a), float(b)) for a, b in zip(inside, counts, strict=True)])
 
 
+def _by_period(librational: Mask, period: npt.NDArray[np.generic], weight: Floats, replicates: int) -> Floats:
+    """Fraction in the islands of each period and its error, shape (2, periods); both 0 where none was met."""
+    found = np.zeros((2, len(PERIODS)))
+    for q in np.unique(period[librational]):
+        part = _fraction(librational & (period == q), weight, replicates)
+        found[:, PERIODS.index(int(q))] = part.value, part.stderr
+    return found
+
+
 def _median(values: Floats) -> float:
     return float(np.median(values)) if values.size else math.nan
 
@@ -125,6 +134,8 @@ def table_numbers(
     growth = np.where(chaotic, exponent, 0.0)
     per_bounce = ratio(growth, np.where(chaotic, 1.0, 0.0), replicates)
     per_length = ratio(growth, np.where(chaotic, chord, 0.0), replicates)
+    island_area = _by_period(librational, period, one, replicates)
+    island_volume = _by_period(librational, period, chord, replicates)
     seen = [_is_regular(by_horizon[:, number]) for number in range(by_horizon.shape[1])]
     return {
         "regular_area_fraction": area.value,
@@ -140,7 +151,10 @@ def table_numbers(
         "rotational_area_fraction": _fraction(verdict == REGULAR_ROTATIONAL, one, replicates).value,
         "librational_area_fraction": _fraction(librational, one, replicates).value,
         "regular_area_fraction_by_p": _by_p(regular, np.asarray(orbits["p0"], dtype=np.float64)),
-        "island_area_fraction": np.array([np.mean(librational & (period == q)) for q in PERIODS]),
+        "island_area_fraction": island_area[0],
+        "island_area_fraction_stderr": island_area[1],
+        "island_volume_fraction": island_volume[0],
+        "island_volume_fraction_stderr": island_volume[1],
         "lyapunov_per_bounce": per_bounce.value,
         "lyapunov_per_bounce_stderr": per_bounce.stderr,
         "lyapunov_per_length": per_length.value,

@@ -7,7 +7,7 @@ from slow_bounce import slow_bounce
 from scanner.bounce.bracket import bracket_half_advance
 from scanner.bounce.chord import aim, divide_out_start
 from scanner.bounce.lanes import LANES, STATE_ROWS
-from scanner.bounce.orbits import place_on_boundary
+from scanner.bounce.orbits import start_block
 from scanner.bounce.trace import T_ADVANCE, T_CHORD, T_FAILED, T_P, T_PP, T_PS, T_SP, T_SS, follow
 from scanner.tables import build_table
 
@@ -80,7 +80,7 @@ def test_bisection_finds_what_newton_finds() -> None:
     turns, p = rng.random(LANES), 2 * rng.random(LANES) - 1
     state, highest = np.empty((STATE_ROWS, LANES)), harmonics.shape[1] - 1
     powers, quotient = np.empty((2 * highest + 2, LANES)), np.empty((2 * highest + 4, LANES))
-    place_on_boundary(harmonics, turns, p, state, powers)
+    start_block(harmonics, turns, p, state, powers)
     aim(state)
     divide_out_start(harmonics, state, powers, quotient)
     fast = follow(harmonics, turns, p, 1)[1]

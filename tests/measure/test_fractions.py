@@ -80,6 +80,8 @@ def test_numbers_of_a_table_by_hand() -> None:
     assert found["librational_area_fraction"] == 1 / 8
     assert found["island_area_fraction"][PERIODS.index(3)] == 1 / 8
     assert found["island_area_fraction"].sum() == 1 / 8
+    assert found["island_area_fraction_stderr"][PERIODS.index(3)] == pytest.approx(1 / 8)
+    assert found["island_volume_fraction"].sum() == pytest.approx(chord[2] / chord.sum())
     assert found["lyapunov_per_bounce"] == pytest.approx(exponent[chaotic].mean())
     assert found["lyapunov_per_length"] == pytest.approx(exponent[chaotic].sum() / chord[chaotic].sum())
     assert found["entropy_per_bounce"] == pytest.approx(exponent[chaotic].sum() / 8)

@@ -1,0 +1,277 @@
+"""A second, shorter pass over orbits inside islands: the island's centre, and the winding about it.
+
+The leading frequency of an island orbit is not its rotation number, which is the island's p/q to all digits, but the
+winding of the q-fold map about the island's centre.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from scanner.bounce.lanes import (
+    ADVANCE,
+    BUFFER,
+    BUFFER_ROWS,
+    LANES,
+    P_AFTER,
+    STATE_ROWS,
+    fill_up,
+)
+from scanner.bounce.orbits import bounce_block, start_block
+from scanner.bounce.return_map import ReturnMap, find_fixed_points
+from scanner.compiled import kernel
+from scanner.elementary import angle_turns
+from scanner.indicators.schedule import window_weights
+
+Floats = npt.NDArray[np.float64]
+Whole = npt.NDArray[np.int64]
+
+SHARE = 4
+"""The second pass takes this part of an orbit's bounces, so that it adds at most a quarter."""
+FEWEST_RETURNS = 64
+"""Returns to the island's part that the winding needs, if the orbit has as many bounces."""
+MOST_BOUNCES = 8192
+"""Longest second pass: the returns of a block are kept until they are averaged."""
+
+PARABOLIC = 1e-9
+"""A trace this close to 2 is that of a shear: rounding moves it by 1e-11, and no island met has one as close."""
+ARCS = 128
+"""Arcs of the circle in which the steps of the angle are looked for."""
+
+
+@dataclass(frozen=True)
+class Windings:
+    """Motion of n orbits about the centres of their islands; NaN where no elliptic centre was found.
+
+    Attributes
+    ----------
+    winding
+        Shape (n,): turns of the q-fold map about the centre, folded to [0, 1/2].
+    change
+        Shape (n,): its change between the two halves of the second pass.
+    centre_turns, centre_p
+        Shape (n,): the centre in the part of the island where the orbit starts.
+    trace
+        Shape (n,): trace of the q-fold tangent map at the periodic point that was found, elliptic or not.
+    """
+
+    winding: Floats
+    change: Floats
+    centre_turns: Floats
+    centre_p: Floats
+    trace: Floats
+
+    @property
+    def resonant(self) -> npt.NDArray[np.bool_]:
+        """Where the periodic point is parabolic: on a curve of such points, as in a circle, and not in an island."""
+        found: npt.NDArray[np.bool_] = np.abs(self.trace - 2.0) < PARABOLIC
+        return found
+
+
+@kernel
+def collect_returns(
+    harmonics: Floats,
+    turns: Floats,
+    momenta: Floats,
+    periods: Whole,
+    rotations: Whole,
+    bounces: int,
+    shifts: Floats,
+    returned_p: Floats,
+) -> None:
+    """Fill the last two arrays, of shape (returns + 1, LANES), with every q-th bounce of a block of orbits.
+
+    ``shifts`` is the boundary parameter less that of the start and less the island's whole turns.
+    """
+    state = np.empty((STATE_ROWS, LANES))
+    powers = np.empty((2 * harmonics.shape[1], LANES))
+    buffer = np.empty((BUFFER_ROWS, BUFFER, LANES))
+    start_block(harmonics, turns, momenta, state, powers)
+    shift = np.zeros(LANES)
+    waited = np.zeros(LANES, dtype=np.int64)
+    place = np.zeros(LANES, dtype=np.int64)
+    shifts[0] = 0.0
+    returned_p[0] = momenta
+    for first in range(0, bounces, BUFFER):
+        count = min(BUFFER, bounces - first)
+        bounce_block(harmonics, state, powers, buffer, count)
+        for j in range(LANES):
+            for row in range(count):
+                shift[j] += buffer[ADVANCE, row, j]
+                waited[j] += 1
+                if waited[j] == periods[j]:
+                    waited[j] = 0
+                    shift[j] -= rotations[j]
+                    place[j] += 1
+                    shifts[place[j], j] = shift[j]
+                    returned_p[place[j], j] = buffer[P_AFTER, row, j]
+
+
+def second_pass_bounces(bounces: int, period: int) -> int:
+    """How many bounces the second pass of an orbit takes, of the ``bounces`` of its first."""
+    wanted = max(bounces // SHARE, FEWEST_RETURNS * period)
+    return min(wanted, bounces, MOST_BOUNCES)
+
+
+def wind_orbits(
+    harmonics: Floats, turns: Floats, momenta: Floats, periods: Whole, rotations: Whole, bounces: int
+) -> Windings:
+    """Find the centres and the windings of island orbits.
+
+    Parameters
+    ----------
+    harmonics
+        Boundary, shape (4, K + 1).
+    turns, momenta
+        Start of each orbit, shape (n,): boundary parameter and p.
+    periods, rotations
+        q and p of its island, shape (n,).
+    bounces
+        Bounces of the first pass.
+    """
+    found = np.full((5, turns.size), np.nan)
+    order = np.argsort(periods, kind="stable")
+    for first in range(0, order.size, LANES):
+        block = order[first : first + LANES]
+        found[:, block] = _wind_block(
+            harmonics, turns[block], momenta[block], periods[block], rotations[block], bounces
+        )
+    return Windings(*found)
+
+
+def _wind_block(
+    harmonics: Floats, turns: Floats, momenta: Floats, periods: Whole, rotations: Whole, bounces: int
+) -> Floats:
+    """The rows of ``Windings`` for one block of at most LANES orbits."""
+    length = second_pass_bounces(bounces, int(periods.max()))
+    most = length // int(periods.min())
+    shifts = np.empty((most + 1, LANES))
+    returned_p = np.empty((most + 1, LANES))
+    collect_returns(
+        harmonics,
+        fill_up(turns),
+        fill_up(momenta),
+        fill_up(periods),
+        fill_up(rotations),
+        length,
+        shifts,
+        returned_p,
+    )
+    counts = length // periods
+    weights, places = _weights_of(counts)
+    mean_shift, mean_p = average_points(shifts, returned_p, counts, weights, places)
+    centre_turns, centre_p, at = find_fixed_points(harmonics, turns + mean_shift, mean_p, periods, rotations)
+    shear, stretch = _normal_form(at)
+    winding, change = average_windings(
+        shifts, returned_p, counts, weights, places, centre_turns - turns, centre_p, shear, stretch
+    )
+    known = np.where(np.isfinite(winding), 1.0, np.nan)
+    return np.stack([winding, change, (centre_turns % 1.0) * known, centre_p * known, at.trace])
+
+
+def _weights_of(counts: Whole) -> tuple[Floats, Whole]:
+    """Weights of windows of each count and of half of it, and where the two start for each orbit, shape (2, n)."""
+    lengths = sorted({int(length) for length in (*counts, *(counts // 2))})
+    starts = dict(zip(lengths, np.cumsum([0, *lengths[:-1]]), strict=True))
+    places = np.array([[starts[int(n)] for n in counts], [starts[int(n) // 2] for n in counts]], dtype=np.int64)
+    return np.concatenate([window_weights(length) for length in lengths]), places
+
+
+def _normal_form(at: ReturnMap) -> tuple[Floats, Floats]:
+    """Shear and stretch that make the tangent map at an elliptic point a rotation of (stretch t, p + shear t).
+
+    The quadratic form m21 t^2 + (m22 - m11) t p - m12 p^2 is invariant under the matrix (m11, m12; m21, m22) of unit
+    determinant; it is definite where the trace is between -2 and 2.  NaN elsewhere.
+    """
+    m12 = at.matrix[0, 1] / at.speed
+    inside = 4.0 - at.trace * at.trace
+    stretch = np.sqrt(np.where(inside > 0.0, inside, np.nan)) / (2.0 * np.abs(m12))
+    return (at.matrix[0, 0] - at.matrix[1, 1]) / (2.0 * m12), stretch
+
+
+@kernel
+def average_points(shifts: Floats, p: Floats, counts: Whole, weights: Floats, places: Whole) -> tuple[Floats, Floats]:
+    """Weighted averages of the returns of each orbit: a point near its island's centre."""
+    mean_shift = np.zeros(counts.size)
+    mean_p = np.zeros(counts.size)
+    for j in range(counts.size):
+        for n in range(counts[j]):
+            weight = weights[places[0, j] + n]
+            mean_shift[j] += weight * shifts[n, j]
+            mean_p[j] += weight * p[n, j]
+    return mean_shift, mean_p
+
+
+@kernel
+def average_windings(
+    shifts: Floats,
+    p: Floats,
+    counts: Whole,
+    weights: Floats,
+    places: Whole,
+    centre_shift: Floats,
+    centre_p: Floats,
+    shear: Floats,
+    stretch: Floats,
+) -> tuple[Floats, Floats]:
+    """Winding of each orbit about its centre, folded to [0, 1/2], and its change between two halves; NaN if unknown."""
+    winding = np.full(counts.size, np.nan)
+    change = np.full(counts.size, np.nan)
+    for j in range(counts.size):
+        count = counts[j]
+        steps = np.empty(count)
+        sides = np.zeros(4, dtype=np.int64)
+        last = 0.0
+        for n in range(count + 1):
+            x = shifts[n, j] - centre_shift[j]
+            y = p[n, j] - centre_p[j]
+            sides[(2 if y > 0.0 else 0) + (1 if x > 0.0 else 0)] += 1
+            angle = angle_turns(y + shear[j] * x, stretch[j] * x)
+            if n > 0:
+                step = angle - last
+                steps[n - 1] = step - math.floor(step)
+            last = angle
+        cut = widest_gap(steps)
+        # With a side left empty, or steps all round the circle, the centre is not that of this orbit's island.
+        if not (math.isfinite(stretch[j]) and sides.min() > 0 and cut >= 0.0):
+            continue
+        for n in range(count):
+            steps[n] -= 1.0 if steps[n] > cut else 0.0
+        whole = 0.0
+        for n in range(count):
+            whole += weights[places[0, j] + n] * steps[n]
+        half = count // 2
+        early = 0.0
+        late = 0.0
+        for n in range(half):
+            early += weights[places[1, j] + n] * steps[count - 2 * half + n]
+            late += weights[places[1, j] + n] * steps[count - half + n]
+        winding[j] = abs(whole - math.floor(whole + 0.5))
+        change[j] = late - early
+    return winding, change
+
+
+@kernel
+def widest_gap(steps: Floats) -> float:
+    """Middle of the widest arc of the circle [0, 1) that no step falls in; -1 where there is none to a 1/128 turn.
+
+    The steps of an orbit about its centre fill an arc; cut open elsewhere, the circle becomes a line again.
+    """
+    taken = np.zeros(ARCS, dtype=np.bool_)
+    for n in range(steps.size):
+        if not math.isfinite(steps[n]):
+            return -1.0
+        taken[min(int(steps[n] * ARCS), ARCS - 1)] = True
+    widest = 0
+    middle = -1.0
+    run = 0
+    for number in range(2 * ARCS):
+        run = 0 if taken[number % ARCS] else run + 1
+        if run > widest and run <= ARCS:
+            widest = run
+            middle = ((number + 1.0 - 0.5 * run) / ARCS) % 1.0
+    return middle
