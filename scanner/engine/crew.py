@@ -11,7 +11,7 @@ from pathlib import Path
 import dask
 from distributed import Client, LocalCluster
 
-from scanner.engine.interrupts import interrupts_held_back
+from scanner.engine import interrupts
 from scanner.errors import EngineError
 from scanner.indicators import MINIMUM_BOUNCES, orbit_numbers
 from scanner.study import Resources
@@ -62,7 +62,7 @@ def hire(
 def _local_client(stack: ExitStack, workers: int) -> Client:
     _warm_up()
     stack.enter_context(dask.config.set({"distributed.scheduler.allowed-failures": DEATHS_ALLOWED}))
-    with interrupts_held_back():
+    with interrupts.interrupts_ignored():
         try:
             cluster = LocalCluster(
                 n_workers=workers,
@@ -72,6 +72,7 @@ def _local_client(stack: ExitStack, workers: int) -> Client:
                 dashboard_address="127.0.0.1:0",
                 worker_dashboard_address="127.0.0.1:0",
                 silence_logs=logging.CRITICAL,
+                preload=[interrupts.__name__],
             )
         except (OSError, RuntimeError) as error:
             raise EngineError(f"{workers} workers could not be started ({error}); try fewer") from None

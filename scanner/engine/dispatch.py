@@ -7,6 +7,7 @@ import queue
 import time
 from collections import Counter, deque
 from collections.abc import Callable
+from concurrent.futures import CancelledError
 from uuid import uuid4
 
 from distributed import Client, Future, KilledWorker
@@ -19,6 +20,8 @@ PER_THREAD = 3
 """Tasks submitted for each thread: enough to keep it busy, few enough to be taken back."""
 ATTEMPTS = 3
 TURN_SECONDS = 1.0
+ANSWER_SECONDS = 30.0
+"""Time to fetch the few numbers of a finished task."""
 LONELY_SECONDS = 300.0
 """Time without workers after which that is said, again and again."""
 
@@ -29,8 +32,8 @@ class Dispatcher:
     """One run over an agenda.
 
     A task that raises is tried again, then the run ends: the cause (a full disk, say) would meet the others too.
-    A task whose workers die is tried again after all others, when each worker has one task alone, so that it cannot
-    drag innocent ones along; one that kills its workers even so is abandoned.
+    A task whose workers die is tried again after all others, alone, because the death of a worker is held against all
+    tasks that wait there; one that kills its workers even so is abandoned.
 
     Parameters
     ----------
@@ -131,8 +134,7 @@ class Dispatcher:
         threads = max(1, sum(self.workers.values()))
         while self._agenda and not self._draining and len(self._flying) < PER_THREAD * threads:
             self._submit(self._agenda.take())
-        alone = all(self._deaths[number] for number, _ in self._flying.values())
-        while self._suspects and not self._draining and alone and len(self._flying) < threads:
+        if self._suspects and not self._draining and not self._flying:
             self._submit(self._suspects.popleft())
 
     def _submit(self, number: int) -> None:
@@ -146,16 +148,23 @@ class Dispatcher:
         if future.key not in self._flying:
             return
         number, _ = self._flying.pop(future.key)
-        if future.status == "finished":
-            self._agenda.settle(number)
-            self._land(future.result())
-        elif future.status == "error":
+        if future.status == "error":
             self._take_failure(number, future.exception())
-        elif self._client.status == "running":
-            log.warning("task %d was %s; submitting it again", number, future.status)
-            self._agenda.give_back(number)
+            return
+        try:
+            outcome = future.result(timeout=ANSWER_SECONDS)
+        except (OSError, CancelledError) as error:
+            self._take_loss(number, error)
         else:
+            self._agenda.settle(number)
+            self._land(outcome)
+
+    def _take_loss(self, number: int, error: Exception) -> None:
+        """Deal with a task of which nothing more will be heard."""
+        if self._client.status != "running":
             raise self._scheduler_gone()
+        log.warning("task %d was lost (%s); submitting it again", number, error)
+        self._agenda.give_back(number)
 
     def _take_failure(self, number: int, error: BaseException) -> None:
         reason = " ".join(str(error).split())
@@ -172,12 +181,12 @@ class Dispatcher:
         if self._failures[number] == ATTEMPTS:
             raise EngineError(
                 f"task {number} failed {ATTEMPTS} times, last with {type(error).__name__}: {reason}; "
-                "mend that and give the same command again to carry on"
+                "mend that and run the same study on the same store to carry on"
             )
         self._agenda.give_back(number)
 
     def _scheduler_gone(self) -> EngineError:
         return EngineError(
-            f"the scheduler at {self._client.scheduler.addr} is gone with {self.flying} tasks in flight; "
-            "start it again and give the same command to carry on"
+            f"the scheduler at {self._client.scheduler.addr} is gone; "
+            "start it again and run the same study on the same store to carry on"
         )

@@ -39,14 +39,21 @@ class Interrupts:
 
 
 @contextmanager
-def interrupts_held_back() -> Iterator[None]:
-    """Block Ctrl-C in this thread, and for good in every thread and process that is started meanwhile.
+def interrupts_ignored() -> Iterator[None]:
+    """Ignore Ctrl-C here, and for good in every process that is started meanwhile.
 
-    A terminal sends it to the whole group of processes; workers must not stop by it.  A blocked signal stays blocked
-    in the children of children, also in those that replace a dead worker later.
+    A terminal sends it to all processes of a command, and workers must not stop by it.
     """
-    before = signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGINT})
+    if threading.current_thread() is not threading.main_thread():
+        yield
+        return
+    before = signal.signal(signal.SIGINT, signal.SIG_IGN)
     try:
         yield
     finally:
-        signal.pthread_sigmask(signal.SIG_SETMASK, before)
+        signal.signal(signal.SIGINT, before)
+
+
+def dask_setup(worker: object) -> None:
+    """Have a worker ignore Ctrl-C; called when a worker starts, also one that replaces a dead one later."""
+    signal.signal(signal.SIGINT, signal.SIG_IGN)

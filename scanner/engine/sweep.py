@@ -5,7 +5,6 @@ from __future__ import annotations
 import logging
 import time
 from collections.abc import Iterator
-from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -16,6 +15,7 @@ from scanner.engine.crew import hire
 from scanner.engine.dispatch import Dispatcher
 from scanner.engine.display import Display, choose_display
 from scanner.engine.interrupts import Interrupts
+from scanner.engine.journal import log_beside
 from scanner.engine.tally import Tally, clock
 from scanner.engine.work import Order, Outcome
 from scanner.errors import EngineError
@@ -131,7 +131,7 @@ def run_study(
     path = Path(store).absolute()
     check_limits(plan, path, _share_left(path))
     prepare_store(path, plan)
-    with StoreLock(path) as lock, _log_beside(path), choose_display(progress) as display, Interrupts() as interrupts:
+    with StoreLock(path) as lock, log_beside(path), choose_display(progress) as display, Interrupts() as interrupts:
         run = _Run(plan, path, lock, display, interrupts)
         if not run.before.complete:
             try:
@@ -250,20 +250,3 @@ def _share_left(path: Path) -> float:
         return 1.0
     state = sweep_progress(path)
     return 1.0 - state.tasks_finished / state.tasks
-
-
-@contextmanager
-def _log_beside(path: Path) -> Iterator[None]:
-    """Write all this package logs to a file beside the store."""
-    package = logging.getLogger("scanner")
-    handler = logging.FileHandler(path.with_suffix(".log"))
-    handler.setFormatter(logging.Formatter("%(asctime)s %(levelname)s %(message)s"))
-    level = package.level
-    package.addHandler(handler)
-    package.setLevel(logging.INFO)
-    try:
-        yield
-    finally:
-        package.setLevel(level)
-        package.removeHandler(handler)
-        handler.close()

@@ -35,7 +35,7 @@ class Tally:
         self.orbits_settled += outcome.orbits
         now = time.monotonic()
         self._recent.append((now, outcome.orbits, outcome.bounces))
-        while self._recent[1][0] < now - PACE_SECONDS:
+        while self._recent[1][0] <= now - PACE_SECONDS:
             self._recent.popleft()
 
     @property

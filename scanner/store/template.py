@@ -70,11 +70,11 @@ def check_fingerprint(path: Path, plan: Plan) -> None:
 
 
 def note_finish(path: Path, finished: bool) -> None:
-    """Set or remove the time of completion among the root's attributes."""
+    """Set or remove the time of completion among the root's attributes; once set it stays."""
     root = zarr.open_group(path, mode="r+")
-    if finished:
+    if finished and "finished" not in root.attrs:
         root.attrs["finished"] = _now()
-    elif "finished" in root.attrs:
+    elif not finished and "finished" in root.attrs:
         del root.attrs["finished"]
 
 

@@ -1,0 +1,92 @@
+"""A study whose tasks take as long as the environment says, and the command that sweeps it."""
+
+from __future__ import annotations
+
+import os
+import subprocess
+import sys
+import time
+from collections.abc import Callable
+from pathlib import Path
+
+import psutil
+
+from scanner.store import Ledger
+
+SHAPES = """
+import os
+import time
+
+import numpy as np
+
+
+def ellipse(number):
+    time.sleep(float(os.environ.get("SECONDS_A_TABLE", "0")))
+    return np.array([[0, 1.0], [0, 0], [0, 0], [0, 1.0 - number / 1000]])
+"""
+
+STUDY = """
+[study]
+title = "Slow"
+seed = 3
+[table]
+family = "slow_shapes:ellipse"
+number = { start = 1, stop = 184, count = 184 }
+[orbits]
+per_table = 64
+bounces = 64
+replicates = 4
+"""
+"""Eight tasks of 23 tables."""
+
+PATIENCE = 60.0
+
+
+def write_study(folder: Path) -> Path:
+    """Put the study and its code into a folder."""
+    (folder / "slow_shapes.py").write_text(SHAPES)
+    (folder / "slow.toml").write_text(STUDY)
+    return folder / "slow.toml"
+
+
+class Sweep:
+    """The command `scanner sweep`, running in a process group of its own as under a terminal."""
+
+    def __init__(self, study: Path, store: Path, *options: str, seconds_a_table: float = 0.02) -> None:
+        self.store = store
+        self.process = subprocess.Popen(
+            [sys.executable, "-m", "scanner", "sweep", str(study), "--store", str(store), "--allow-code", *options],
+            cwd=study.parent,
+            env={**os.environ, "SECONDS_A_TABLE": str(seconds_a_table)},
+            stdout=subprocess.PIPE,
+            stderr=subprocess.PIPE,
+            text=True,
+            start_new_session=True,
+        )
+
+    def wait(self) -> tuple[int, str]:
+        """Wait for the end: exit status, and all that was printed."""
+        out, err = self.process.communicate(timeout=PATIENCE)
+        return self.process.returncode, out + err
+
+    def receipts(self) -> list[int]:
+        """Tasks that are finished."""
+        return Ledger(self.store).listed()
+
+    def await_receipts(self, count: int) -> None:
+        """Wait until so many tasks are finished."""
+        wait_until(lambda: len(self.receipts()) >= count or self.process.poll() is not None)
+        assert self.process.poll() is None, self.wait()
+
+    def workers(self) -> list[psutil.Process]:
+        """Worker processes."""
+        children = psutil.Process(self.process.pid).children(recursive=True)
+        return [child for child in children if "spawn_main" in " ".join(child.cmdline())]
+
+
+def wait_until(condition: Callable[[], bool]) -> None:
+    """Wait for something to become true."""
+    give_up = time.monotonic() + PATIENCE
+    while not condition():
+        assert time.monotonic() < give_up, "waited in vain"
+        time.sleep(0.05)
