@@ -26,13 +26,15 @@ def _sources_fingerprint() -> str:
     """Hash the sources that hold kernels, and the compiler's versions.
 
     numba looks only at the file of the cached function itself, so a change in a kernel that another one calls
-    would go unnoticed; a folder named by this hash cannot be stale.
+    would go unnoticed; a folder named by this hash cannot be stale.  It also goes by the place and the time of that
+    file, and so does the hash: what is in the folder can then be loaded.
     """
     package = Path(__file__).parent
     digest = hashlib.sha256(f"{numba.__version__} {llvmlite.__version__}".encode())
     for room in KERNEL_ROOMS:
         path = package / room
         for source in sorted(path.rglob("*.py")) if path.is_dir() else [path]:
+            digest.update(f"{source} {source.stat().st_mtime_ns}".encode())
             digest.update(source.read_bytes())
     return digest.hexdigest()[:16]
 
@@ -53,6 +55,6 @@ def kernel(function: Function) -> Function:
 
 
 def inlined(function: Function) -> Function:
-    """Compile a small scalar function that is copied into the kernels that call it, so that their loops vectorise."""
-    compiled: Function = numba.njit(function, nogil=True, inline="always", error_model="numpy", fastmath=False)
+    """Compile a function that is copied into the kernels that call it, so that their loops vectorise."""
+    compiled: Function = numba.njit(function, nogil=True, forceinline=True, error_model="numpy", fastmath=False)
     return compiled

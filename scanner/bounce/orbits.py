@@ -186,6 +186,14 @@ def bounce_lanes(
         reflect(state, buffer, row)
 
 
+@inlined
+def copy_rows(source: Floats, target: Floats) -> None:
+    """Copy a block's rows by a loop: numba's own assignment of slices takes seconds to compile."""
+    for row in range(source.shape[0]):
+        for j in range(LANES):
+            target[row, j] = source[row, j]
+
+
 @kernel
 def bounce_block(harmonics: Floats, state: Floats, powers: Floats, buffer: Floats, count: int) -> None:
     """Bounce every orbit of a block ``count`` times: for callers that need not be as fast as can be.
@@ -202,12 +210,15 @@ def bounce_block(harmonics: Floats, state: Floats, powers: Floats, buffer: Float
         Bounces to make, at most BUFFER.
     """
     here = np.empty((STATE_ROWS, LANES))
-    here[:] = state
+    copy_rows(state, here)
     turning = np.empty((2 * harmonics.shape[1], LANES))
-    turning[:] = powers
+    copy_rows(powers, turning)
     quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
     seen = np.empty((BUFFER_ROWS, BUFFER, LANES))
     bounce_lanes(harmonics, here, turning, quotient, seen, count)
-    state[:] = here
-    powers[:] = turning
-    buffer[:, :count] = seen[:, :count]
+    copy_rows(here, state)
+    copy_rows(turning, powers)
+    for kind in range(BUFFER_ROWS):
+        for row in range(count):
+            for j in range(LANES):
+                buffer[kind, row, j] = seen[kind, row, j]

@@ -74,12 +74,11 @@ def return_block(
     powers = np.empty((2 * harmonics.shape[1], LANES))
     buffer = np.empty((BUFFER_ROWS, BUFFER, LANES))
     start_block(harmonics, turns, momenta, state, powers)
-    shift[:] = 0.0
-    p[:] = momenta
-    matrix[0, 0] = 1.0
-    matrix[0, 1] = 0.0
-    matrix[1, 0] = 0.0
-    matrix[1, 1] = 1.0
+    for j in range(LANES):
+        shift[j] = 0.0
+        p[j] = momenta[j]
+        matrix[0, 0, j] = matrix[1, 1, j] = 1.0
+        matrix[0, 1, j] = matrix[1, 0, j] = 0.0
     for first in range(0, periods.max(), BUFFER):
         bounce_block(harmonics, state, powers, buffer, BUFFER)
         for j in range(LANES):

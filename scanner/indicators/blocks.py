@@ -68,9 +68,11 @@ def measure_block(
             bounce_lanes(harmonics, state, powers, quotient, buffer, count)
             absorb(buffer, count, first, windows, weights, averages, running)
             first += count
-        growth[mark] = running[GROWTH]
-    path[:] = running[PATH]
-    failed[:] = state[FAILED]
+        for j in range(LANES):
+            growth[mark, j] = running[GROWTH, j]
+    for j in range(LANES):
+        path[j] = running[PATH, j]
+        failed[j] = state[FAILED, j]
 
 
 def stream_orbits(harmonics: Floats, turns: Floats, momenta: Floats, schedule: Schedule) -> Streams:

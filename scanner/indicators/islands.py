@@ -94,8 +94,9 @@ def collect_returns(
     shift = np.zeros(LANES)
     waited = np.zeros(LANES, dtype=np.int64)
     place = np.zeros(LANES, dtype=np.int64)
-    shifts[0] = 0.0
-    returned_p[0] = momenta
+    for j in range(LANES):
+        shifts[0, j] = 0.0
+        returned_p[0, j] = momenta[j]
     for first in range(0, bounces, BUFFER):
         count = min(BUFFER, bounces - first)
         bounce_block(harmonics, state, powers, buffer, count)
