@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import logging
 import os
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import ExitStack, contextmanager
 from pathlib import Path
 
@@ -12,10 +12,9 @@ import dask
 from distributed import Client, LocalCluster
 
 from scanner.engine import interrupts
+from scanner.engine.warmth import kernels_are_warm, warm_kernels
 from scanner.errors import EngineError
-from scanner.indicators import MINIMUM_BOUNCES, orbit_numbers
 from scanner.study import Resources
-from scanner.tables import build_table
 
 CONNECT_SECONDS = 20
 DEATHS_ALLOWED = 10
@@ -25,6 +24,7 @@ DEATHS_ALLOWED = 10
 @contextmanager
 def hire(
     resources: Resources,
+    say: Callable[[str], None],
     client: Client | None = None,
     workers: int | None = None,
     scheduler: str | None = None,
@@ -36,6 +36,8 @@ def hire(
     ----------
     resources
         What the study says about it; the other arguments go first.
+    say
+        Called with one line where something takes long.
     client
         The caller's own, used as it is.
     workers
@@ -56,11 +58,13 @@ def hire(
         elif resources.runner == "scheduler":
             yield _remote_client(stack, resources.scheduler, resources.scheduler_file)
         else:
-            yield _local_client(stack, workers or resources.workers or len(os.sched_getaffinity(0)))
+            yield _local_client(stack, workers or resources.workers or len(os.sched_getaffinity(0)), say)
 
 
-def _local_client(stack: ExitStack, workers: int) -> Client:
-    _warm_up()
+def _local_client(stack: ExitStack, workers: int, say: Callable[[str], None]) -> Client:
+    if not kernels_are_warm():
+        say("compiling the kernels, once on this machine: about a minute")
+        warm_kernels()
     stack.enter_context(dask.config.set({"distributed.scheduler.allowed-failures": DEATHS_ALLOWED}))
     with interrupts.interrupts_ignored():
         try:
@@ -88,8 +92,3 @@ def _remote_client(stack: ExitStack, scheduler: str | None, scheduler_file: str 
         where = scheduler or scheduler_file
         raise EngineError(f"{where}: no scheduler answers there ({error}); start `dask scheduler` first") from None
     return stack.enter_context(client)
-
-
-def _warm_up() -> None:
-    """Have every kernel compiled and cached before the workers start: many that race to do it lose entries."""
-    orbit_numbers(build_table("ellipse", eccentricity=0.5), [0.1], [0.2], MINIMUM_BOUNCES)

@@ -10,6 +10,7 @@ from pathlib import Path
 
 from scanner import __version__
 from scanner.cells import CellResult, compute, reduce
+from scanner.engine.warmth import warm_kernels
 from scanner.errors import EngineError
 from scanner.quantities import DONE, FAILED, NOT_CONVEX
 from scanner.store import Ledger, Receipt, Regions, compare, list_failures, open_regions
@@ -88,7 +89,7 @@ def _reduce(plan: Plan, task: Task, regions: Regions, ledger: Ledger) -> CellRes
 
 @lru_cache(maxsize=4)
 def _plan(order: Order) -> Plan:
-    """Parse a study once a process."""
+    """Read a study and have the kernels ready, once a process."""
     host = socket.gethostname()
     if order.version != __version__:
         raise EngineError(
@@ -101,4 +102,5 @@ def _plan(order: Order) -> Plan:
     study = parse_study(order.text, allow_code=order.allow_code, folder=order.folder)
     if study.fingerprint != order.fingerprint:
         raise EngineError(f"the worker on {host} reads other input files than the client; put them on a shared disk")
+    warm_kernels()
     return make_plan(study)

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from pathlib import Path
-
-import xarray as xr
+from typing import TYPE_CHECKING
 
 from scanner.store.ledger import Ledger
+
+if TYPE_CHECKING:
+    import xarray as xr
 
 
 def open_sweep(path: str | Path) -> xr.DataTree:
@@ -28,5 +30,7 @@ def open_sweep(path: str | Path) -> xr.DataTree:
     StoreError
         The path is missing or not a store of this tool.
     """
+    import xarray as xr  # here, as it would be a fifth of a worker's memory, and workers do not read this way
+
     Ledger(Path(path)).charter()
     return xr.open_datatree(path, engine="zarr", consolidated=False)

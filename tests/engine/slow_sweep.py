@@ -31,13 +31,15 @@ title = "Slow"
 seed = 3
 [table]
 family = "slow_shapes:ellipse"
-number = { start = 1, stop = 184, count = 184 }
+number = { start = 1, stop = 138, count = 138 }
 [orbits]
 per_table = 64
 bounces = 64
 replicates = 4
 """
-"""Eight tasks of 23 tables."""
+"""Six tasks of 23 tables."""
+
+TASKS = 6
 
 PATIENCE = 60.0
 
