@@ -3,7 +3,8 @@
 Both do the work that the package does for every bounce of a table whose boundary is a Fourier series: the next
 end of the chord by Newton's method, reflection, the tangent map, a tangent vector carried along, and weighted
 averages of advance, p and chord over the same windows.  ``measure_scalar`` follows one orbit after another in a
-plain compiled loop, ``measure_vectorised`` all of them at once in NumPy arrays.  Neither shares code with the package.
+plain compiled loop, ``measure_vectorised`` all of them at once in NumPy arrays.  Neither shares code with the package,
+and neither does what the package does besides: verdicts, centres of islands and the winding about them.
 """
 
 from __future__ import annotations

@@ -102,12 +102,13 @@ def test_rows_of_orbits_are_those_of_the_tables_that_are_done(tmp_path, suffix):
     tree = invented_sweep(SWEPT, orbits=ORBITS)
     target = tmp_path / f"orbits{suffix}"
     export_sweep(tree, target, orbits=True)
-    rows = pd.read_csv(target, float_precision="round_trip") if suffix == ".csv" else pd.read_parquet(target)
+    rows = pd.read_csv(target, dtype={"p0": str}) if suffix == ".csv" else pd.read_parquet(target)
     done = tree["table_status"].values == 1
     assert len(rows) == done.sum() * ORBITS
     assert rows.columns[:3].tolist() == ["amplitude", "harmonic", "orbit"]
     one = rows[(rows["amplitude"] == 0.05) & (rows["harmonic"] == 2)]
-    np.testing.assert_array_equal(one["p0"], tree["orbits/p0"].values[1, 0])
+    # Python reads decimals exactly, whatever the version of pandas.
+    np.testing.assert_array_equal(one["p0"].map(float), tree["orbits/p0"].values[1, 0])
     meanings = np.array(tree["orbits/verdict"].attrs["flag_meanings"].split())
     np.testing.assert_array_equal(one["verdict"], meanings[tree["orbits/verdict"].values[1, 0]])
 

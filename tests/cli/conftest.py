@@ -51,7 +51,7 @@ def study(folder):
 def small_crew():
     from distributed import Client
 
-    with Client(processes=False, n_workers=1, threads_per_worker=1, dashboard_address=None) as client:
+    with Client(processes=False, n_workers=1, threads_per_worker=1, dashboard_address=":0") as client:
         yield client
 
 

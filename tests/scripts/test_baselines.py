@@ -129,8 +129,9 @@ def test_package_agrees_with_the_plain_loop(family, parameters):
     for name in ("rotation_number", "lyapunov_per_bounce"):
         np.testing.assert_allclose(mine[name][calm], plain[name][-1][calm], rtol=0, atol=1e-9, err_msg=name)
     np.testing.assert_allclose(mine["mean_chord"][calm], plain["mean_chord"][calm], rtol=1e-9)
-    # A change of the averages of 1e-7 or more is then the same to a percent in both.
-    large = calm & (mine["frequency_diffusion"] > -7.0)
+    # A change of the averages of 1e-7 or more is then the same to a percent in both; inside islands the package
+    # follows another frequency, the winding about their centre.
+    large = calm & (mine["frequency_diffusion"] > -7.0) & (mine["island_period"] == 0)
     assert large.any()
     np.testing.assert_allclose(
         mine["frequency_diffusion"][large], plain["frequency_diffusion"][-1][large], rtol=0, atol=0.01
