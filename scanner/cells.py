@@ -46,7 +46,7 @@ class CellResult:
         return int(np.count_nonzero(self.groups[ROOT]["table_status"] == status)) if ROOT in self.groups else 0
 
     def fill(self, group: str, place: Index, numbers: Mapping[str, float | Array]) -> None:
-        """Put the numbers of one table at its place in the box."""
+        """Put numbers of one table at its place in the box."""
         for name, values in numbers.items():
             self.groups[group][name][place] = values
 
@@ -93,8 +93,8 @@ def reduce(plan: Plan, task: Task, orbits: Mapping[str, Array], failures: Mappin
     """
 
     def sum_up(result: CellResult, place: Index, table: Table) -> None:
-        stored = {name: values[place] for name, values in orbits.items()}
-        result.fill(ROOT, place, table_numbers(table, stored, plan.study.orbits.replicates))
+        own = {name: values[place] for name, values in orbits.items()}
+        result.fill(ROOT, place, table_numbers(table, own, plan.study.orbits.replicates))
 
     return _settle_tables(plan, task, sum_up, failures)
 

@@ -61,7 +61,12 @@ def test_bounces_count_what_was_computed(surveyed):
     assert [result.bounces for result in surveyed] == [2 * 128 * 128, 128 * 128]
 
 
-def test_a_split_table_gives_the_same_bits_as_a_whole_one(plan, surveyed):
+IN_ISLANDS = {"frequency_diffusion", "island_winding", "island_centre_s", "island_centre_p"}
+"""Found by following the orbits inside islands once more, in blocks of those alone: a block goes on until its slowest
+orbit has converged, so that the last digits depend on the others of the block."""
+
+
+def test_a_split_table_gives_the_same_numbers_as_a_whole_one(plan, surveyed):
     split = Plan(plan.study, (1, 1), 64)
     parts = {ORBITS: {}, ROOT: {}}
     for task in split.tasks[:3]:
@@ -73,8 +78,11 @@ def test_a_split_table_gives_the_same_bits_as_a_whole_one(plan, surveyed):
             whole = reduce(split, task, stored, {})
     assert [task.kind for task in split.tasks[:3]] == ["orbits", "orbits", "reduce"]
     for name, values in stored.items():
-        np.testing.assert_array_equal(values[0, 0], surveyed[0].groups[ORBITS][name][0, 0])
-    for name, values in whole.groups[ROOT].items():
+        whole = surveyed[0].groups[ORBITS][name][0, 0]
+        # A change of winding near 1e-7 with errors near 1e-16 is good to nine digits; centres are near 1, or 0.
+        rtol, atol = (1e-8, 1e-14) if name in IN_ISLANDS else (0.0, 0.0)
+        np.testing.assert_allclose(values[0, 0], whole, rtol=rtol, atol=atol)
+    for name, values in summed_up.groups[ROOT].items():
         np.testing.assert_array_equal(values[0, 0], surveyed[0].groups[ROOT][name][0, 0])
 
 

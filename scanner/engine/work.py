@@ -51,8 +51,8 @@ def run_task(order: Order, number: int) -> Outcome:
     EngineError
         The worker runs another version of this package, or sees other files than the client.
     """
-    started = time.monotonic()
     plan = _plan(order)
+    started = time.monotonic()
     task = plan.tasks[number]
     store = Path(order.store)
     regions = open_regions(store, order.fingerprint)
