@@ -75,7 +75,7 @@ def test_a_split_table_gives_the_same_numbers_as_a_whole_one(plan, surveyed):
                 parts[ORBITS].setdefault(name, []).append(values)
         else:
             stored = {name: np.concatenate(pieces, axis=2) for name, pieces in parts[ORBITS].items()}
-            whole = reduce(split, task, stored, {})
+            summed_up = reduce(split, task, stored, {})
     assert [task.kind for task in split.tasks[:3]] == ["orbits", "orbits", "reduce"]
     for name, values in stored.items():
         whole = surveyed[0].groups[ORBITS][name][0, 0]
