@@ -12,18 +12,20 @@ import dask
 from distributed import Client, LocalCluster
 
 from scanner.engine import interrupts
+from scanner.engine.batch import CLUSTERS, batch_cluster
 from scanner.engine.warmth import kernels_are_warm, warm_kernels
 from scanner.errors import EngineError
 from scanner.study import Resources
 
 CONNECT_SECONDS = 20
-DEATHS_ALLOWED = 10
+PATIENCE = {"distributed.scheduler.allowed-failures": 10}
 """Workers a task may lose before the scheduler gives it up; any death counts for all tasks waiting there."""
 
 
 @contextmanager
 def hire(
     resources: Resources,
+    store: Path,
     say: Callable[[str], None],
     client: Client | None = None,
     workers: int | None = None,
@@ -36,12 +38,14 @@ def hire(
     ----------
     resources
         What the study says about it; the other arguments go first.
+    store
+        What they are to fill; jobs of a batch system leave what they print in a folder beside it.
     say
         Called with one line where something takes long.
     client
         The caller's own, used as it is.
     workers
-        Processes on this machine, one for each core by default; only where no scheduler is given.
+        Processes on this machine, one for each core by default, or jobs; only where no scheduler is given.
     scheduler, scheduler_file
         Address of a running scheduler, or the file that holds it.
 
@@ -57,6 +61,9 @@ def hire(
             yield _remote_client(stack, scheduler, scheduler_file)
         elif resources.runner == "scheduler":
             yield _remote_client(stack, resources.scheduler, resources.scheduler_file)
+        elif resources.runner in CLUSTERS:
+            stack.enter_context(dask.config.set(PATIENCE))
+            yield stack.enter_context(Client(stack.enter_context(batch_cluster(resources, workers, store))))
         else:
             yield _local_client(stack, workers or resources.workers or len(os.sched_getaffinity(0)), say)
 
@@ -65,7 +72,7 @@ def _local_client(stack: ExitStack, workers: int, say: Callable[[str], None]) ->
     if not kernels_are_warm():
         say("compiling the kernels, once on this machine: about a minute")
         warm_kernels()
-    stack.enter_context(dask.config.set({"distributed.scheduler.allowed-failures": DEATHS_ALLOWED}))
+    stack.enter_context(dask.config.set(PATIENCE))
     with interrupts.interrupts_ignored():
         try:
             cluster = LocalCluster(
@@ -84,6 +91,8 @@ def _local_client(stack: ExitStack, workers: int, say: Callable[[str], None]) ->
 
 
 def _remote_client(stack: ExitStack, scheduler: str | None, scheduler_file: str | None) -> Client:
+    if scheduler is None and scheduler_file is None:
+        raise EngineError('runner = "scheduler" needs scheduler or scheduler_file in [resources], or as an option')
     if scheduler_file is not None and not Path(scheduler_file).exists():
         raise EngineError(f"{scheduler_file}: no such scheduler file; start `dask scheduler --scheduler-file` first")
     try:

@@ -135,7 +135,7 @@ def run_study(
         run = _Run(plan, path, lock, display, interrupts)
         if not run.before.complete:
             try:
-                with hire(study.resources, display.say, client, workers, scheduler, scheduler_file) as crew:
+                with hire(study.resources, path, display.say, client, workers, scheduler, scheduler_file) as crew:
                     run.work(crew)
             except KeyboardInterrupt:
                 interrupts.requested = True
