@@ -23,6 +23,7 @@ from scanner.store import (
     Ledger,
     StoreLock,
     SweepProgress,
+    is_vacant,
     note_finish,
     prepare_store,
     remove_leftovers,
@@ -129,10 +130,12 @@ def run_study(
         study = load_study(study, allow_code)
     plan = make_plan(study)
     path = Path(store).absolute()
-    check_limits(plan, path, _share_left(path))
+    if is_vacant(path):
+        check_limits(plan, path)
     prepare_store(path, plan)
     with StoreLock(path) as lock, log_beside(path), choose_display(progress) as display, Interrupts() as interrupts:
         run = _Run(plan, path, lock, display, interrupts)
+        check_limits(plan, path, 1.0 - run.before.tasks_finished / run.before.tasks)
         if not run.before.complete:
             try:
                 with hire(study.resources, path, display.say, client, workers, scheduler, scheduler_file) as crew:
@@ -167,8 +170,8 @@ class _Run:
     def work(self, client: Client) -> None:
         """Have all that is not finished computed, until done or interrupted."""
         note_finish(self._path, finished=False)
-        finished = {receipt.task for receipt in self._ledger.receipts()}
-        dispatcher = Dispatcher(client, self._order(), Agenda(self._plan, finished), self._land, self._say)
+        agenda = Agenda(self._plan, self.before.finished)
+        dispatcher = Dispatcher(client, self._order(), agenda, self._land, self._say)
         self._abandoned = dispatcher.abandoned
         log.info("%s", f"scheduler {client.scheduler.addr}, dashboard {client.dashboard_link}")
         draining = False
@@ -242,11 +245,3 @@ class _Run:
     def _say(self, line: str) -> None:
         self._display.say(line)
         log.warning("%s", line)
-
-
-def _share_left(path: Path) -> float:
-    """Share of a store's tasks that is still to be written; all of it where there is no store yet."""
-    if not path.exists() or (path.is_dir() and not any(path.iterdir())):
-        return 1.0
-    state = sweep_progress(path)
-    return 1.0 - state.tasks_finished / state.tasks

@@ -58,7 +58,7 @@ def run_task(order: Order, number: int) -> Outcome:
     regions = open_regions(store, order.fingerprint)
     ledger = Ledger(store)
     result = _reduce(plan, task, regions, ledger) if task.kind == "reduce" else compute(plan, task)
-    chunks = regions.write(task, result.groups)
+    seals = regions.write(task, result.groups)
     receipt = Receipt(
         task=number,
         kind=task.kind,
@@ -71,16 +71,16 @@ def run_task(order: Order, number: int) -> Outcome:
         not_convex=result.count(NOT_CONVEX),
         failed=result.count(FAILED),
         failures=tuple(result.failures),
-        chunks=chunks,
     )
-    ledger.write(receipt)
+    ledger.write(receipt, seals)
     return Outcome(**{name: getattr(receipt, name) for name in Outcome.__dataclass_fields__})
 
 
 def _reduce(plan: Plan, task: Task, regions: Regions, ledger: Ledger) -> CellResult:
     """Sum up a table from the orbits that other tasks have written, once they are seen to be all there."""
     parts = [part for number in task.needs if (part := ledger.read(number))]
-    if len(parts) < len(task.needs) or any(True for part in parts for _ in compare(ledger.store, part.chunks)):
+    seals = {name: seal for number in task.needs for name, seal in (ledger.seals(number) or {}).items()}
+    if len(parts) < len(task.needs) or any(True for _ in compare(ledger.store, seals)):
         raise EngineError(
             f"stored orbits that task {task.number} needs are lost; `scanner verify --repair` clears them"
         )

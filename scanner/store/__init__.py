@@ -7,7 +7,7 @@ from scanner.store.lock import StoreLock
 from scanner.store.opening import open_sweep
 from scanner.store.progress import SweepProgress, list_failures, sweep_progress
 from scanner.store.regions import Regions, open_regions
-from scanner.store.template import note_finish, prepare_store
+from scanner.store.template import is_vacant, note_finish, prepare_store
 
 __all__ = [
     "Charter",
@@ -19,6 +19,7 @@ __all__ = [
     "StoreLock",
     "SweepProgress",
     "compare",
+    "is_vacant",
     "list_failures",
     "note_finish",
     "open_regions",

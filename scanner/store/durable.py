@@ -7,14 +7,13 @@ import os
 from collections import deque
 from collections.abc import Iterable, Iterator, Mapping
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass
 from pathlib import Path
+from typing import NamedTuple
 
 SETTLED_AT_ONCE = 8
 
 
-@dataclass(frozen=True)
-class Seal:
+class Seal(NamedTuple):
     """Size and checksum of a file as it was written."""
 
     size: int

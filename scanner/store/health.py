@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from scanner.store.durable import compare, settle
-from scanner.store.ledger import Ledger, Receipt
+from scanner.store.ledger import Ledger
 from scanner.store.lock import StoreLock
 from scanner.store.template import ROOT_METADATA, note_finish
 
@@ -52,11 +52,11 @@ def verify(path: str | Path) -> list[Damage]:
     if not _is_readable(store / ROOT_METADATA):
         found.append(Damage(ROOT_METADATA, None, "unreadable"))
     for task in ledger.listed():
-        receipt = ledger.read(task)
-        if receipt is None:
+        seals = ledger.seals(task)
+        if seals is None:
             found.append(Damage(str(ledger.receipt_path(task).relative_to(store)), task, "unreadable"))
         else:
-            found.extend(Damage(name, task, kind) for name, kind in compare(store, receipt.chunks))
+            found.extend(Damage(name, task, kind) for name, kind in compare(store, seals))
     return found
 
 
@@ -80,7 +80,7 @@ def repair(path: str | Path) -> list[Damage]:
         damaged = verify(store)
         _remove(store / damage.file for damage in damaged if damage.task is None)
         for task in sorted({damage.task for damage in damaged if damage.task is not None}):
-            _clear_block(store, ledger.receipt_path(task), ledger.read(task))
+            _clear_block(ledger, task)
         if damaged and (store / ROOT_METADATA).exists():
             note_finish(store, finished=False)
     return damaged
@@ -99,11 +99,11 @@ def _is_readable(metadata: Path) -> bool:
         return False
 
 
-def _clear_block(store: Path, receipt_path: Path, receipt: Receipt | None) -> None:
+def _clear_block(ledger: Ledger, task: int) -> None:
     """Take back a receipt first and its chunks after, so that nothing half cleared ever counts as finished."""
-    _remove([receipt_path])
-    if receipt is not None:
-        _remove(store / name for name in receipt.chunks)
+    seals = ledger.seals(task) or {}
+    _remove([ledger.receipt_path(task)])
+    _remove(ledger.store / name for name in seals)
 
 
 def _remove(files: Iterable[Path]) -> None:

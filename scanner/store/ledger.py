@@ -39,10 +39,10 @@ class Charter:
 
 @dataclass(frozen=True)
 class Receipt:
-    """Proof that a task is finished: what it wrote and what came out.
+    """Proof that a task is finished, and what came out.
 
     ``orbits`` counts the orbits it settles, ``bounces`` what was really computed for them; ``failures`` lists tables
-    by their index in the grid with a one-line reason; ``chunks`` seals each file by its name in the store.
+    by their index in the grid with a one-line reason.
     """
 
     task: int
@@ -56,29 +56,26 @@ class Receipt:
     not_convex: int
     failed: int
     failures: tuple[tuple[tuple[int, ...], str], ...]
-    chunks: Mapping[str, Seal]
 
 
-def _sealed_lines(record: Charter | Receipt) -> bytes:
-    line = json.dumps(asdict(record), separators=(",", ":")).encode()
-    return b"%s\n%s\n" % (line, Seal.of(line).digest.encode())
+def _seal_lines(*records: object) -> bytes:
+    """Write records one a line, and a checksum of them all below."""
+    body = b"".join(json.dumps(record, separators=(",", ":")).encode() + b"\n" for record in records)
+    return body + _checksum_line(body)
 
 
-def _read_sealed(path: Path) -> dict[str, object] | None:
-    """Read a record, or None where it is missing, torn or altered."""
+def _sealed_lines(path: Path) -> list[bytes] | None:
+    """Read such lines without their checksum; None where the file is missing, torn or altered."""
     try:
-        line, digest, end = path.read_bytes().split(b"\n")
-    except (FileNotFoundError, ValueError):
+        content = path.read_bytes()
+    except FileNotFoundError:
         return None
-    if end or Seal.of(line).digest.encode() != digest:
-        return None
-    record: dict[str, object] = json.loads(line)
-    return record
+    body = content[: -len(_checksum_line(b""))]
+    return body.splitlines() if content == body + _checksum_line(body) else None
 
 
-def _seals(record: object) -> dict[str, Seal]:
-    assert isinstance(record, dict)
-    return {name: Seal(**seal) for name, seal in record.items()}
+def _checksum_line(body: bytes) -> bytes:
+    return Seal.of(body).digest.encode() + b"\n"
 
 
 class Ledger:
@@ -92,7 +89,7 @@ class Ledger:
     def found(self, charter: Charter) -> None:
         """Begin a ledger in a store that is being made."""
         self._receipts.mkdir(parents=True)
-        write_durably(self.folder / "charter.json", _sealed_lines(charter))
+        write_durably(self.folder / "charter.json", _seal_lines(asdict(charter)))
 
     def charter(self) -> Charter:
         """Read what the store was made for.
@@ -104,33 +101,38 @@ class Ledger:
         """
         if not self.store.exists():
             raise StoreError(f"{self.store}: there is no such store; `scanner sweep STUDY --store PATH` makes one")
-        record = _read_sealed(self.folder / "charter.json")
-        if record is None:
+        lines = _sealed_lines(self.folder / "charter.json")
+        if lines is None:
             raise StoreError(f"{self.store}: not a store of this tool, or its charter is damaged; give another path")
+        record = json.loads(lines[0])
         if record["layout"] != LAYOUT:
             raise StoreError(
                 f"{self.store}: written in layout {record['layout']}, this version reads layout {LAYOUT}; "
                 "use the version named in its attributes"
             )
-        return Charter(**{**record, "template": _seals(record["template"])})  # type: ignore[arg-type]
+        return Charter(**{**record, "template": _seals(record["template"])})
 
     def receipt_path(self, task: int) -> Path:
         """Where the receipt of a task is or will be."""
         return self._receipts / f"{task:06d}.json"
 
-    def write(self, receipt: Receipt) -> None:
-        """Put a receipt on the disk; the files it names must be there already."""
-        write_durably(self.receipt_path(receipt.task), _sealed_lines(receipt))
+    def write(self, receipt: Receipt, seals: Mapping[str, Seal]) -> None:
+        """Put a receipt on the disk; the files it seals, by their names in the store, must be there already."""
+        write_durably(self.receipt_path(receipt.task), _seal_lines(asdict(receipt), seals))
 
     def read(self, task: int) -> Receipt | None:
         """Read the receipt of a task, or None where there is no sound one."""
-        record = _read_sealed(self.receipt_path(task))
-        if record is None:
+        lines = _sealed_lines(self.receipt_path(task))
+        if lines is None:
             return None
-        listed = record.pop("failures")
-        assert isinstance(listed, list)
-        failures = tuple((tuple(index), reason) for index, reason in listed)
-        return Receipt(**{**record, "failures": failures, "chunks": _seals(record["chunks"])})  # type: ignore[arg-type]
+        record = json.loads(lines[0])
+        failures = tuple((tuple(index), reason) for index, reason in record["failures"])
+        return Receipt(**{**record, "failures": failures})
+
+    def seals(self, task: int) -> dict[str, Seal] | None:
+        """Read what a task wrote: seals by the names of files; None where there is no sound receipt."""
+        lines = _sealed_lines(self.receipt_path(task))
+        return None if lines is None else _seals(json.loads(lines[1]))
 
     def listed(self) -> list[int]:
         """Tasks that have a receipt, sound or not, in order."""
@@ -142,3 +144,7 @@ class Ledger:
             receipt = self.read(task)
             if receipt is not None:
                 yield receipt
+
+
+def _seals(record: dict[str, list[int | str]]) -> dict[str, Seal]:
+    return {name: Seal(*seal) for name, seal in record.items()}  # type: ignore[arg-type]

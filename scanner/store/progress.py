@@ -23,8 +23,8 @@ class SweepProgress:
         Tables in all; with a status; and by status.
     orbits, orbits_settled
         Orbits in all, and those that are computed or found to be of no use.
-    tasks, tasks_finished
-        Tasks in all, and those with a receipt.
+    tasks, finished
+        Number of tasks in all, and those with a receipt.
     bounces_per_second, seconds_left
         Over the last ten minutes of work; None where it cannot be told.
     hosts
@@ -43,12 +43,17 @@ class SweepProgress:
     orbits: int
     orbits_settled: int
     tasks: int
-    tasks_finished: int
+    finished: frozenset[int]
     bounces_per_second: float | None
     seconds_left: float | None
     hosts: dict[str, float]
     failures: dict[tuple[int, ...], str]
     running: bool
+
+    @property
+    def tasks_finished(self) -> int:
+        """Number of tasks with a receipt."""
+        return len(self.finished)
 
     @property
     def complete(self) -> bool:
@@ -81,7 +86,7 @@ def sweep_progress(path: str | Path) -> SweepProgress:
         orbits=orbits,
         orbits_settled=settled,
         tasks=charter.tasks,
-        tasks_finished=len(receipts),
+        finished=frozenset(receipt.task for receipt in receipts),
         bounces_per_second=bounce_rate,
         seconds_left=(orbits - settled) / orbit_rate if orbit_rate else None,
         hosts=_shares(receipts),

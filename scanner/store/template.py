@@ -39,7 +39,7 @@ def prepare_store(path: Path, plan: Plan) -> None:
     StoreError
         The path holds something else, or cannot be written; nothing is changed then.
     """
-    if not path.exists() or (path.is_dir() and not any(path.iterdir())):
+    if is_vacant(path):
         try:
             with _template(path, plan) as template:
                 template.rename(path)
@@ -50,6 +50,11 @@ def prepare_store(path: Path, plan: Plan) -> None:
                 raise StoreError(f"{path}: cannot be made ({error}); give a place that can be written") from None
     check_fingerprint(path, plan)
     _restore_template(path, plan)
+
+
+def is_vacant(path: Path) -> bool:
+    """Whether nothing is at a path, or an empty folder."""
+    return not path.exists() or (path.is_dir() and not any(path.iterdir()))
 
 
 def check_fingerprint(path: Path, plan: Plan) -> None:

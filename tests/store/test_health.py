@@ -51,8 +51,7 @@ def test_each_kind_of_damage_is_named_with_its_task(store, kind):
     HARMS[kind](store / VICTIM)
     (damage,) = verify(store)
     assert damage == Damage(VICTIM, damage.task, kind)
-    chunks = Ledger(store).read(damage.task).chunks
-    assert VICTIM in chunks
+    assert VICTIM in Ledger(store).seals(damage.task)
     assert verify(store) == [damage]
 
 
@@ -74,7 +73,7 @@ def test_repair_then_the_damaged_blocks_alone_are_computed_again(store, sound):
         run_task(order_for(store, study), task)
     assert results(store) == results(sound)
     healthy = {str(Ledger(store).receipt_path(task).relative_to(store)) for task in left}
-    healthy |= {name for task in left for name in Ledger(store).read(task).chunks}
+    healthy |= {name for task in left for name in Ledger(store).seals(task)}
     after = everything(store)
     assert {name: after[name] for name in healthy} == {name: before[name] for name in healthy}
 

@@ -17,8 +17,8 @@ RECEIPT = Receipt(
     not_convex=0,
     failed=1,
     failures=(((0, 3), "no such curve"),),
-    chunks={"area/c.0": Seal.of(b"abc")},
 )
+SEALS = {"area/c.0": Seal.of(b"abc")}
 CHARTER = Charter("ab" * 32, "[study]", 20, 4, 64, 128, {"area/zarr.json": Seal.of(b"{}")})
 
 
@@ -30,8 +30,9 @@ def ledger(tmp_path):
 
 
 def test_records_come_back_as_they_were_written(ledger):
-    ledger.write(RECEIPT)
+    ledger.write(RECEIPT, SEALS)
     assert ledger.read(12) == RECEIPT
+    assert ledger.seals(12) == SEALS
     assert ledger.charter() == CHARTER
     assert ledger.read(13) is None
     assert ledger.listed() == [12]
@@ -39,7 +40,7 @@ def test_records_come_back_as_they_were_written(ledger):
 
 def test_receipts_come_in_the_order_of_their_tasks(ledger):
     for task in (100, 3, 20):
-        ledger.write(replace(RECEIPT, task=task))
+        ledger.write(replace(RECEIPT, task=task), {})
     assert [receipt.task for receipt in ledger.receipts()] == [3, 20, 100]
 
 
@@ -48,16 +49,17 @@ def test_receipts_come_in_the_order_of_their_tasks(ledger):
     [lambda text: b"", lambda text: text[:40], lambda text: text.replace(b"survey", b"Survey"), lambda text: text[:-1]],
 )
 def test_a_torn_or_altered_receipt_does_not_count(ledger, harm):
-    ledger.write(RECEIPT)
+    ledger.write(RECEIPT, SEALS)
     path = ledger.receipt_path(12)
     path.write_bytes(harm(path.read_bytes()))
     assert ledger.read(12) is None
+    assert ledger.seals(12) is None
     assert list(ledger.receipts()) == []
     assert ledger.listed() == [12]
 
 
 def test_no_half_written_file_is_left(ledger):
-    ledger.write(RECEIPT)
+    ledger.write(RECEIPT, SEALS)
     assert {file.name for file in ledger.folder.rglob("*")} == {"charter.json", "receipts", "000012.json"}
 
 

@@ -17,7 +17,6 @@ RECEIPT = Receipt(
     not_convex=1,
     failed=0,
     failures=(),
-    chunks={},
 )
 
 
@@ -37,10 +36,10 @@ def test_before_the_first_receipt(ledger):
 
 
 def test_counts_rate_and_time_left(ledger):
-    ledger.write(RECEIPT)
-    ledger.write(replace(RECEIPT, task=1, host="b", finished=1010.0, seconds=20.0))
+    ledger.write(RECEIPT, {})
+    ledger.write(replace(RECEIPT, task=1, host="b", finished=1010.0, seconds=20.0), {})
     failed = replace(RECEIPT, task=4, host="b", finished=1010.0, done=0, failed=1, failures=(((4,), "why"),))
-    ledger.write(failed)
+    ledger.write(failed, {})
     state = sweep_progress(ledger.store)
     assert (state.settled, state.done, state.not_convex, state.failed) == (6, 2, 3, 1)
     # From 990 to 1010: three tasks of 5000 bounces and 100 orbits; 200 orbits of 500 are left.
@@ -52,8 +51,8 @@ def test_counts_rate_and_time_left(ledger):
 
 
 def test_work_of_long_ago_does_not_count_for_the_rate(ledger):
-    ledger.write(RECEIPT)
-    ledger.write(replace(RECEIPT, task=1, finished=90000.0, seconds=10.0))
+    ledger.write(RECEIPT, {})
+    ledger.write(replace(RECEIPT, task=1, finished=90000.0, seconds=10.0), {})
     assert sweep_progress(ledger.store).bounces_per_second == pytest.approx(500, rel=1e-12)
 
 
