@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 import logging
-import os
 from collections.abc import Callable, Iterator
 from contextlib import ExitStack, contextmanager
 from pathlib import Path
 
 import dask
+from dask.system import CPU_COUNT
 from distributed import Client, LocalCluster
 
 from scanner.engine import interrupts
@@ -65,7 +65,7 @@ def hire(
             stack.enter_context(dask.config.set(PATIENCE))
             yield stack.enter_context(Client(stack.enter_context(batch_cluster(resources, workers, store))))
         else:
-            yield _local_client(stack, workers or resources.workers or len(os.sched_getaffinity(0)), say)
+            yield _local_client(stack, workers or resources.workers or CPU_COUNT, say)
 
 
 def _local_client(stack: ExitStack, workers: int, say: Callable[[str], None]) -> Client:

@@ -18,7 +18,7 @@ from scanner.engine.interrupts import Interrupts
 from scanner.engine.journal import log_beside
 from scanner.engine.tally import Tally, clock
 from scanner.engine.work import Order, Outcome
-from scanner.errors import EngineError
+from scanner.errors import EngineError, StoreError
 from scanner.store import (
     Ledger,
     StoreLock,
@@ -34,6 +34,7 @@ from scanner.study.limits import check_limits
 
 RECEIPT_SECONDS = 60.0
 """How long a shared disk may take to show this host what another one wrote."""
+BESIDE = (".log", ".jobs")
 CARRY_ON = "run the same study on the same store again to carry on"
 
 log = logging.getLogger(__name__)
@@ -54,7 +55,7 @@ class SweepReport:
     interrupted
         Whether Ctrl-C ended the run before everything was finished.
     seconds, bounces
-        Duration of this run and what it computed.
+        Duration of this run, from when there were workers, and what it computed.
     """
 
     store: Path
@@ -130,6 +131,10 @@ def run_study(
         study = load_study(study, allow_code)
     plan = make_plan(study)
     path = Path(store).absolute()
+    if path.suffix in BESIDE:
+        raise StoreError(
+            f"{path}: the suffix {path.suffix} is that of a file beside the store; give another, like .zarr"
+        )
     if is_vacant(path):
         check_limits(plan, path)
     prepare_store(path, plan)
@@ -160,7 +165,6 @@ class _Run:
         self._reported: set[int] = set()
         self._abandoned: dict[int, str] = {}
         self.before = sweep_progress(path)
-        self._tally = Tally(self.before)
         log.info(
             "%s",
             f"{plan.study.title!r} ({plan.study.fingerprint[:12]}): {self.before.tasks_finished} of "
@@ -170,6 +174,8 @@ class _Run:
     def work(self, client: Client) -> None:
         """Have all that is not finished computed, until done or interrupted."""
         note_finish(self._path, finished=False)
+        self._started = time.monotonic()
+        self._tally = Tally(self.before)
         agenda = Agenda(self._plan, self.before.finished)
         dispatcher = Dispatcher(client, self._order(), agenda, self._land, self._say)
         self._abandoned = dispatcher.abandoned

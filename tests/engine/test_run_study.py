@@ -83,6 +83,12 @@ def test_a_study_too_large_is_refused_before_anything_is_written(client, tmp_pat
     assert list(tmp_path.iterdir()) == []
 
 
+def test_a_store_named_like_its_log_is_refused(client, tmp_path):
+    with pytest.raises(StoreError, match=r"give another, like \.zarr"):
+        scanner.run_study(grid(), tmp_path / "grid.log", client=client)
+    assert list(tmp_path.iterdir()) == []
+
+
 def test_a_store_in_use_is_refused(client, tmp_path):
     fill(tmp_path / "grid.zarr", grid(), tasks=[])
     with StoreLock(tmp_path / "grid.zarr"), pytest.raises(StoreError, match="in use"):

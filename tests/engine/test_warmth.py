@@ -1,0 +1,48 @@
+import subprocess
+import sys
+
+import pytest
+
+from scanner.compiled import cache_folder
+from scanner.engine import warmth
+from scanner.engine.warmth import COMPILE, kernels_are_warm, warm_kernels
+
+
+@pytest.fixture
+def calls(tmp_path, monkeypatch):
+    """Commands that would have been run, with a cache folder of their own; the first one fails."""
+    made = []
+
+    def run(command, **_):
+        made.append(command)
+        return subprocess.CompletedProcess(command, returncode=1 if len(made) == 1 else 0)
+
+    monkeypatch.setattr(warmth, "cache_folder", lambda: tmp_path / "kernels")
+    monkeypatch.setattr(subprocess, "run", run)
+    return made
+
+
+def test_kernels_are_compiled_once_by_a_process_of_its_own(calls):
+    warm_kernels()
+    assert not kernels_are_warm()  # It failed, so the next one tries again.
+    warm_kernels()
+    warm_kernels()
+    assert kernels_are_warm()
+    assert calls == [[sys.executable, "-c", COMPILE]] * 2
+
+
+def test_what_is_compiled_is_all_that_a_survey_needs():
+    def compiled():
+        return {file: file.stat().st_mtime_ns for file in cache_folder().rglob("*.nbc")}
+
+    warm_kernels()
+    before = compiled()
+    script = (
+        "import scanner\n"
+        "table = scanner.build_table('radial_harmonic', amplitude=0.1, harmonic=2)\n"
+        "survey = scanner.survey_table(table, orbits=128, bounces=1024, replicates=2)\n"
+        "assert survey['librational_area_fraction'] > 0, 'the kernels of islands have not been used'"
+    )
+    subprocess.run([sys.executable, "-c", script], check=True)
+    assert compiled() == before
+    assert before
