@@ -116,7 +116,9 @@ def extrapolate_fraction(
     if not np.isfinite(table).all():
         return _undecided(confidence, last, last_stderr, math.nan, "a fraction is missing")
     if fall <= CLEAR_FALL * fall_stderr:
-        return _undecided(confidence, last, last_stderr, math.nan, "no clear fall with the horizon")
+        return _undecided(
+            confidence, last, last_stderr, math.nan, "no clear fall with the horizon, the last value stands"
+        )
 
     # Shape (GRID, H - 1): share of the whole fall that each step should have.
     powers = bounces ** -(grid[:, None] - 1.0)
@@ -127,7 +129,7 @@ def extrapolate_fraction(
     squares = ((falls.mean(axis=0) - fall * shares) ** 2 / (variance * shares)).sum(axis=1)
     misfit = float(chi2.sf(squares.min(), falls.shape[1] - 1))
     if misfit < MISFIT:
-        return _undecided(confidence, last, last_stderr, misfit, "it does not fall like such a power")
+        return _undecided(confidence, last, last_stderr, misfit, "does not fall like such a power")
 
     weights = np.exp(-0.5 * (squares - squares.min()))
     weights /= weights.sum()
@@ -136,7 +138,7 @@ def extrapolate_fraction(
     value = float(weights @ centres)
     stderr = math.sqrt(float(weights @ (widths**2 + (centres - value) ** 2)))
     if value < -CLEAR_FALL * stderr:
-        return _undecided(confidence, last, last_stderr, misfit, "the extrapolated fraction is negative")
+        return _undecided(confidence, last, last_stderr, misfit, "the extrapolated fraction is clearly negative")
     low, high = _interval(centres, widths, weights, replicates - 1, confidence)
     exponent = float(weights @ grid)
     return Extrapolation(
