@@ -176,4 +176,5 @@ def _resample(
 def _interpolation_error(places: Floats, heights: Floats, value: float) -> float:
     """Distance to the crossing of a shape-preserving cubic, which crosses in the same cell."""
     found = PchipInterpolator(places, heights, extrapolate=False).roots(discontinuity=False)
+    found = found[np.isfinite(found)]  # a stretch that lies on the level is marked by a NaN
     return float(np.abs(found - value).min()) if found.size else 0.0
