@@ -12,10 +12,11 @@ from dataclasses import dataclass, field
 import numpy as np
 import numpy.typing as npt
 
+from scanner.bounce.resonances import resonance_numbers
 from scanner.errors import ScannerError
 from scanner.indicators import orbit_numbers
 from scanner.measure import section_points, table_numbers
-from scanner.quantities import DONE, FAILED, NOT_CONVEX, ORBITS, ROOT, in_group
+from scanner.quantities import DONE, FAILED, NOT_CONVEX, ORBITS, RESONANCES, ROOT, in_group
 from scanner.study import Plan, Task
 from scanner.tables import Table, build_table
 
@@ -112,6 +113,8 @@ def _settle_tables(
             table = build_table(plan.study.family, allow_code=plan.study.allow_code, **parameters)
             if table.is_convex:
                 settle(result, place, table)
+                if RESONANCES in result.groups:
+                    result.fill(RESONANCES, place, resonance_numbers(table, plan.rotations))
             result.set_status(place, DONE if table.is_convex else NOT_CONVEX)
     return result
 

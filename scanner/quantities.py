@@ -6,6 +6,7 @@ read this list and nothing else.  Dimensions named here come after those of the 
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 TABLE_STATUS = ("pending", "done", "not_convex", "failed")
@@ -18,6 +19,15 @@ PERIODS = tuple(range(2, 65))
 
 ROOT = "root"
 ORBITS = "orbits"
+RESONANCES = "resonances"
+
+
+def rotations_up_to(period_max: int) -> list[tuple[int, int]]:
+    """All rotations p/q in lowest terms, 0 < p/q <= 1/2 and q up to ``period_max``, as pairs (p, q) by q, then p.
+
+    Those above 1/2 are the same orbits run backwards.
+    """
+    return [(p, q) for q in range(2, period_max + 1) for p in range(1, q // 2 + 1) if math.gcd(p, q) == 1]
 
 
 @dataclass(frozen=True)
@@ -61,10 +71,17 @@ def _orbit(name: str, long_name: str, *dims: str, units: str = "1", reference: s
     return Quantity(name, ORBITS, ("orbit", *dims), "float64", units, long_name, reference)
 
 
+def _resonance(name: str, long_name: str, units: str = "1", reference: str = "") -> Quantity:
+    return Quantity(name, RESONANCES, ("resonance",), "float64", units, long_name, reference)
+
+
 _SANTALO = "Santalo, Integral Geometry and Geometric Probability, 1976; Chernov, J. Stat. Phys. 88:1, 1997"
 _WEIGHTED = "Das, Saiki, Sander and Yorke, Nonlinearity 30:4111, 2017"
 _LASKAR = "Laskar, Icarus 88:266, 1990"
 _BERRY_ROBNIK = "Berry and Robnik, J. Phys. A 17:2413, 1984"
+
+_BIRKHOFF = "Birkhoff, Acta Math. 50:359, 1927"
+_GREENE = "Greene, J. Math. Phys. 20:1183, 1979"
 
 _QUANTITIES = (
     Quantity("table_status", ROOT, (), "int8", "1", "state of the table", flags=TABLE_STATUS),
@@ -147,6 +164,18 @@ _QUANTITIES = (
     ),
     _orbit("island_centre_s", "arc length of the island's centre, in its part where the orbit starts"),
     _orbit("island_centre_p", "p of the island's centre, in its part where the orbit starts"),
+    _resonance("length_maximal", "length of the longest polygon with q vertices and p rounds", "length", _BIRKHOFF),
+    _resonance("length_minimax", "length of the minimax polygon with q vertices and p rounds", "length", _BIRKHOFF),
+    _resonance("length_gap", "length of the longest polygon less that of the minimax one", "length"),
+    _resonance("length_gap_floor", "what the gap may be wrong by, from rounding and the stored boundary", "length"),
+    _resonance("trace_maximal", "trace of the q-fold tangent map on the longest polygon"),
+    _resonance("trace_minimax", "trace of the q-fold tangent map on the minimax polygon"),
+    _resonance("residue_maximal", "residue (2 - trace) / 4 of the longest polygon", reference=_GREENE),
+    _resonance("residue_minimax", "residue (2 - trace) / 4 of the minimax polygon", reference=_GREENE),
+    _resonance("s_first", "arc length of the first vertex of the longest polygon as a fraction of the perimeter"),
+    _resonance("p_first", "p at the first vertex of the longest polygon"),
+    _resonance("s_first_minimax", "arc length of the first vertex of the minimax polygon as such a fraction"),
+    _resonance("p_first_minimax", "p at the first vertex of the minimax polygon"),
 )
 
 REGISTER: dict[tuple[str, str], Quantity] = {(entry.group, entry.name): entry for entry in _QUANTITIES}

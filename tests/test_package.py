@@ -6,7 +6,7 @@ import sys
 import pytest
 
 import scanner
-from scanner.quantities import ORBITS, REGISTER, ROOT
+from scanner.quantities import ORBITS, REGISTER, RESONANCES, ROOT
 
 HEAVY = ("numpy", "numba", "scipy", "xarray", "pandas", "dask", "distributed", "zarr", "pydantic", "matplotlib")
 # What both zarr 3 and netCDF-4 hold without a warning.
@@ -39,8 +39,9 @@ def test_every_stored_quantity_is_labelled(quantity):
     assert attributes["long_name"]
     assert attributes["units"]
     assert quantity.dtype in DTYPES
-    assert quantity.group in (ROOT, ORBITS)
+    assert quantity.group in (ROOT, ORBITS, RESONANCES)
     assert ("orbit" in quantity.dims) == (quantity.group == ORBITS)
+    assert ("resonance" in quantity.dims) == (quantity.group == RESONANCES)
     if quantity.flags:
         assert quantity.dtype == "int8"
         assert quantity.flags[0] == "pending"

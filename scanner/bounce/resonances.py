@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-import math
+from collections.abc import Sequence
 
 import numpy as np
 import numpy.typing as npt
@@ -17,15 +17,7 @@ LENGTH_ROUNDING = 2.0 * float(np.finfo(np.float64).eps)
 """Error of the length of a given polygon, relative to it."""
 
 
-def rotations_up_to(period_max: int) -> list[tuple[int, int]]:
-    """All rotations p/q in lowest terms, 0 < p/q <= 1/2 and q up to ``period_max``, as pairs (p, q) by q, then p.
-
-    Those above 1/2 are the same orbits run backwards.
-    """
-    return [(p, q) for q in range(2, period_max + 1) for p in range(1, q // 2 + 1) if math.gcd(p, q) == 1]
-
-
-def resonance_numbers(table: Table, rotations: list[tuple[int, int]]) -> dict[str, Floats]:
+def resonance_numbers(table: Table, rotations: Sequence[tuple[int, int]]) -> dict[str, Floats]:
     """Both Birkhoff orbits of given rotations: the longest polygon with q vertices and p rounds, and the minimax one.
 
     Parameters
@@ -64,6 +56,7 @@ def resonance_numbers(table: Table, rotations: list[tuple[int, int]]) -> dict[st
         numbers[f"length_{name}"] = found[:, row, LENGTH]
         numbers[f"trace_{name}"] = found[:, row, TRACE]
         numbers[f"residue_{name}"] = 0.25 * (2.0 - found[:, row, TRACE])
-        numbers[f"s_first_{name}"] = table.arc_from_turns(found[:, row, FIRST_TURNS])
-        numbers[f"p_first_{name}"] = found[:, row, FIRST_P]
+        suffix = "" if name == "maximal" else "_minimax"
+        numbers[f"s_first{suffix}"] = table.arc_from_turns(found[:, row, FIRST_TURNS])
+        numbers[f"p_first{suffix}"] = found[:, row, FIRST_P]
     return numbers

@@ -32,6 +32,8 @@ class Regions:
         root = zarr.open_group(store, mode="r+", use_consolidated=False)
         self._arrays: dict[tuple[str, str], zarr.Array[Any]] = {}
         for group, name in REGISTER:
+            if group != ROOT and group not in root:
+                continue
             array = root[name if group == ROOT else f"{group}/{name}"]
             assert isinstance(array, zarr.Array)
             # Chunks full of fill value are written too: each finished block then has all its files.

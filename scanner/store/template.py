@@ -13,7 +13,7 @@ from contextlib import contextmanager
 from datetime import UTC, datetime
 from importlib.metadata import version
 from pathlib import Path
-from typing import Any
+from typing import Any, NamedTuple
 from uuid import uuid4
 
 import numpy as np
@@ -21,7 +21,7 @@ import zarr
 from zarr.codecs import ZstdCodec
 
 from scanner.errors import StoreError
-from scanner.quantities import ORBITS, P_BINS, PERIODS, REGISTER, ROOT
+from scanner.quantities import ORBITS, P_BINS, PERIODS, RESONANCES, ROOT
 from scanner.store.durable import Seal, settle
 from scanner.store.ledger import Charter, Ledger
 from scanner.study import Plan
@@ -128,7 +128,11 @@ def _template(path: Path, plan: Plan) -> Iterator[Path]:
 def _write_arrays(folder: Path, plan: Plan) -> None:
     root = zarr.create_group(folder, zarr_format=3, attributes=_root_attributes(plan))
     groups = {ROOT: root, ORBITS: root.create_group(ORBITS)}
-    for quantity in REGISTER.values():
+    if plan.rotations:
+        # Without this attribute readers take what has not the name of a dimension for a variable.
+        names = " ".join(coordinate.name for coordinate in _coordinates(plan) if coordinate.group == RESONANCES)
+        groups[RESONANCES] = root.create_group(RESONANCES, attributes={"coordinates": names})
+    for quantity in plan.quantities:
         _create_array(
             groups[quantity.group],
             quantity.name,
@@ -139,11 +143,11 @@ def _write_arrays(folder: Path, plan: Plan) -> None:
             quantity.fill_value,
             quantity.attributes(),
         )
-    for dim, values, meaning in _coordinates(plan):
-        group = groups[ORBITS if dim == "orbit" else ROOT]
+    for group, dim, name, values, meaning in _coordinates(plan):
         attributes: dict[str, Any] = {"long_name": meaning, "units": "1"}
         fill = 0 if values.dtype.kind == "i" else np.nan
-        array = _create_array(group, dim, (dim,), values.shape, values.shape, values.dtype, fill, attributes)
+        shape = values.shape
+        array = _create_array(groups[group], name, (dim,), shape, shape, values.dtype, fill, attributes)
         array[:] = values
     with warnings.catch_warnings():
         # Not yet in the specification, as zarr warns; without it plain xarray warns at every opening instead.
@@ -176,18 +180,37 @@ def _create_array(
     )
 
 
-def _coordinates(plan: Plan) -> Iterable[tuple[str, np.ndarray[tuple[int], np.dtype[np.generic]], str]]:
-    """Dimension, values and meaning of every coordinate."""
+class Coordinate(NamedTuple):
+    """One coordinate: the group it is in, its dimension, its name, values and meaning."""
+
+    group: str
+    dim: str
+    name: str
+    values: np.ndarray[tuple[int], np.dtype[np.generic]]
+    meaning: str
+
+
+def _coordinates(plan: Plan) -> Iterable[Coordinate]:
+    """All coordinates."""
     family = FAMILIES.get(plan.study.family)
     meanings = {parameter.name: parameter.meaning for parameter in family.parameters} if family else {}
     for name, values in plan.study.swept.items():
-        yield name, np.array(values), meanings.get(name, name)
+        yield Coordinate(ROOT, name, name, np.array(values), meanings.get(name, name))
     sizes = plan.sizes
-    yield "replicate", np.arange(sizes["replicate"]), "independent scrambling of the initial conditions"
-    yield "horizon", np.array(plan.horizons), "bounces after which the verdict is given"
-    yield "p_bin", (2 * np.arange(P_BINS) + 1) / P_BINS - 1, "centre of the bin of p"
-    yield "period", np.array(PERIODS), "period q of the island"
-    yield "orbit", np.arange(sizes["orbit"]), "number of the orbit, replicate after replicate"
+    for name, numbers, meaning in (
+        ("replicate", np.arange(sizes["replicate"]), "independent scrambling of the initial conditions"),
+        ("horizon", np.array(plan.horizons), "bounces after which the verdict is given"),
+        ("p_bin", (2 * np.arange(P_BINS) + 1) / P_BINS - 1, "centre of the bin of p"),
+        ("period", np.array(PERIODS), "period q of the island"),
+    ):
+        yield Coordinate(ROOT, name, name, numbers, meaning)
+    number = np.arange(sizes["orbit"])
+    yield Coordinate(ORBITS, "orbit", "orbit", number, "number of the orbit, replicate after replicate")
+    if plan.rotations:
+        # Not "period", as that is a dimension of the root: a group may not have another coordinate of the name.
+        p, q = np.array(plan.rotations).T
+        yield Coordinate(RESONANCES, "resonance", "rotation", p, "rounds p of the orbits with rotation p/q")
+        yield Coordinate(RESONANCES, "resonance", "resonance_period", q, "bounces q of the orbits with rotation p/q")
 
 
 def _root_attributes(plan: Plan) -> dict[str, str]:

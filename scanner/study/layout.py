@@ -15,6 +15,8 @@ NOMINAL_BOUNCE = 80
 """Nanoseconds."""
 NOMINAL_TABLE = 20_000_000
 """Nanoseconds to build a table and to sum up its orbits."""
+NOMINAL_RESONANCE = 3_000_000
+"""Nanoseconds to find both orbits of one rotation."""
 LONGEST_TASK = 20_000_000_000
 """Nanoseconds, while that makes no more than MOST_TASKS."""
 SHORTEST_TASK = 500_000_000
@@ -46,7 +48,7 @@ class Layout:
     orbit_chunk: int
 
 
-def lay_out(shape: tuple[int, ...], per_table: int, bounces: int) -> Layout:
+def lay_out(shape: tuple[int, ...], per_table: int, bounces: int, resonances: int = 0) -> Layout:
     """Choose the size of the tasks of a grid of tables.
 
     Parameters
@@ -55,9 +57,11 @@ def lay_out(shape: tuple[int, ...], per_table: int, bounces: int) -> Layout:
         Tables along each swept dimension.
     per_table, bounces
         Orbits of a table and bounces of an orbit.
+    resonances
+        Rotations of a table whose periodic orbits are wanted.
     """
     orbits_cost = per_table * bounces * NOMINAL_BOUNCE
-    table_cost = orbits_cost + NOMINAL_TABLE
+    table_cost = orbits_cost + NOMINAL_TABLE + resonances * NOMINAL_RESONANCE
     target = _choose_target(prod(shape) * table_cost)
     parts = max((2 * orbits_cost + target) // (2 * target), ceil_divide(per_table, ORBITS_AT_ONCE))
     chunk = LANES * ceil_divide(ceil_divide(per_table, parts), LANES) if parts > 1 else per_table

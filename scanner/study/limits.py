@@ -9,7 +9,7 @@ from pathlib import Path
 import numpy as np
 
 from scanner.errors import StudyError
-from scanner.quantities import ORBITS, REGISTER, Quantity, in_group
+from scanner.quantities import ORBITS, Quantity, in_group
 from scanner.study.layout import ceil_divide
 from scanner.study.plan import Plan
 
@@ -29,13 +29,13 @@ RECEIPT_BYTES = 8192
 def task_bytes(plan: Plan) -> int:
     """Size of the arrays that the largest task holds: whole tables, as even split orbits are summed up together."""
     tables, sizes = prod(plan.box), plan.sizes
-    return tables * sum(_item_bytes(entry) * prod(sizes[dim] for dim in entry.dims) for entry in REGISTER.values())
+    return tables * sum(_item_bytes(entry) * prod(sizes[dim] for dim in entry.dims) for entry in plan.quantities)
 
 
 def store_bytes(plan: Plan) -> int:
     """Size of the store on disk: chunks in whole blocks, as if compression gained nothing, and the receipts."""
     blocks = 0
-    for entry in REGISTER.values():
+    for entry in plan.quantities:
         chunk = plan.chunk_shape(entry)
         chunks = prod(map(ceil_divide, plan.array_shape(entry), chunk))
         blocks += chunks * ceil_divide(prod(chunk) * _item_bytes(entry), DISK_BLOCK)

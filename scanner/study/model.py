@@ -12,12 +12,14 @@ from typing import Annotated, Literal
 from pydantic import Field, field_validator, model_validator
 
 from scanner.indicators.schedule import MINIMUM_BOUNCES
+from scanner.quantities import rotations_up_to
 from scanner.study.messages import Section, shown
 
 LARGEST_SEED = 2**63 - 1
 MOST_ORBITS = 2**30
 MOST_BOUNCES = 10_000_000
 MOST_REPLICATES = 1024
+LARGEST_PERIOD = 32
 MOST_WORKERS = 100_000
 SMALLEST_MEMORY = 500_000_000
 """Bytes a worker may need; see the limits in ``scanner.study.limits``."""
@@ -74,6 +76,14 @@ class Orbits(Section):
                 f"write per_table = {' or '.join(map(str, fitting))}"
             )
         return self
+
+
+class Resonances(Section):
+    """Table [resonances] of the study file: which periodic orbits are sought on every table; none without it."""
+
+    period_max: int = Field(
+        ge=2, le=LARGEST_PERIOD, description=f"a whole number from 2 to {LARGEST_PERIOD}", examples=[8]
+    )
 
 
 class Resources(Section):
@@ -194,6 +204,8 @@ class Study:
         Absolute path of the folder where relative paths in the text start, to read it again elsewhere.
     allow_code
         Whether a ``module:function`` family may run.
+    resonances
+        ``period_max``, or None where no periodic orbits are wanted.
     sources
         SHA-256 of the contents of the file outside the study that decides a result, if there is one: of an outline
         under ``file``, of the module of a function of the user's own under ``family``.
@@ -210,6 +222,12 @@ class Study:
     folder: str
     allow_code: bool
     sources: Mapping[str, str]
+    resonances: Resonances | None = None
+
+    @property
+    def rotations(self) -> list[tuple[int, int]]:
+        """Rotations (p, q) whose periodic orbits are wanted."""
+        return rotations_up_to(self.resonances.period_max) if self.resonances else []
 
     @cached_property
     def fingerprint(self) -> str:
@@ -223,5 +241,6 @@ class Study:
             "fixed": {**self.fixed, **self.sources},
             "swept": [[name, list(values)] for name, values in self.swept.items()],
             "orbits": self.orbits.model_dump(),
+            **({"resonances": self.resonances.model_dump()} if self.resonances else {}),
         }
         return hashlib.sha256(json.dumps(deciding, sort_keys=True, allow_nan=False).encode()).hexdigest()

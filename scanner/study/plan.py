@@ -10,7 +10,7 @@ from math import prod
 from typing import Literal, overload
 
 from scanner.indicators.schedule import horizons
-from scanner.quantities import ORBITS, P_BINS, PERIODS, ROOT, Quantity
+from scanner.quantities import ORBITS, P_BINS, PERIODS, REGISTER, RESONANCES, ROOT, Quantity
 from scanner.study.layout import ceil_divide, lay_out
 from scanner.study.model import Study, Value
 
@@ -39,6 +39,8 @@ class Task:
         orbits of one table back and computes its root values.
     needs
         Numbers of the tasks that must be finished before this one; empty but for "reduce".
+    resonances
+        Whether the study asks for resonances.
     """
 
     number: int
@@ -46,11 +48,12 @@ class Task:
     orbits: slice
     kind: Kind
     needs: range = range(0)
+    resonances: bool = False
 
     @property
     def groups(self) -> tuple[str, ...]:
         """Groups of the store that it writes."""
-        return GROUPS[self.kind]
+        return (*GROUPS[self.kind], RESONANCES) if self.resonances and self.kind != "orbits" else GROUPS[self.kind]
 
     @property
     def tables(self) -> int:
@@ -66,11 +69,14 @@ class Task:
 class TaskList(Sequence[Task]):
     """All tasks of a plan, each made when it is asked for."""
 
-    def __init__(self, shape: tuple[int, ...], box: tuple[int, ...], per_table: int, orbit_chunk: int) -> None:
+    def __init__(
+        self, shape: tuple[int, ...], box: tuple[int, ...], per_table: int, orbit_chunk: int, resonances: bool
+    ) -> None:
         self._shape = shape
         self._box = box
         self._per_table = per_table
         self._orbit_chunk = orbit_chunk
+        self._resonances = resonances
         self._boxes = tuple(map(ceil_divide, shape, box))
         self._chunks = ceil_divide(per_table, orbit_chunk)
         self._tasks_per_box = 1 if self._chunks == 1 else self._chunks + 1
@@ -95,11 +101,12 @@ class TaskList(Sequence[Task]):
         place, part = divmod(number, self._tasks_per_box)
         box = self._box_at(place)
         if self._chunks == 1:
-            return Task(number, box, slice(0, self._per_table), "survey")
+            return Task(number, box, slice(0, self._per_table), "survey", resonances=self._resonances)
         if part < self._chunks:
             start = part * self._orbit_chunk
             return Task(number, box, slice(start, min(start + self._orbit_chunk, self._per_table)), "orbits")
-        return Task(number, box, slice(0, self._per_table), "reduce", range(number - self._chunks, number))
+        needs = range(number - self._chunks, number)
+        return Task(number, box, slice(0, self._per_table), "reduce", needs, self._resonances)
 
     def _box_at(self, place: int) -> Region:
         """Find the box at a place, the last dimension running fastest."""
@@ -151,6 +158,17 @@ class Plan:
         return horizons(self.study.orbits.bounces)
 
     @property
+    def rotations(self) -> list[tuple[int, int]]:
+        """Rotations (p, q) whose orbits are wanted; none unless the study asks for them."""
+        return self.study.rotations
+
+    @property
+    def quantities(self) -> tuple[Quantity, ...]:
+        """Everything that is stored."""
+        groups = (ROOT, ORBITS, RESONANCES) if self.rotations else (ROOT, ORBITS)
+        return tuple(quantity for quantity in REGISTER.values() if quantity.group in groups)
+
+    @property
     def sizes(self) -> dict[str, int]:
         """Size of every dimension in the store."""
         orbits = self.study.orbits
@@ -160,13 +178,14 @@ class Plan:
             "p_bin": P_BINS,
             "horizon": len(self.horizons),
             "period": len(PERIODS),
+            "resonance": len(self.rotations),
         }
         return {**dict(zip(self.dims, self.shape, strict=True)), **inner}
 
     @cached_property
     def tasks(self) -> Sequence[Task]:
         """All tasks, each made when it is asked for."""
-        return TaskList(self.shape, self.box, self.study.orbits.per_table, self.orbit_chunk)
+        return TaskList(self.shape, self.box, self.study.orbits.per_table, self.orbit_chunk, bool(self.rotations))
 
     def array_dims(self, quantity: Quantity) -> tuple[str, ...]:
         """Dimensions of the array of a quantity."""
@@ -196,5 +215,5 @@ class Plan:
 def make_plan(study: Study) -> Plan:
     """Cut a study into tasks."""
     shape = tuple(len(values) for values in study.swept.values())
-    layout = lay_out(shape, study.orbits.per_table, study.orbits.bounces)
+    layout = lay_out(shape, study.orbits.per_table, study.orbits.bounces, len(study.rotations))
     return Plan(study, layout.box, layout.orbit_chunk)

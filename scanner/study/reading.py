@@ -9,7 +9,7 @@ from pathlib import Path
 
 from scanner.errors import StudyError
 from scanner.study.messages import nearest, read_section, shown, written
-from scanner.study.model import Heading, Orbits, Resources, Study
+from scanner.study.model import Heading, Orbits, Resonances, Resources, Study
 from scanner.study.parameters import read_parameters
 from scanner.study.sources import absolute_path, read_sources
 
@@ -17,9 +17,10 @@ SECTIONS = {
     "study": (*Heading.model_fields,),
     "table": ("family",),
     "orbits": (*Orbits.model_fields,),
+    "resonances": (*Resonances.model_fields,),
     "resources": (*Resources.model_fields,),
 }
-OPTIONAL = {"resources"}
+OPTIONAL = {"resonances", "resources"}
 
 
 def load_study(path: str | Path, allow_code: bool = False) -> Study:
@@ -109,6 +110,8 @@ def _build(document: Mapping[str, object], text: str, allow_code: bool, folder: 
     entries = {name: entry for name, entry in table.items() if name != "family"}
     parameters = read_parameters(family, entries, allow_code)
     orbits = read_section(Orbits, document["orbits"], "orbits")
+    asked = document.get("resonances")
+    resonances = None if asked is None else read_section(Resonances, asked, "resonances")
     resources = read_section(Resources, document.get("resources", {}), "resources")
     if resources.scheduler_file:
         resources = resources.model_copy(
@@ -127,6 +130,7 @@ def _build(document: Mapping[str, object], text: str, allow_code: bool, folder: 
         folder=str(folder.resolve()),
         allow_code=allow_code,
         sources=sources,
+        resonances=resonances,
     )
 
 

@@ -3,9 +3,8 @@ from collections import Counter
 import pytest
 from sweeps import grid
 
-from scanner.quantities import REGISTER
 from scanner.store.regions import chunk_name
-from scanner.study import Plan, make_plan
+from scanner.study import Plan, make_plan, parse_study
 
 
 @pytest.mark.parametrize(
@@ -15,10 +14,12 @@ from scanner.study import Plan, make_plan
         Plan(grid(), (1, 1), 64),
         Plan(grid(), (2, 2), 256),
         make_plan(grid(amplitude="0.05", harmonic="2")),
+        Plan(parse_study(grid().text + "\n[resonances]\nperiod_max = 4"), (1, 2), 256),
+        Plan(parse_study(grid().text + "\n[resonances]\nperiod_max = 4"), (1, 1), 64),
     ],
 )
 def test_every_chunk_of_every_array_belongs_to_exactly_one_task(plan):
-    for quantity in REGISTER.values():
+    for quantity in plan.quantities:
         shape, chunks = plan.array_shape(quantity), plan.chunk_shape(quantity)
         owners = Counter(
             chunk_name(task.region(quantity), chunks, shape) for task in plan.tasks if quantity.group in task.groups

@@ -5,7 +5,7 @@ from sweeps import everything, grid
 
 import scanner
 from scanner.errors import StoreError
-from scanner.quantities import REGISTER, TABLE_STATUS
+from scanner.quantities import TABLE_STATUS
 from scanner.store import prepare_store, sweep_progress, verify
 from scanner.study import make_plan
 
@@ -27,8 +27,8 @@ def test_plain_xarray_opens_it_without_a_warning(empty):
 
 def test_every_registered_variable_is_there_with_its_attributes(empty):
     with scanner.open_sweep(empty) as tree:
-        for (group, name), quantity in REGISTER.items():
-            array = tree[name if group == "root" else f"orbits/{name}"]
+        for quantity in make_plan(grid()).quantities:
+            array = tree[quantity.name if quantity.group == "root" else f"{quantity.group}/{quantity.name}"]
             assert array.attrs == quantity.attributes()
             assert array.dtype == quantity.dtype
 

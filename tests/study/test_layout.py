@@ -111,7 +111,7 @@ def test_layout_does_not_depend_on_workers():
 
 
 def test_split_tables_are_reduced_after_their_orbits():
-    tasks = TaskList((2,), (1,), per_table=200, orbit_chunk=64)
+    tasks = TaskList((2,), (1,), per_table=200, orbit_chunk=64, resonances=False)
     kinds = [task.kind for task in tasks]
     assert kinds == ["orbits"] * 4 + ["reduce"] + ["orbits"] * 4 + ["reduce"]
     assert list(tasks[9].needs) == [5, 6, 7, 8]
@@ -126,7 +126,7 @@ def test_split_tables_are_reduced_after_their_orbits():
 
 
 def test_task_list_is_a_sequence():
-    tasks = TaskList((5, 7), (2, 7), per_table=64, orbit_chunk=64)
+    tasks = TaskList((5, 7), (2, 7), per_table=64, orbit_chunk=64, resonances=False)
     assert len(tasks) == 3
     assert tasks[-1] == tasks[2]
     assert tasks[1:] == [tasks[1], tasks[2]]
