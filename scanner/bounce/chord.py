@@ -33,6 +33,7 @@ from scanner.bounce.lanes import (
     POWER_RE,
     RAY_X,
     RAY_Y,
+    SETTLED,
     SUM_0,
     SUM_1,
     SUM_2,
@@ -109,6 +110,7 @@ def guess_by_ellipse(harmonics: Floats, state: Floats, powers: Floats) -> None:
         scale = math.copysign(1.0 / math.sqrt(along * along + across * across), across)
         state[HALF_COS, j] = along * scale
         state[HALF_SIN, j] = across * scale
+        state[SETTLED, j] = 0.0
 
 
 @inlined
@@ -150,8 +152,13 @@ def correct_once(harmonics: Floats, state: Floats, quotient: Floats) -> int:
         g = state[SUM_0, j]
         g1 = state[SUM_1, j]
         g2 = state[SUM_2, j]
+        settled = state[SETTLED, j] > 0.0
         step = -g * (6.0 * g1 * g1 - 3.0 * g * g2) / (6.0 * g1 * (g1 * g1 - g * g2) + g * g * state[SUM_3, j])
-        moving += 0 if abs(step) < STEP_RELATIVE * state[HALF_SIN, j] + STEP_ABSOLUTE else 1
+        # A settled lane takes no further step, so that an orbit does not depend on its neighbours by a rounding.
+        step = 0.0 if settled else step
+        small = abs(step) < STEP_RELATIVE * state[HALF_SIN, j] + STEP_ABSOLUTE
+        state[SETTLED, j] = 1.0 if small else 0.0
+        moving += 0 if small else 1
         # exp(i step) with unit modulus whatever the step: the tangent of half of it to fifth order.
         half = 0.5 * step
         tangent = half * (1.0 + half * half * (1.0 / 3.0))
@@ -172,23 +179,21 @@ def find_half_advance(harmonics: Floats, state: Floats, powers: Floats, quotient
     highest = harmonics.shape[1] - 1
     if highest > 1:
         divide_out_start(harmonics, state, powers, quotient)
-        correct_once(harmonics, state, quotient)
         moving = LANES
-        corrections = 1
+        corrections = 0
         while moving > 0 and corrections < MOST_CORRECTIONS:
             moving = correct_once(harmonics, state, quotient)
             corrections += 1
-        outside = 0
-        for j in range(LANES):
-            outside += 0 if state[HALF_SIN, j] > 0.0 else 1
-        if moving > 0 or outside > 0:
+        if moving > 0:
             bisect_lost_lanes(highest, state, quotient)
 
 
 @inlined
 def bisect_lost_lanes(highest: int, state: Floats, quotient: Floats) -> None:
-    """Hand to bisection every lane whose h is outside (0, pi) or whose next correction would not be small."""
+    """Hand to bisection every lane that has not settled."""
     for j in range(LANES):
+        if state[SETTLED, j] > 0.0:
+            continue
         found, half_cos, half_sin = bracket_half_advance(highest, quotient, j, state[HALF_COS, j], state[HALF_SIN, j])
         state[HALF_COS, j] = half_cos
         state[HALF_SIN, j] = half_sin

@@ -41,9 +41,10 @@ BUFFER = 16
     POWER_IM,
     FACTOR_RE,
     FACTOR_IM,
+    SETTLED,  # 1 once the chord in hand is found: its lane is left alone while others are corrected
     FAILED,  # 0, or 1 once a chord of this orbit could not be found
-) = range(22)
-STATE_ROWS = 22
+) = range(23)
+STATE_ROWS = 23
 
 # Rows of the buffer, each of shape (BUFFER, LANES).
 ADVANCE, P_AFTER, CHORD, D_SS, D_SP, D_PS, D_PP = range(7)

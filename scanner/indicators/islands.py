@@ -79,11 +79,11 @@ def collect_returns(
     momenta: Floats,
     periods: Whole,
     rotations: Whole,
-    bounces: int,
+    counts: Whole,
     shifts: Floats,
     returned_p: Floats,
 ) -> None:
-    """Fill the last two arrays, of shape (returns + 1, LANES), with every q-th bounce of a block of orbits.
+    """Fill the last two arrays, of shape (returns + 1, LANES), with every q-th bounce of a block, as often as asked.
 
     ``shifts`` is the boundary parameter less that of the start and less the island's whole turns.
     """
@@ -97,11 +97,10 @@ def collect_returns(
     for j in range(LANES):
         shifts[0, j] = 0.0
         returned_p[0, j] = momenta[j]
-    for first in range(0, bounces, BUFFER):
-        count = min(BUFFER, bounces - first)
-        bounce_block(harmonics, state, powers, buffer, count)
+    for first in range(0, (counts * periods).max(), BUFFER):
+        bounce_block(harmonics, state, powers, buffer, BUFFER)
         for j in range(LANES):
-            for row in range(count):
+            for row in range(min(BUFFER, counts[j] * periods[j] - first)):
                 shift[j] += buffer[ADVANCE, row, j]
                 waited[j] += 1
                 if waited[j] == periods[j]:
@@ -148,8 +147,8 @@ def _wind_block(
     harmonics: Floats, turns: Floats, momenta: Floats, periods: Whole, rotations: Whole, bounces: int
 ) -> Floats:
     """The rows of ``Windings`` for one block of at most LANES orbits."""
-    length = second_pass_bounces(bounces, int(periods.max()))
-    most = length // int(periods.min())
+    counts = np.array([second_pass_bounces(bounces, int(q)) // q for q in periods], dtype=np.int64)
+    most = int(counts.max())
     shifts = np.empty((most + 1, LANES))
     returned_p = np.empty((most + 1, LANES))
     collect_returns(
@@ -158,11 +157,10 @@ def _wind_block(
         fill_up(momenta),
         fill_up(periods),
         fill_up(rotations),
-        length,
+        fill_up(counts),
         shifts,
         returned_p,
     )
-    counts = length // periods
     weights, places = _weights_of(counts)
     mean_shift, mean_p = average_points(shifts, returned_p, counts, weights, places)
     centre_turns, centre_p, at = find_fixed_points(harmonics, turns + mean_shift, mean_p, periods, rotations)

@@ -9,7 +9,7 @@ from scipy.special import ellipk, ellipkinc
 from scanner import build_table, measure_orbits
 from scanner.bounce.return_map import return_map
 from scanner.indicators.islands import widest_gap
-from scanner.quantities import REGULAR_LIBRATIONAL
+from scanner.quantities import CHAOTIC, REGULAR_LIBRATIONAL
 
 
 @pytest.mark.parametrize(
@@ -75,3 +75,16 @@ def test_widest_gap_of_steps_on_the_circle() -> None:
     assert widest_gap(np.array([0.4, 0.6])) == pytest.approx(0.0, abs=0.01)
     assert widest_gap(np.linspace(0.0, 1.0, 500, endpoint=False)) == -1.0
     assert widest_gap(np.array([0.1, np.nan])) == -1.0
+
+
+def test_an_orbit_does_not_depend_on_its_neighbours() -> None:
+    """Each orbit's numbers are the same to the bit, whatever shares its block; a chaotic one would show a rounding."""
+    table = build_table("radial_harmonic", amplitude=0.06, harmonic=3)
+    rng = np.random.default_rng(9)
+    s, p = rng.random(150), 2 * rng.random(150) - 1
+    together = measure_orbits(table, s, p, bounces=1024)
+    assert set(np.unique(together.verdict)) >= {REGULAR_LIBRATIONAL, CHAOTIC}
+    order = rng.permutation(150)[:70]
+    apart = measure_orbits(table, s[order], p[order], bounces=1024)
+    for name in together.data_vars:
+        assert np.array_equal(together[name].values[order], apart[name].values, equal_nan=True), name
