@@ -17,6 +17,11 @@ LENGTH_ROUNDING = 2.0 * float(np.finfo(np.float64).eps)
 """Error of the length of a given polygon, relative to it."""
 
 
+def residue(trace: Floats) -> Floats:
+    """Residue of a periodic orbit from the trace of its tangent map; elliptic between 0 and 1 (Greene 1979)."""
+    return 0.25 * (2.0 - trace)
+
+
 def resonance_numbers(table: Table, rotations: Sequence[tuple[int, int]]) -> dict[str, Floats]:
     """Both Birkhoff orbits of given rotations: the longest polygon with q vertices and p rounds, and the minimax one.
 
@@ -55,7 +60,7 @@ def resonance_numbers(table: Table, rotations: Sequence[tuple[int, int]]) -> dic
     for row, name in enumerate(("maximal", "minimax")):
         numbers[f"length_{name}"] = found[:, row, LENGTH]
         numbers[f"trace_{name}"] = found[:, row, TRACE]
-        numbers[f"residue_{name}"] = 0.25 * (2.0 - found[:, row, TRACE])
+        numbers[f"residue_{name}"] = residue(found[:, row, TRACE])
         suffix = "" if name == "maximal" else "_minimax"
         numbers[f"s_first{suffix}"] = table.arc_from_turns(found[:, row, FIRST_TURNS])
         numbers[f"p_first{suffix}"] = found[:, row, FIRST_P]

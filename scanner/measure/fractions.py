@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
+from scanner.measure.last_curves import last_curves
 from scanner.quantities import CHAOTIC, P_BINS, PERIODS, REGULAR_LIBRATIONAL, REGULAR_ROTATIONAL, UNDECIDED
 from scanner.tables import Table
 
@@ -119,6 +120,8 @@ def table_numbers(
     verdict = np.asarray(orbits["verdict"], dtype=np.int8)
     by_horizon = np.asarray(orbits["verdict_by_horizon"], dtype=np.int8)
     period = np.asarray(orbits["island_period"])
+    start = np.asarray(orbits["p0"], dtype=np.float64)
+    rotation = np.asarray(orbits["rotation_number"], dtype=np.float64)
     exponent = np.asarray(orbits["lyapunov_per_bounce"], dtype=np.float64)
     chord = np.asarray(orbits["mean_chord"], dtype=np.float64)
     diffusion = np.asarray(orbits["frequency_diffusion"], dtype=np.float64)
@@ -150,7 +153,8 @@ def table_numbers(
         "undecided_area_fraction": _fraction(verdict == UNDECIDED, one, replicates).value,
         "rotational_area_fraction": _fraction(verdict == REGULAR_ROTATIONAL, one, replicates).value,
         "librational_area_fraction": _fraction(librational, one, replicates).value,
-        "regular_area_fraction_by_p": _by_p(regular, np.asarray(orbits["p0"], dtype=np.float64)),
+        "regular_area_fraction_by_p": _by_p(regular, start),
+        **last_curves(start, rotation, verdict),
         "island_area_fraction": island_area[0],
         "island_area_fraction_stderr": island_area[1],
         "island_volume_fraction": island_volume[0],

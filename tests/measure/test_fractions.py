@@ -49,6 +49,7 @@ def orbits(verdict: list[int]) -> dict[str, np.ndarray]:
         "mean_chord": np.linspace(1.0, 2.0, size),
         "frequency_diffusion": -np.arange(size, dtype=float),
         "p0": np.linspace(-0.99, 0.99, size),
+        "rotation_number": np.linspace(0.9, 0.1, size),
     }
 
 
