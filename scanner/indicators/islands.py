@@ -21,7 +21,7 @@ from scanner.bounce.lanes import (
     STATE_ROWS,
     fill_up,
 )
-from scanner.bounce.orbits import bounce_block, start_block
+from scanner.bounce.orbits import bounce_lanes, start_block
 from scanner.bounce.return_map import ReturnMap, find_fixed_points
 from scanner.compiled import kernel
 from scanner.elementary import angle_turns
@@ -83,22 +83,23 @@ def collect_returns(
     shifts: Floats,
     returned_p: Floats,
 ) -> None:
-    """Fill the last two arrays, of shape (returns + 1, LANES), with every q-th bounce of a block, as often as asked.
+    """Fill the last two arrays, of shape (LANES, returns + 1), with every q-th bounce of a block, as often as asked.
 
     ``shifts`` is the boundary parameter less that of the start and less the island's whole turns.
     """
     state = np.empty((STATE_ROWS, LANES))
     powers = np.empty((2 * harmonics.shape[1], LANES))
+    quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
     buffer = np.empty((BUFFER_ROWS, BUFFER, LANES))
     start_block(harmonics, turns, momenta, state, powers)
     shift = np.zeros(LANES)
     waited = np.zeros(LANES, dtype=np.int64)
     place = np.zeros(LANES, dtype=np.int64)
     for j in range(LANES):
-        shifts[0, j] = 0.0
-        returned_p[0, j] = momenta[j]
+        shifts[j, 0] = 0.0
+        returned_p[j, 0] = momenta[j]
     for first in range(0, (counts * periods).max(), BUFFER):
-        bounce_block(harmonics, state, powers, buffer, BUFFER)
+        bounce_lanes(harmonics, state, powers, quotient, buffer, BUFFER)
         for j in range(LANES):
             for row in range(min(BUFFER, counts[j] * periods[j] - first)):
                 shift[j] += buffer[ADVANCE, row, j]
@@ -107,8 +108,8 @@ def collect_returns(
                     waited[j] = 0
                     shift[j] -= rotations[j]
                     place[j] += 1
-                    shifts[place[j], j] = shift[j]
-                    returned_p[place[j], j] = buffer[P_AFTER, row, j]
+                    shifts[j, place[j]] = shift[j]
+                    returned_p[j, place[j]] = buffer[P_AFTER, row, j]
 
 
 def second_pass_bounces(bounces: int, period: int) -> int:
@@ -149,8 +150,8 @@ def _wind_block(
     """The rows of ``Windings`` for one block of at most LANES orbits."""
     counts = np.array([second_pass_bounces(bounces, int(q)) // q for q in periods], dtype=np.int64)
     most = int(counts.max())
-    shifts = np.empty((most + 1, LANES))
-    returned_p = np.empty((most + 1, LANES))
+    shifts = np.empty((LANES, most + 1))
+    returned_p = np.empty((LANES, most + 1))
     collect_returns(
         harmonics,
         fill_up(turns),
@@ -200,8 +201,8 @@ def average_points(shifts: Floats, p: Floats, counts: Whole, weights: Floats, pl
     for j in range(counts.size):
         for n in range(counts[j]):
             weight = weights[places[0, j] + n]
-            mean_shift[j] += weight * shifts[n, j]
-            mean_p[j] += weight * p[n, j]
+            mean_shift[j] += weight * shifts[j, n]
+            mean_p[j] += weight * p[j, n]
     return mean_shift, mean_p
 
 
@@ -222,21 +223,25 @@ def average_windings(
     change = np.full(counts.size, np.nan)
     for j in range(counts.size):
         count = counts[j]
-        steps = np.empty(count)
-        sides = np.zeros(4, dtype=np.int64)
-        last = 0.0
+        angles = np.empty(count + 1)
+        right = 0
+        above = 0
+        right_above = 0
         for n in range(count + 1):
-            x = shifts[n, j] - centre_shift[j]
-            y = p[n, j] - centre_p[j]
-            sides[(2 if y > 0.0 else 0) + (1 if x > 0.0 else 0)] += 1
-            angle = angle_turns(y + shear[j] * x, stretch[j] * x)
-            if n > 0:
-                step = angle - last
-                steps[n - 1] = step - math.floor(step)
-            last = angle
+            x = shifts[j, n] - centre_shift[j]
+            y = p[j, n] - centre_p[j]
+            right += 1 if x > 0.0 else 0
+            above += 1 if y > 0.0 else 0
+            right_above += 1 if x > 0.0 and y > 0.0 else 0
+            angles[n] = angle_turns(y + shear[j] * x, stretch[j] * x)
+        steps = np.empty(count)
+        for n in range(count):
+            step = angles[n + 1] - angles[n]
+            steps[n] = step - math.floor(step)
+        # With a quarter left empty, or steps all round the circle, the centre is not that of this orbit's island.
+        quarters = (right_above, right - right_above, above - right_above, count + 1 - right - above + right_above)
         cut = widest_gap(steps)
-        # With a side left empty, or steps all round the circle, the centre is not that of this orbit's island.
-        if not (math.isfinite(stretch[j]) and sides.min() > 0 and cut >= 0.0):
+        if not (math.isfinite(stretch[j]) and min(quarters) > 0 and cut >= 0.0):
             continue
         for n in range(count):
             steps[n] -= 1.0 if steps[n] > cut else 0.0
