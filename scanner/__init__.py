@@ -12,11 +12,22 @@ _HOMES = {
     "trace": "scanner.bounce",
     "measure_orbits": "scanner.indicators",
     "survey_table": "scanner.measure",
+    "survey_resonances": "scanner.measure",
+    "curve_fate": "scanner.measure",
     "open_sweep": "scanner.store",
     "run_study": "scanner.engine",
 }
 
-__all__ = ["build_table", "measure_orbits", "open_sweep", "run_study", "survey_table", "trace"]
+__all__ = [
+    "build_table",
+    "curve_fate",
+    "measure_orbits",
+    "open_sweep",
+    "run_study",
+    "survey_resonances",
+    "survey_table",
+    "trace",
+]
 
 __version__ = "0.1.0"
 

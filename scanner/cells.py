@@ -15,7 +15,7 @@ import numpy.typing as npt
 from scanner.bounce.resonances import resonance_numbers
 from scanner.errors import ScannerError
 from scanner.indicators import orbit_numbers
-from scanner.measure import section_points, table_numbers
+from scanner.measure import curve_numbers, section_points, table_numbers
 from scanner.quantities import DONE, FAILED, NOT_CONVEX, ORBITS, RESONANCES, ROOT, in_group
 from scanner.study import Plan, Task
 from scanner.tables import Table, build_table
@@ -115,6 +115,7 @@ def _settle_tables(
                 settle(result, place, table)
                 if RESONANCES in result.groups:
                     result.fill(RESONANCES, place, resonance_numbers(table, plan.rotations))
+                    result.fill(RESONANCES, place, curve_numbers(table))
             result.set_status(place, DONE if table.is_convex else NOT_CONVEX)
     return result
 

@@ -11,11 +11,14 @@ from dataclasses import dataclass
 
 TABLE_STATUS = ("pending", "done", "not_convex", "failed")
 VERDICTS = ("pending", "regular_rotational", "regular_librational", "chaotic", "undecided")
+CURVE_FATES = ("pending", "survives", "broken", "undecided")
 PENDING, DONE, NOT_CONVEX, FAILED = range(4)
 REGULAR_ROTATIONAL, REGULAR_LIBRATIONAL, CHAOTIC, UNDECIDED = range(1, 5)
 
 P_BINS = 20
 PERIODS = tuple(range(2, 65))
+CURVES = tuple(1.0 / (whole + 0.5 * (math.sqrt(5.0) - 1.0)) for whole in (2, 3, 4))
+"""Rotation numbers of curves that are the last to break nearby: they lie between 1/2, 1/3, 1/4 and 1/5."""
 
 ROOT = "root"
 ORBITS = "orbits"
@@ -182,6 +185,25 @@ _QUANTITIES = (
     _resonance("p_first", "p at the first vertex of the longest polygon"),
     _resonance("s_first_minimax", "arc length of the first vertex of the minimax polygon as such a fraction"),
     _resonance("p_first_minimax", "p at the first vertex of the minimax polygon"),
+    Quantity(
+        "curve_fate",
+        RESONANCES,
+        ("curve",),
+        "int8",
+        "1",
+        "what has become of the rotational curve of this rotation number",
+        reference=_GREENE,
+        flags=CURVE_FATES,
+    ),
+    Quantity(
+        "curve_residue",
+        RESONANCES,
+        ("curve",),
+        "float64",
+        "1",
+        "residue of the longest periodic orbit that the fate of the curve was judged by",
+        reference=_GREENE,
+    ),
 )
 
 REGISTER: dict[tuple[str, str], Quantity] = {(entry.group, entry.name): entry for entry in _QUANTITIES}

@@ -41,7 +41,7 @@ def test_every_stored_quantity_is_labelled(quantity):
     assert quantity.dtype in DTYPES
     assert quantity.group in (ROOT, ORBITS, RESONANCES)
     assert ("orbit" in quantity.dims) == (quantity.group == ORBITS)
-    assert ("resonance" in quantity.dims) == (quantity.group == RESONANCES)
+    assert bool({"resonance", "curve"} & set(quantity.dims)) == (quantity.group == RESONANCES)
     if quantity.flags:
         assert quantity.dtype == "int8"
         assert quantity.flags[0] == "pending"

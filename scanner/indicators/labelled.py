@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 import numpy.typing as npt
@@ -14,17 +14,17 @@ if TYPE_CHECKING:
     import xarray as xr
 
 
-def label(group: str, values: Mapping[str, npt.ArrayLike], coords: Mapping[str, npt.ArrayLike]) -> xr.Dataset:
+def label(group: str, values: Mapping[str, npt.ArrayLike], coords: Mapping[str, Any]) -> xr.Dataset:
     """Dataset of the variables of one group of the register that are in ``values``.
 
     Parameters
     ----------
     group
-        ``quantities.ROOT`` or ``quantities.ORBITS``.
+        A group of the store, like ``quantities.ROOT``.
     values
         Name to array, with the dimensions of the register's entry.
     coords
-        Name of a dimension to its values.
+        Name of a dimension to its values, or of another coordinate to its dimension and values.
     """
     import xarray as xr
 

@@ -11,16 +11,13 @@ import numpy.typing as npt
 from scanner.bounce.resonances import resonance_numbers
 from scanner.errors import TableError
 from scanner.measure.residues import LARGE, Fate, convergents, judge_residues
-from scanner.quantities import REGULAR_ROTATIONAL
+from scanner.quantities import CURVE_FATES, CURVES, REGULAR_ROTATIONAL
 from scanner.tables import Table
 
 Floats = npt.NDArray[np.float64]
 
-GOLDEN = 0.5 * (math.sqrt(5.0) - 1.0)
-ROTATIONS = tuple(1.0 / (whole + GOLDEN) for whole in (2, 3, 4))
-"""Rotation numbers whose curves are the last to break nearby: they lie between 1/2, 1/3, 1/4 and 1/5."""
-LONGEST_ORBIT = 89
-"""Bounces of the longest orbits that are sought by default."""
+LONGEST_ORBIT = 55
+"""Bounces of the longest orbits that are sought by default; time grows as the cube."""
 
 
 def last_curves(p: Floats, rotation: Floats, verdict: npt.NDArray[np.int8]) -> dict[str, float]:
@@ -75,7 +72,7 @@ class CurveFate:
     fate: Fate
 
 
-def curve_fate(table: Table, rotation: float = ROTATIONS[0], longest_orbit: int = LONGEST_ORBIT) -> CurveFate:
+def curve_fate(table: Table, rotation: float = CURVES[0], longest_orbit: int = LONGEST_ORBIT) -> CurveFate:
     """Judge by Greene's residues whether the curve of a rotation number survives.
 
     Parameters
@@ -83,8 +80,8 @@ def curve_fate(table: Table, rotation: float = ROTATIONS[0], longest_orbit: int 
     table
         A convex table.
     rotation
-        An irrational number in (0, 1), best a noble one as in ``ROTATIONS``; the curve of 1 - rotation is the same
-        one run backwards.
+        An irrational number in (0, 1), best a noble one as in ``quantities.CURVES``; the curve of 1 - rotation is the
+        same one run backwards.
     longest_orbit
         Most bounces of the periodic orbits; longer ones are not sought once the curve is known to be broken.
 
@@ -103,3 +100,12 @@ def curve_fate(table: Table, rotation: float = ROTATIONS[0], longest_orbit: int 
         if residues[-1] > LARGE and judge_residues(residues) == "broken":
             break
     return CurveFate(rotation, tuple(orbits[: len(residues)]), tuple(residues), judge_residues(residues))
+
+
+def curve_numbers(table: Table) -> dict[str, npt.NDArray[np.generic]]:
+    """Fate and last residue of the curves that every table is asked about, each of shape (curves,)."""
+    fates = [curve_fate(table, rotation) for rotation in CURVES]
+    return {
+        "curve_fate": np.array([CURVE_FATES.index(found.fate) for found in fates], dtype=np.int8),
+        "curve_residue": np.array([found.residues[-1] for found in fates]),
+    }

@@ -21,7 +21,7 @@ import zarr
 from zarr.codecs import ZstdCodec
 
 from scanner.errors import StoreError
-from scanner.quantities import ORBITS, P_BINS, PERIODS, RESONANCES, ROOT
+from scanner.quantities import CURVES, ORBITS, P_BINS, PERIODS, RESONANCES, ROOT
 from scanner.store.durable import Seal, settle
 from scanner.store.ledger import Charter, Ledger
 from scanner.study import Plan
@@ -130,7 +130,7 @@ def _write_arrays(folder: Path, plan: Plan) -> None:
     groups = {ROOT: root, ORBITS: root.create_group(ORBITS)}
     if plan.rotations:
         # Without this attribute readers take what has not the name of a dimension for a variable.
-        names = " ".join(coordinate.name for coordinate in _coordinates(plan) if coordinate.group == RESONANCES)
+        names = " ".join(found.name for found in _coordinates(plan) if found.dim == "resonance")
         groups[RESONANCES] = root.create_group(RESONANCES, attributes={"coordinates": names})
     for quantity in plan.quantities:
         _create_array(
@@ -211,6 +211,7 @@ def _coordinates(plan: Plan) -> Iterable[Coordinate]:
         p, q = np.array(plan.rotations).T
         yield Coordinate(RESONANCES, "resonance", "rotation", p, "rounds p of the orbits with rotation p/q")
         yield Coordinate(RESONANCES, "resonance", "resonance_period", q, "bounces q of the orbits with rotation p/q")
+        yield Coordinate(RESONANCES, "curve", "curve", np.array(CURVES), "rotation number of the curve")
 
 
 def _root_attributes(plan: Plan) -> dict[str, str]:

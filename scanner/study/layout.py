@@ -16,7 +16,7 @@ NOMINAL_BOUNCE = 80
 NOMINAL_TABLE = 20_000_000
 """Nanoseconds to build a table and to sum up its orbits."""
 NOMINAL_RESONANCE = 3_000_000
-"""Nanoseconds to find both orbits of one rotation."""
+"""Nanoseconds to find both orbits of one rotation, with a share of what it takes to judge the curves between."""
 LONGEST_TASK = 20_000_000_000
 """Nanoseconds, while that makes no more than MOST_TASKS."""
 SHORTEST_TASK = 500_000_000

@@ -10,7 +10,7 @@ from math import prod
 from typing import Literal, overload
 
 from scanner.indicators.schedule import horizons
-from scanner.quantities import ORBITS, P_BINS, PERIODS, REGISTER, RESONANCES, ROOT, Quantity
+from scanner.quantities import CURVES, ORBITS, P_BINS, PERIODS, REGISTER, RESONANCES, ROOT, Quantity
 from scanner.study.layout import ceil_divide, lay_out
 from scanner.study.model import Study, Value
 
@@ -179,6 +179,7 @@ class Plan:
             "horizon": len(self.horizons),
             "period": len(PERIODS),
             "resonance": len(self.rotations),
+            "curve": len(CURVES),
         }
         return {**dict(zip(self.dims, self.shape, strict=True)), **inner}
 

@@ -5,8 +5,8 @@ import pytest
 
 from scanner.errors import TableError
 from scanner.measure import survey_table
-from scanner.measure.last_curves import ROTATIONS, curve_fate, last_curves
-from scanner.quantities import CHAOTIC, REGULAR_LIBRATIONAL, REGULAR_ROTATIONAL, UNDECIDED
+from scanner.measure.last_curves import curve_fate, last_curves
+from scanner.quantities import CHAOTIC, CURVES, REGULAR_LIBRATIONAL, REGULAR_ROTATIONAL, UNDECIDED
 from scanner.tables import build_table
 
 CODES = {"r": REGULAR_ROTATIONAL, "l": REGULAR_LIBRATIONAL, "c": CHAOTIC, "u": UNDECIDED}
@@ -49,7 +49,7 @@ def test_band_of_an_ellipse_ends_at_the_separatrix():
     assert 0.4 < survey["rotation_range_max"] < 0.5
 
 
-@pytest.mark.parametrize("rotation", ROTATIONS)
+@pytest.mark.parametrize("rotation", CURVES)
 def test_all_curves_of_an_ellipse_survive_and_those_of_a_gentle_deformation(rotation):
     assert curve_fate(build_table("ellipse", eccentricity=0.6), rotation).fate == "survives"
     assert curve_fate(build_table("radial_harmonic", amplitude=0.01, harmonic=2), rotation).fate == "survives"
@@ -62,7 +62,7 @@ def test_no_curve_survives_near_zero_curvature(harmonic, share):
     """Mather 1982: a boundary point of zero curvature destroys them all; just below, those that are not glancing."""
     table = build_table("radial_harmonic", amplitude=share / (1 + harmonic**2), harmonic=harmonic)
     assert table.curvature_min < 0.05
-    for rotation in (*ROTATIONS, 1.0 / (6.0 + ROTATIONS[0])):
+    for rotation in (*CURVES, 1.0 / (6.0 + CURVES[0])):
         assert curve_fate(table, rotation).fate == "broken"
 
 

@@ -4,10 +4,10 @@ import xarray as xr
 from sweeps import fill, grid, results
 
 from scanner.analysis import export_sweep, pick_tables
-from scanner.bounce.resonances import resonance_numbers
 from scanner.cells import compute
 from scanner.errors import StudyError
-from scanner.quantities import RESONANCES, in_group, rotations_up_to
+from scanner.measure import survey_resonances
+from scanner.quantities import CURVE_FATES, RESONANCES, in_group
 from scanner.store import verify
 from scanner.study import Plan, make_plan, parse_study
 from scanner.tables import build_table
@@ -30,14 +30,18 @@ def store(study, tmp_path_factory):
 
 
 def test_the_group_holds_what_each_table_gives_alone(store):
-    alone = resonance_numbers(build_table("radial_harmonic", amplitude=0.05, harmonic=3), rotations_up_to(5))
+    alone = survey_resonances(build_table("radial_harmonic", amplitude=0.05, harmonic=3), period_max=5)
     with xr.open_datatree(store, engine="zarr") as tree:
         assert {entry.name for entry in in_group(RESONANCES)} == set(tree[RESONANCES].data_vars) == set(alone)
         for entry in in_group(RESONANCES):
             array = tree[RESONANCES][entry.name]
-            assert array.dims == ("amplitude", "harmonic", "resonance")
+            assert array.dims == ("amplitude", "harmonic", *entry.dims)
             assert array.attrs == entry.attributes()
             np.testing.assert_array_equal(array[0, 1], alone[entry.name])
+        for name in ("rotation", "resonance_period", "curve"):
+            np.testing.assert_array_equal(tree[RESONANCES][name], alone[name])
+        assert [CURVE_FATES[code] for code in alone["curve_fate"].values] == ["broken"] * 3
+        assert tree["resonances/curve_fate"][1, 1].values.tolist() == [0, 0, 0]
         assert np.isnan(tree["resonances/length_gap"][1, 1]).all()
     assert verify(store) == []
 

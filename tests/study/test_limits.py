@@ -7,7 +7,6 @@ import numpy as np
 import pytest
 
 from scanner.errors import StudyError
-from scanner.quantities import REGISTER
 from scanner.study import make_plan, parse_study
 from scanner.study.limits import MOST_TASK_BYTES, check_limits, store_bytes, task_bytes
 
@@ -34,7 +33,7 @@ def plan_of(count: int, per_table: int, bounces: int):
 def held_by(plan, task) -> int:
     """Count the bytes of the arrays of a task by making them; a reduction holds all orbits of its table."""
     total = 0
-    for quantity in REGISTER.values():
+    for quantity in plan.quantities:
         shape = tuple(part.stop - part.start for part in task.box)
         shape += tuple(plan.sizes[dim] for dim in quantity.dims)
         total += np.empty(shape, quantity.dtype).nbytes
@@ -50,7 +49,7 @@ def test_task_bytes_are_those_of_the_largest_task(count, per_table, bounces):
 def test_store_bytes_cover_the_arrays_and_not_much_more():
     # Many orbits a table, so that the blocks of the disk weigh little.
     plan = plan_of(10, 65536, 65536)
-    arrays = sum(np.prod(plan.array_shape(entry)) * np.dtype(entry.dtype).itemsize for entry in REGISTER.values())
+    arrays = sum(np.prod(plan.array_shape(entry)) * np.dtype(entry.dtype).itemsize for entry in plan.quantities)
     assert arrays < store_bytes(plan) < 1.5 * arrays
 
 
