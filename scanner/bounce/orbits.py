@@ -133,6 +133,18 @@ def move_to_end(state: Floats, powers: Floats, buffer: Floats, row: int) -> None
 
 
 @inlined
+def tangent_map(k0: float, c0: float, k1: float, c1: float, length: float) -> tuple[float, float, float, float]:
+    """Tangent map of one bounce, row by row, from curvatures and cosines at both ends and the chord's length."""
+    over_both = 1.0 / (c0 * c1)
+    return (
+        (k0 * length - c0) * (c0 * over_both),
+        -length * over_both,
+        k0 * c1 + k1 * c0 - k0 * k1 * length,
+        (k1 * length - c1) * (c1 * over_both),
+    )
+
+
+@inlined
 def reflect(state: Floats, buffer: Floats, row: int) -> None:
     """Reflect at the new point: momentum, chord and tangent map of this bounce."""
     for j in range(LANES):
@@ -152,13 +164,13 @@ def reflect(state: Floats, buffer: Floats, row: int) -> None:
         c1 *= unit
         c0 = state[COSINE, j]
         k0 = state[CURVATURE, j]
-        over_both = 1.0 / (c0 * c1)
+        ss, sp, ps, pp = tangent_map(k0, c0, k1, c1, length)
         buffer[P_AFTER, row, j] = p
         buffer[CHORD, row, j] = length
-        buffer[D_SS, row, j] = (k0 * length - c0) * (c0 * over_both)
-        buffer[D_SP, row, j] = -length * over_both
-        buffer[D_PS, row, j] = k0 * c1 + k1 * c0 - k0 * k1 * length
-        buffer[D_PP, row, j] = (k1 * length - c1) * (c1 * over_both)
+        buffer[D_SS, row, j] = ss
+        buffer[D_SP, row, j] = sp
+        buffer[D_PS, row, j] = ps
+        buffer[D_PP, row, j] = pp
         state[FAILED, j] += 0.0 if c1 > 0.0 else 1.0
         state[MOMENTUM, j] = p
         state[COSINE, j] = c1
