@@ -39,6 +39,8 @@ MOST_BOUNCES = 8192
 
 PARABOLIC = 1e-9
 """A trace this close to 2 is that of a shear: rounding moves it by 1e-11, and no island met has one as close."""
+AT_REST = 1e-7
+"""A return as close as this to the start, in turns and in p, has not moved; rounding adds up to 1e-9."""
 ARCS = 128
 """Arcs of the circle in which the steps of the angle are looked for."""
 
@@ -57,6 +59,8 @@ class Windings:
         Shape (n,): the centre in the part of the island where the orbit starts.
     trace
         Shape (n,): trace of the q-fold tangent map at the periodic point that was found, elliptic or not.
+    at_rest
+        Shape (n,): 1 where every return is at the start, else 0.
     """
 
     winding: Floats
@@ -64,11 +68,15 @@ class Windings:
     centre_turns: Floats
     centre_p: Floats
     trace: Floats
+    at_rest: Floats
 
     @property
     def resonant(self) -> npt.NDArray[np.bool_]:
-        """Where the periodic point is parabolic: on a curve of such points, as in a circle, and not in an island."""
-        found: npt.NDArray[np.bool_] = np.abs(self.trace - 2.0) < PARABOLIC
+        """Where the orbit is itself a parabolic periodic point: on a curve of such points and not in an island.
+
+        A circle has such curves.  Orbits that move about a parabolic point are in an island.
+        """
+        found: npt.NDArray[np.bool_] = (np.abs(self.trace - 2.0) < PARABOLIC) & (self.at_rest > 0.0)
         return found
 
 
@@ -134,7 +142,7 @@ def wind_orbits(
     bounces
         Bounces of the first pass.
     """
-    found = np.full((5, turns.size), np.nan)
+    found = np.full((6, turns.size), np.nan)
     order = np.argsort(periods, kind="stable")
     for first in range(0, order.size, LANES):
         block = order[first : first + LANES]
@@ -166,11 +174,11 @@ def _wind_block(
     mean_shift, mean_p = average_points(shifts, returned_p, counts, weights, places)
     centre_turns, centre_p, at = find_fixed_points(harmonics, turns + mean_shift, mean_p, periods, rotations)
     shear, stretch = _normal_form(at)
-    winding, change = average_windings(
+    winding, change, at_rest = average_windings(
         shifts, returned_p, counts, weights, places, centre_turns - turns, centre_p, shear, stretch
     )
     known = np.where(np.isfinite(winding), 1.0, np.nan)
-    return np.stack([winding, change, (centre_turns % 1.0) * known, centre_p * known, at.trace])
+    return np.stack([winding, change, (centre_turns % 1.0) * known, centre_p * known, at.trace, at_rest])
 
 
 def _weights_of(counts: Whole) -> tuple[Floats, Whole]:
@@ -217,23 +225,30 @@ def average_windings(
     centre_p: Floats,
     shear: Floats,
     stretch: Floats,
-) -> tuple[Floats, Floats]:
-    """Winding of each orbit about its centre, folded to [0, 1/2], and its change between two halves; NaN if unknown."""
+) -> tuple[Floats, Floats, Floats]:
+    """Winding of each orbit about its centre, folded to [0, 1/2], its change between two halves, and ``at_rest``.
+
+    The first two are NaN where the centre is not elliptic or not that of the orbit's island.
+    """
     winding = np.full(counts.size, np.nan)
     change = np.full(counts.size, np.nan)
+    at_rest = np.zeros(counts.size)
     for j in range(counts.size):
         count = counts[j]
         angles = np.empty(count + 1)
         right = 0
         above = 0
         right_above = 0
+        moved = 0
         for n in range(count + 1):
             x = shifts[j, n] - centre_shift[j]
             y = p[j, n] - centre_p[j]
+            moved += 1 if abs(shifts[j, n]) > AT_REST or abs(p[j, n] - p[j, 0]) > AT_REST else 0
             right += 1 if x > 0.0 else 0
             above += 1 if y > 0.0 else 0
             right_above += 1 if x > 0.0 and y > 0.0 else 0
             angles[n] = angle_turns(y + shear[j] * x, stretch[j] * x)
+        at_rest[j] = 0.0 if moved > 0 else 1.0
         steps = np.empty(count)
         for n in range(count):
             step = angles[n + 1] - angles[n]
@@ -256,7 +271,7 @@ def average_windings(
             late += weights[places[1, j] + n] * steps[count - half + n]
         winding[j] = abs(whole - math.floor(whole + 0.5))
         change[j] = late - early
-    return winding, change
+    return winding, change, at_rest
 
 
 @kernel

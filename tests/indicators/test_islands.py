@@ -88,3 +88,13 @@ def test_an_orbit_does_not_depend_on_its_neighbours() -> None:
     apart = measure_orbits(table, s[order], p[order], bounces=1024)
     for name in together.data_vars:
         assert np.array_equal(together[name].values[order], apart[name].values, equal_nan=True), name
+
+
+def test_orbits_about_a_parabolic_centre_are_in_an_island() -> None:
+    """At its convexity limit the quadrupole has flat ends, where the two-bounce orbit has trace 2 (closed form)."""
+    table = build_table("radial_harmonic", amplitude=0.2, harmonic=2)
+    found = measure_orbits(table, [0.25, 0.255], [0.02, 0.01], bounces=4096)
+    assert np.all(found.verdict == REGULAR_LIBRATIONAL)
+    assert np.all(found.island_period == 2)
+    # Its winding tends to nothing, and the tangent map does not say how: it is left open.
+    assert np.isnan(found.island_winding).all()
