@@ -19,8 +19,11 @@ from baselines import measure_scalar, measure_vectorised
 from bench_sweep import compare_workers
 
 from scanner.indicators import orbit_numbers
-from scanner.indicators.schedule import horizons
+from scanner.indicators.blocks import stream_orbits
+from scanner.indicators.schedule import horizons, make_schedule
 from scanner.measure import section_points
+from scanner.measure.resonances import survey_resonances
+from scanner.quantities import REGULAR_LIBRATIONAL
 from scanner.tables import Table, build_table
 
 TABLES: dict[str, dict[str, Any]] = {
@@ -67,15 +70,15 @@ def rivals_on(table: Table, orbits: int, bounces: int) -> dict[str, Callable[[],
 @click.group(invoke_without_command=True)
 @click.pass_context
 def main(context: click.Context) -> None:
-    """Time the measurement of orbits (``orbits``, the default) or whole sweeps (``sweep``)."""
+    """Time the measurement of orbits (``orbits``, the default), its parts (``extras``) or whole sweeps (``sweep``)."""
     if context.invoked_subcommand is None:
         context.invoke(orbits)
 
 
 @main.command()
-@click.option("--per-table", default=1024, show_default=True, help="Orbits per table.")
-@click.option("--bounces", default=2048, show_default=True, help="Bounces per orbit.")
-@click.option("--repeats", default=5, show_default=True, help="Rounds that count.")
+@click.option("--per-table", default=512, show_default=True, help="Orbits per table.")
+@click.option("--bounces", default=8192, show_default=True, help="Bounces per orbit.")
+@click.option("--repeats", default=3, show_default=True, help="Rounds that count.")
 def orbits(per_table: int, bounces: int, repeats: int) -> None:
     """Compare with a vectorised NumPy version and a plain compiled loop: nanoseconds per bounce on one core."""
     print(f"{per_table} orbits of {bounces} bounces, median of {repeats}; ns per bounce on one core")
@@ -87,6 +90,34 @@ def orbits(per_table: int, bounces: int, repeats: int) -> None:
         print(
             f"{name:<20}{table.harmonics.shape[1] - 1:>4}{package:>10.1f}{vectorised:>10.1f}{scalar:>10.1f}"
             f"{vectorised / package:>16.1f}{scalar / package:>16.1f}",
+            flush=True,
+        )
+
+
+@main.command()
+@click.option("--per-table", default=1024, show_default=True, help="Orbits per table.")
+@click.option("--bounces", default=8192, show_default=True, help="Bounces per orbit.")
+@click.option("--repeats", default=5, show_default=True, help="Rounds that count.")
+def extras(per_table: int, bounces: int, repeats: int) -> None:
+    """Time what comes on top of the first pass over the orbits: islands, periodic orbits."""
+    print(f"{per_table} orbits of {bounces} bounces, median of {repeats}; ns per bounce on one core")
+    print(f"{'table':<20}{'islands':>10}{'first pass':>12}{'whole':>10}{'added':>10}{'periods <= 8':>16}")
+    schedule = make_schedule(bounces)
+    for name in ("ellipse", "radial_harmonic 2", "limacon", "normal_harmonic 4"):
+        table = build_table(name.split()[0], **TABLES[name])
+        s, p = section_points(table, seed=1, replicates=1, orbits=per_table)
+        turns = np.asarray(table.turns_from_arc(s))
+        inside = np.mean(orbit_numbers(table, s, p, bounces)["verdict"] == REGULAR_LIBRATIONAL)
+        rivals: dict[str, Callable[[], object]] = {
+            "first": partial(stream_orbits, table.harmonics, turns, p, schedule),
+            "whole": partial(orbit_numbers, table, s, p, bounces),
+            "resonances": partial(survey_resonances, table, 8),
+        }
+        seconds = interleaved_medians(rivals, repeats)
+        first, whole = (seconds[rival] / (per_table * bounces) * 1e9 for rival in ("first", "whole"))
+        print(
+            f"{name:<20}{inside:>10.0%}{first:>12.1f}{whole:>10.1f}{whole / first - 1:>10.0%}"
+            f"{seconds['resonances'] * 1e3:>13.1f} ms",
             flush=True,
         )
 
