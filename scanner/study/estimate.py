@@ -6,13 +6,14 @@ import itertools
 import time
 from array import array
 from collections import Counter
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
 
 from scanner.bounce.lanes import LANES
+from scanner.bounce.resonances import resonance_numbers
 from scanner.indicators import orbit_numbers
 from scanner.indicators.schedule import MINIMUM_BOUNCES
 from scanner.measure import section_points
@@ -99,7 +100,9 @@ def estimate_cost(
             faults.append(check)
         report(number + 1)
     building = time.thread_time() - begun
-    pace = _calibrate(plan, _pick_tables(plan, convex), seconds) if convex else None
+    samples = _pick_tables(plan, convex) if convex else []
+    pace = _calibrate(plan, samples, seconds) if samples else None
+    resonances = len(convex) * _time_resonances(plan, samples)
     orbits = len(convex) * plan.study.orbits.per_table
     bounces = orbits * plan.study.orbits.bounces
     return Estimate(
@@ -112,7 +115,7 @@ def estimate_cost(
         store_bytes=store_bytes(plan),
         tasks=len(plan.tasks),
         nanoseconds_per_bounce=pace,
-        core_hours=(building + bounces * (pace or 0.0) * 1e-9) / 3600,
+        core_hours=(building + resonances + bounces * (pace or 0.0) * 1e-9) / 3600,
     )
 
 
@@ -126,6 +129,17 @@ def _pick_tables(plan: Plan, convex: array[int]) -> list[Table]:
         if check.table is not None:
             found.append(check.table)
     return found
+
+
+def _time_resonances(plan: Plan, tables: Sequence[Table]) -> float:
+    """Seconds of a core that the periodic orbits of a table take, the mean over tables; 0 where none are wanted."""
+    if not (plan.rotations and tables):
+        return 0.0
+    resonance_numbers(tables[0], plan.rotations)  # compiles, or loads what is compiled
+    begun = time.thread_time()
+    for table in tables:
+        resonance_numbers(table, plan.rotations)
+    return (time.thread_time() - begun) / len(tables)
 
 
 def _calibrate(plan: Plan, tables: Iterable[Table], seconds: float) -> float:
