@@ -6,11 +6,11 @@ results have the same bits on every processor.
 
 from __future__ import annotations
 
-import getpass
 import hashlib
 import os
 import tempfile
 from collections.abc import Callable
+from functools import lru_cache
 from pathlib import Path
 from typing import TypeVar
 
@@ -39,10 +39,22 @@ def _sources_fingerprint() -> str:
     return digest.hexdigest()[:16]
 
 
+def _own_folder() -> Path:
+    """Node-local folder of this user's.
+
+    What is cached there gets executed: a folder of that name that somebody else has made is left alone, and one for
+    this process alone takes its place.
+    """
+    folder = Path(tempfile.gettempdir()) / f"scanner-kernels-{os.getuid()}"
+    folder.mkdir(mode=0o700, exist_ok=True)
+    return folder if folder.stat().st_uid == os.getuid() else Path(tempfile.mkdtemp(prefix="scanner-kernels-"))
+
+
+@lru_cache(maxsize=1)
 def cache_folder() -> Path:
-    """Folder of compiled kernels: ``SCANNER_CACHE`` or a node-local temporary folder, by user and source hash."""
-    base = os.environ.get("SCANNER_CACHE") or Path(tempfile.gettempdir()) / f"scanner-kernels-{getpass.getuser()}"
-    return Path(base) / _sources_fingerprint()
+    """Folder of compiled kernels: below ``SCANNER_CACHE`` or a node-local temporary folder, named by a hash."""
+    base = os.environ.get("SCANNER_CACHE")
+    return (Path(base) if base else _own_folder()) / _sources_fingerprint()
 
 
 numba.config.CACHE_DIR = str(cache_folder())  # type: ignore[attr-defined]
