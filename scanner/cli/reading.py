@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 import click
 
 from scanner.cli.options import average_option, force_option, select_option, store_argument, to_option
-from scanner.figures.request import COLOURS, KINDS, WIDTHS
+from scanner.figures.request import COLOURS, FREQUENCY_BOUNCES, KINDS, LINE_ORBITS, WIDTHS
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -98,12 +98,14 @@ def export(store: Path, target: Path, orbits: bool, force: bool) -> None:
     type=click.Choice(KINDS),
     help="fractions: regular fractions against one parameter. curve: one variable against one parameter. "
     "map: one variable over two dimensions. portrait: the orbits of one table. "
+    "frequency: rotation numbers and their diffusion in one table, measured anew. "
+    "gaps: length gaps of stored resonances against the amplitude. "
     "By default what suits the number of swept parameters.",
 )
 @select_option
 @average_option
 @click.option("--quantity", default="", metavar="VARIABLE", help="Variable of a curve or a map.")
-@click.option("--along", default="", metavar="NAME", help="Parameter of the horizontal axis of a curve.")
+@click.option("--along", default="", metavar="NAME", help="Parameter of the horizontal axis of a curve or of gaps.")
 @click.option(
     "--colour", type=click.Choice(COLOURS), default="verdict", show_default=True, help="Colours of a portrait."
 )
@@ -112,7 +114,23 @@ def export(store: Path, target: Path, orbits: bool, force: bool) -> None:
     type=click.IntRange(min=0),
     default=0,
     metavar="N",
-    help="Follow each orbit of a portrait anew for N bounces and draw them all, not its start alone.",
+    help="Follow each orbit of a portrait anew for N bounces and draw them all, not its start alone; "
+    f"for a frequency figure, bounces of each orbit, {FREQUENCY_BOUNCES} unless given.",
+)
+@click.option(
+    "--s",
+    type=click.FloatRange(0.0, 1.0),
+    default=0.0,
+    show_default=True,
+    help="Arc length over the perimeter of the line of a frequency figure.",
+)
+@click.option(
+    "--orbits",
+    type=click.IntRange(min=1),
+    default=LINE_ORBITS,
+    show_default=True,
+    metavar="N",
+    help="Orbits along that line.",
 )
 @click.option(
     "--width", type=click.Choice(WIDTHS), default="single", show_default=True, help="Columns of a journal's page."
@@ -128,13 +146,15 @@ def figure(
     along: str,
     colour: str,
     bounces: int,
+    s: float,
+    orbits: int,
     width: str,
     force: bool,
 ) -> None:
     """Draw the sweep in PATH as a figure for print: PNG, PDF or SVG by the suffix of FILE."""
     from scanner.figures import Request, write_figure
 
-    request = Request(kind or "", select, average, quantity, along, colour, bounces, width)
+    request = Request(kind or "", select, average, quantity, along, colour, bounces, s, orbits, width)
     with open_store(store) as tree:
         taken = write_figure(tree, target, request, force=force)
     click.echo(f"wrote {target}" + (f", tables at {taken}" if taken else ""), err=True)

@@ -4,27 +4,25 @@ from __future__ import annotations
 
 import warnings
 from pathlib import Path
-from typing import Any
 
 import matplotlib
-import numpy as np
 import xarray as xr
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
 from scanner.analysis import average_tables, pick_tables, replace_whole, study_of, swept_parameters
 from scanner.analysis.sweep import describe
-from scanner.bounce import trace
 from scanner.errors import ScannerError
 from scanner.figures.curves import MOST_LINES, draw_curve, draw_fractions
+from scanner.figures.frequency import GRID, draw_frequency
+from scanner.figures.gaps import draw_gaps
 from scanner.figures.heat_map import draw_map
+from scanner.figures.one_table import follow_anew, rebuild_table, require_one_table
 from scanner.figures.portrait import draw_portrait
-from scanner.figures.request import Request
+from scanner.figures.request import FREQUENCY_BOUNCES, Request
 from scanner.figures.style import STYLE, figure_of, write_title
-from scanner.quantities import DONE, ORBITS, TABLE_STATUS
-from scanner.tables import build_table
+from scanner.quantities import ORBITS
 
-MOST_POINTS = 2_000_000
 DEFAULT_QUANTITY = "regular_area_fraction"
 
 
@@ -55,7 +53,7 @@ def draw_figure(tree: xr.DataTree, request: Request) -> tuple[Figure, str]:
     kind = request.kind or _default_kind(root, request)
     with matplotlib.rc_context(STYLE):  # type: ignore[arg-type]
         axes = _draw(kind, picked, root, request)
-        write_title(axes, study_of(tree).title, _notes(tree, describe(taken), request))
+        write_title(axes, study_of(tree).title, _notes(tree, kind, describe(taken), request))
     return figure_of(axes), describe(taken)
 
 
@@ -81,9 +79,13 @@ def _default_kind(root: xr.Dataset, request: Request) -> str:
 
 
 def _draw(kind: str, picked: xr.DataTree, root: xr.Dataset, request: Request) -> Axes:
-    names = swept_parameters(root)
     if kind == "portrait":
-        return _draw_one_table(picked, names, request)
+        return _draw_portrait(picked, request)
+    if kind == "frequency":
+        return _draw_frequency(picked, request)
+    if kind == "gaps":
+        return draw_gaps(picked, request)
+    names = swept_parameters(root)
     quantity = request.quantity or DEFAULT_QUANTITY
     if quantity not in root:
         choices = ", ".join(str(name) for name in root.data_vars if name != "table_status")
@@ -111,40 +113,35 @@ def _draw(kind: str, picked: xr.DataTree, root: xr.Dataset, request: Request) ->
     return draw_curve(root, quantity, along, request.width)
 
 
-def _draw_one_table(picked: xr.DataTree, names: tuple[str, ...], request: Request) -> Axes:
-    if names or request.average:
-        raise ScannerError(
-            f"a portrait shows one table: give a value of {', '.join([*names, *request.average])} with --select"
-        )
-    status = int(picked["table_status"].item())
-    if status != DONE:
-        raise ScannerError(f"this table has no orbits to draw, its status is {TABLE_STATUS[status]}: select another")
+def _draw_portrait(picked: xr.DataTree, request: Request) -> Axes:
+    require_one_table(picked, "portrait", request)
     orbits = picked[ORBITS].to_dataset()
     s, p = orbits["s0"].values[:, None], orbits["p0"].values[:, None]
     if request.bounces:
-        s, p = _follow_anew(picked, s[:, 0], p[:, 0], request.bounces)
+        s, p = follow_anew(picked, s[:, 0], p[:, 0], request.bounces)
     return draw_portrait(s, p, orbits, request.colour, request.width)
 
 
-def _follow_anew(picked: xr.DataTree, s: np.ndarray, p: np.ndarray, bounces: int) -> tuple[np.ndarray, np.ndarray]:
-    """Follow the orbits of the one table that is left, from where they started."""
-    if s.size * bounces > MOST_POINTS:
-        raise ScannerError(
-            f"{s.size} orbits of {bounces} bounces are {s.size * bounces} points, at most {MOST_POINTS} can be told "
-            f"apart: ask for {MOST_POINTS // s.size} bounces or fewer"
-        )
-    study = study_of(picked)
-    held = {str(name): value.item() for name, value in picked.coords.items() if not value.dims}
-    parameters: dict[str, Any] = {**study.fixed, **held}
-    orbits = trace(build_table(study.family, **parameters), s, p, bounces)
-    return orbits["s"].values, orbits["p"].values
+def _draw_frequency(picked: xr.DataTree, request: Request) -> Axes:
+    require_one_table(picked, "frequency figure", request)
+    bounces = request.bounces or FREQUENCY_BOUNCES
+    return draw_frequency(rebuild_table(picked), request.s, request.orbits, bounces, request.width)
 
 
-def _notes(tree: xr.DataTree, taken: str, request: Request) -> list[str]:
+def _notes(tree: xr.DataTree, kind: str, taken: str, request: Request) -> list[str]:
     study = study_of(tree)
     notes = [note for note in (study.family.replace("_", " "), describe(study.fixed), taken) if note]
     if request.average:
         notes.append(f"mean over {', '.join(request.average)}")
+    if kind == "gaps":
+        return notes
+    if kind == "frequency":
+        return [
+            *notes,
+            f"measured anew: {request.orbits} orbits at s/L = {request.s:g}",
+            f"{GRID[0]} by {GRID[1]} over the section",
+            f"{request.bounces or FREQUENCY_BOUNCES} bounces each",
+        ]
     if study.orbits and study.bounces:
         notes.append(f"{study.orbits} orbits of {study.bounces} bounces a table")
     if request.bounces:

@@ -42,6 +42,7 @@ QUANTITIES = {
 
 ARC_LENGTH = r"arc length $s/L$"
 MOMENTUM = r"$p = \sin\chi$"
+ROTATION = "rotation number"
 VERDICTS = {
     "regular_rotational": "regular, rotational",
     "regular_librational": "regular, librational",

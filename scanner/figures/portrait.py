@@ -49,7 +49,7 @@ def draw_portrait(s: np.ndarray, p: np.ndarray, orbits: xr.Dataset, colouring: s
             chosen = values.values == code
             if name in VERDICT_COLOURS and chosen.any():
                 axes.scatter(s[chosen], p[chosen], color=VERDICT_COLOURS[name], **dots)
-                handles.append(_dot(VERDICT_COLOURS[name], VERDICTS[name]))
+                handles.append(legend_dot(VERDICT_COLOURS[name], VERDICTS[name]))
         add_legend(axes, handles)
     else:
         known = np.isfinite(values.values)
@@ -59,7 +59,7 @@ def draw_portrait(s: np.ndarray, p: np.ndarray, orbits: xr.Dataset, colouring: s
         points = axes.scatter(s[known], p[known], c=each, cmap=COLOUR_MAP, vmin=lowest, **dots)
         axes.figure.colorbar(points, ax=axes, label=quantity_label(values), pad=0.02)
         if not known.all():
-            add_legend(axes, [_dot(GREY, "no value")])
+            add_legend(axes, [legend_dot(GREY, "no value")])
     axes.set_xlim(0.0, 1.0)
     axes.set_ylim(-1.0, 1.0)
     axes.set_xlabel(ARC_LENGTH)
@@ -67,5 +67,6 @@ def draw_portrait(s: np.ndarray, p: np.ndarray, orbits: xr.Dataset, colouring: s
     return axes
 
 
-def _dot(colour: str, text: str) -> Line2D:
+def legend_dot(colour: str, text: str) -> Line2D:
+    """Make a legend entry of one dot."""
     return Line2D([], [], marker="o", linestyle="none", markersize=4, markeredgewidth=0, color=colour, label=text)

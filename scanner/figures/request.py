@@ -5,9 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
-KINDS = ("fractions", "curve", "map", "portrait")
+KINDS = ("fractions", "curve", "map", "portrait", "frequency", "gaps")
 COLOURS = ("verdict", "exponent", "diffusion", "rotation")
 WIDTHS = ("single", "double")
+FREQUENCY_BOUNCES = 1024
+LINE_ORBITS = 1000
 SUFFIXES = (".png", ".pdf", ".svg")
 
 
@@ -22,6 +24,8 @@ class Request:
         ``curve``: one variable against one parameter, a line for each value of a second one.
         ``map``: one variable as colours over two dimensions.
         ``portrait``: the orbits of one table, p against s.
+        ``frequency``: rotation number of one table along a line of the section, and its diffusion over all of it.
+        ``gaps``: length gaps of stored resonances against the amplitude, with fitted powers.
         Empty: the kind that suits how many parameters are left.
     select
         Values at which to hold swept parameters, the nearest stored one is taken.
@@ -30,11 +34,16 @@ class Request:
     quantity
         Variable of a curve or a map; empty for the regular area fraction.
     along
-        Parameter of the horizontal axis of a curve; empty for the one of most values.
+        Parameter of the horizontal axis of a curve or of gaps; empty for the one of most values, or the amplitude.
     colour
         What the colours of a portrait mean, one of `COLOURS`.
     bounces
         Bounces for which a portrait follows each orbit anew; 0 shows the starting points alone.
+        Bounces of each orbit that a frequency figure measures; 0 stands for `FREQUENCY_BOUNCES`.
+    s
+        Arc length, as a fraction of the perimeter, of the line of a frequency figure.
+    orbits
+        Orbits measured along that line.
     width
         ``single`` or ``double`` column.
     """
@@ -46,4 +55,6 @@ class Request:
     along: str = ""
     colour: str = "verdict"
     bounces: int = 0
+    s: float = 0.0
+    orbits: int = LINE_ORBITS
     width: str = "single"

@@ -64,6 +64,17 @@ def new_axes(width: str, height: float) -> Axes:
     return figure.subplots()
 
 
+def new_panels(width: str, height: float) -> tuple[Axes, Axes]:
+    """Make a figure of two plots, one over the other in a single column and side by side in two."""
+    across, up = (2, 1) if width == "double" else (1, 2)
+    figure = Figure(
+        figsize=(COLUMN_INCHES[width], up * height * COLUMN_INCHES["single"]), dpi=300, layout="constrained"
+    )
+    FigureCanvasAgg(figure)
+    first, second = figure.subplots(up, across)
+    return first, second
+
+
 def figure_of(axes: Axes) -> Figure:
     """Return the figure that holds these axes."""
     figure = axes.get_figure(root=True)
@@ -77,7 +88,7 @@ def write_title(axes: Axes, title: str, notes: Sequence[str]) -> None:
     letters = int(15.5 * figure.get_figwidth())
     lines = textwrap.wrap(title, letters, max_lines=2, placeholder=" ...")
     unbroken = (note.replace(" ", "\u00a0") for note in notes)
-    small = textwrap.wrap("; ".join(unbroken), letters, max_lines=3, placeholder=" ...")
+    small = textwrap.wrap("; ".join(unbroken), letters, max_lines=4, placeholder=" ...")
     figure.suptitle("\n".join(lines), x=0.01, ha="left", fontsize=8, fontweight="bold", parse_math=False)
     axes.set_title("\n".join(small), loc="left", fontsize=6.5, parse_math=False)
 

@@ -130,6 +130,25 @@ def test_figure_says_which_table_it_took(call, store, tmp_path):
     assert target.read_bytes().startswith(b"\x89PNG")
 
 
+def test_figure_measures_frequencies_along_a_line(call, store, tmp_path):
+    target = tmp_path / "figure.svg"
+    arguments = [
+        "--select",
+        "amplitude=0.05",
+        "--kind",
+        "frequency",
+        "--s",
+        "0.25",
+        "--orbits",
+        "40",
+        "--bounces",
+        "64",
+    ]
+    status, _, said = call("figure", store, "--to", target, *arguments)
+    assert (status, said) == (0, f"wrote {target}, tables at amplitude = 0.05\n")
+    assert target.stat().st_size > 0
+
+
 def test_figure_follows_orbits_anew(call, store, tmp_path):
     target = tmp_path / "figure.pdf"
     arguments = ["figure", store, "--to", target, "--select", "amplitude=0.05", "--bounces"]

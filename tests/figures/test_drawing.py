@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 import importlib.util
-import itertools
 import subprocess
 import sys
 import warnings
 
 import numpy as np
 import pytest
-from matplotlib.text import Text
+from legibility import assert_legible
 from synthetic import invented_sweep
 
 from scanner.errors import ScannerError
@@ -132,28 +131,7 @@ CASES = [
 @pytest.mark.parametrize(("swept", "request_"), CASES)
 def test_nothing_written_is_cut_off_or_overlaps(swept, request_):
     figure, _ = draw_figure(invented_sweep(swept, title=AWKWARD_TITLE), request_)
-    figure.canvas.draw()
-    renderer = figure.canvas.get_renderer()
-    for text in figure.findobj(Text):
-        if text.get_visible() and text.get_text():
-            box = text.get_window_extent(renderer)
-            inside = box.x0 > -1 and box.y0 > -1 and box.x1 < figure.bbox.x1 + 1 and box.y1 < figure.bbox.y1 + 1
-            assert inside or _is_beyond_the_axis(text, figure), text.get_text()
-    labels = [label for label in figure.axes[0].get_xticklabels() if label.get_text() and not label.get_rotation()]
-    boxes = sorted((label.get_window_extent(renderer) for label in labels), key=lambda box: box.x0)
-    boxes = [box for box in boxes if box.width and figure.axes[0].bbox.x0 - 1 < (box.x0 + box.x1) / 2]
-    for left, right in itertools.pairwise(boxes):
-        assert left.x1 < right.x0
-
-
-def _is_beyond_the_axis(text, figure):
-    """Ticks outside the limits of their axis exist but are never drawn."""
-    return any(
-        text in axis.get_ticklabels(which="both")
-        and not min(axis.get_view_interval()) <= place <= max(axis.get_view_interval())
-        for axes in figure.axes
-        for axis, place in ((axes.xaxis, text.get_position()[0]), (axes.yaxis, text.get_position()[1]))
-    )
+    assert_legible(figure)
 
 
 @pytest.mark.parametrize(("suffix", "start"), [(".png", b"\x89PNG"), (".pdf", b"%PDF"), (".svg", b"<?xml")])
