@@ -68,7 +68,7 @@ def _sealed_lines(path: Path) -> list[bytes] | None:
     """Read such lines without their checksum; None where the file is missing, torn or altered."""
     try:
         content = path.read_bytes()
-    except FileNotFoundError:
+    except (FileNotFoundError, NotADirectoryError):
         return None
     body = content[: -len(_checksum_line(b""))]
     return body.splitlines() if content == body + _checksum_line(body) else None
@@ -136,7 +136,7 @@ class Ledger:
 
     def listed(self) -> list[int]:
         """Tasks that have a receipt, sound or not, in order."""
-        return sorted(int(path.stem) for path in self._receipts.glob("[0-9]*.json"))
+        return sorted(int(path.stem) for path in self._receipts.glob("*.json") if path.stem.isdecimal())
 
     def receipts(self) -> Iterator[Receipt]:
         """All sound receipts, in the order of their tasks."""

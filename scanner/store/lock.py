@@ -33,6 +33,9 @@ class Holder:
         return cls(socket.gethostname(), os.getpid(), psutil.Process().create_time())
 
 
+NOBODY = Holder("an unknown host", 0, 0.0)
+
+
 class StoreLock:
     """Hold a store while workers write to it.
 
@@ -112,7 +115,7 @@ class StoreLock:
             self._path.rename(aside)
         except FileNotFoundError:
             return
-        if json.loads(aside.read_text()) != asdict(dead):
+        if _read(aside) != dead:
             os.link(aside, self._path)
         aside.unlink()
 
@@ -121,10 +124,17 @@ def look(store: Path) -> tuple[Holder | None, float]:
     """Who holds a store, if anyone, and for how many seconds it has been silent."""
     path = Ledger(store).folder / "lock"
     try:
-        holder = Holder(**json.loads(path.read_text()))
-        return holder, max(0.0, time.time() - path.stat().st_mtime)
+        return _read(path), max(0.0, time.time() - path.stat().st_mtime)
     except FileNotFoundError:
         return None, 0.0
+
+
+def _read(path: Path) -> Holder:
+    """Read who put a lock; one that a power cut left empty is nobody's, and falls free by its silence."""
+    try:
+        return Holder(**json.loads(path.read_text()))
+    except (ValueError, TypeError):
+        return NOBODY
 
 
 def is_running(store: Path) -> bool:

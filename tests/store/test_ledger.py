@@ -68,3 +68,16 @@ def test_a_later_layout_is_refused(tmp_path):
     ledger.found(replace(CHARTER, layout=99))
     with pytest.raises(StoreError, match="layout 99"):
         ledger.charter()
+
+
+def test_a_file_is_not_a_store(tmp_path):
+    path = tmp_path / "file.zarr"
+    path.write_text("text")
+    with pytest.raises(StoreError, match="not a store of this tool"):
+        Ledger(path).charter()
+
+
+def test_a_foreign_file_among_the_receipts_is_none(ledger):
+    ledger.write(RECEIPT, SEALS)
+    ledger.receipt_path(12).with_name("000012 copy.json").write_text("{}")
+    assert ledger.listed() == [12]

@@ -90,3 +90,16 @@ def test_a_lock_taken_by_a_quicker_one_is_given_back(store):
     path = put_lock(store, "quick", 8)
     StoreLock(store)._evict(Holder("slow and dead", 7, 0.0))
     assert json.loads(path.read_text())["host"] == "quick"
+
+
+@pytest.mark.parametrize("torn", ["", "{", "[]", '{"host": "here"}'])
+def test_a_lock_that_does_not_say_whose_it_is_falls_free_by_its_silence(store, torn):
+    path = put_lock(store, "elsewhere", 7)
+    path.write_text(torn)
+    assert is_running(store)
+    with pytest.raises(StoreError, match="on an unknown host"), StoreLock(store):
+        pass
+    os.utime(path, (time.time() - SILENCE_SECONDS - 1,) * 2)
+    with StoreLock(store):
+        assert is_running(store)
+    assert not path.exists()
