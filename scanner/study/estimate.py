@@ -15,7 +15,6 @@ import numpy as np
 from scanner.bounce.lanes import LANES
 from scanner.bounce.resonances import resonance_numbers
 from scanner.indicators import orbit_numbers
-from scanner.indicators.schedule import MINIMUM_BOUNCES
 from scanner.measure import section_points
 from scanner.study.checking import TableCheck, check_table, check_tables
 from scanner.study.limits import check_limits, store_bytes
@@ -154,8 +153,9 @@ def _calibrate(plan: Plan, tables: Iterable[Table], seconds: float) -> float:
         )
         for table in tables
     ]
-    orbit_numbers(*starts[0], MINIMUM_BOUNCES)  # compiles, or loads what is compiled
     bounces = min(orbits.bounces, CALIBRATION_BOUNCES)
+    for start in starts:  # compiles, or loads, every kernel that the timed rounds use: some only tables with islands do
+        orbit_numbers(*start, bounces)
     spent: list[float] = []
     for table, s, p in itertools.cycle(starts):
         begun = time.thread_time()

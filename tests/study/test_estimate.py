@@ -4,6 +4,7 @@ import pytest
 
 from scanner.errors import StudyError
 from scanner.study import check_tables, estimate_cost, make_plan, parse_study
+from scanner.study import estimate as estimate_module
 from scanner.study.limits import store_bytes
 
 TEXT = """\
@@ -76,3 +77,18 @@ def test_the_estimate_knows_of_periodic_orbits():
     without = estimate_cost(make_plan(parse_study(TEXT)), seconds=0.05)
     with_them = estimate_cost(make_plan(parse_study(TEXT + "[resonances]\nperiod_max = 32\n")), seconds=0.05)
     assert with_them.core_hours > 3 * without.core_hours
+
+
+def test_what_is_compiled_on_the_way_is_not_timed(monkeypatch):
+    """A clock that runs 1 us a bounce, and a minute whenever a table is met for the first time."""
+    clock, met = [0.0], set()
+
+    def orbit_numbers(table, s, p, bounces):
+        clock[0] += 1e-6 * len(s) * bounces + (0.0 if table.identity in met else 60.0)
+        met.add(table.identity)
+
+    monkeypatch.setattr(estimate_module.time, "thread_time", lambda: clock[0])
+    monkeypatch.setattr(estimate_module, "orbit_numbers", orbit_numbers)
+    estimate = estimate_cost(make_plan(parse_study(TEXT)), seconds=0.05)
+    assert len(met) == estimate_module.CALIBRATION_TABLES
+    assert estimate.nanoseconds_per_bounce == pytest.approx(1000.0, rel=1e-6)  # rounding of a clock at 240 s
