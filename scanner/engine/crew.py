@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import logging
 from collections.abc import Callable, Iterator
 from contextlib import ExitStack, contextmanager
@@ -93,11 +94,21 @@ def _local_client(stack: ExitStack, workers: int, say: Callable[[str], None]) ->
 def _remote_client(stack: ExitStack, scheduler: str | None, scheduler_file: str | None) -> Client:
     if scheduler is None and scheduler_file is None:
         raise EngineError('runner = "scheduler" needs scheduler or scheduler_file in [resources], or as an option')
-    if scheduler_file is not None and not Path(scheduler_file).exists():
-        raise EngineError(f"{scheduler_file}: no such scheduler file; start `dask scheduler --scheduler-file` first")
     try:
-        client = Client(scheduler, scheduler_file=scheduler_file, timeout=CONNECT_SECONDS)
+        client = Client(scheduler or _address_in(str(scheduler_file)), timeout=CONNECT_SECONDS)
     except (OSError, ValueError) as error:
         where = scheduler or scheduler_file
         raise EngineError(f"{where}: no scheduler answers there ({error}); start `dask scheduler` first") from None
     return stack.enter_context(client)
+
+
+def _address_in(scheduler_file: str) -> str:
+    """Read the address of a scheduler from the file it wrote."""
+    if not Path(scheduler_file).exists():
+        raise EngineError(f"{scheduler_file}: no such scheduler file; start `dask scheduler --scheduler-file` first")
+    try:
+        return str(json.loads(Path(scheduler_file).read_bytes())["address"])
+    except (OSError, ValueError, TypeError, KeyError):
+        raise EngineError(
+            f"{scheduler_file}: not a scheduler file; give the one that `dask scheduler --scheduler-file` writes"
+        ) from None

@@ -144,7 +144,8 @@ def run_study(
         if not run.before.complete:
             try:
                 with hire(study.resources, path, display.say, client, workers, scheduler, scheduler_file) as crew:
-                    run.work(crew)
+                    if not interrupts.requested:
+                        run.work(crew)
             except KeyboardInterrupt:
                 interrupts.requested = True
         return run.finish()

@@ -1,3 +1,6 @@
+import signal
+from contextlib import contextmanager
+
 import pytest
 from distributed import Client, LocalCluster
 from sweeps import everything, fill, grid, results
@@ -138,3 +141,24 @@ def test_nobody_at_the_address_is_one_line(tmp_path, monkeypatch):
     with pytest.raises(EngineError, match=r"tcp://127.0.0.1:1: no scheduler answers there") as caught:
         scanner.run_study(grid(), tmp_path / "grid.zarr", scheduler="tcp://127.0.0.1:1", progress=False)
     assert "\n" not in str(caught.value)
+
+
+@pytest.mark.parametrize("content", ["", "not json", "{}", "[]"])
+def test_a_file_that_no_scheduler_wrote_is_one_line(content, tmp_path):
+    file = tmp_path / "scheduler.json"
+    file.write_text(content)
+    with pytest.raises(EngineError, match=r"scheduler.json: not a scheduler file") as caught:
+        scanner.run_study(grid(), tmp_path / "grid.zarr", scheduler_file=str(file), progress=False)
+    assert "\n" not in str(caught.value)
+
+
+def test_an_interrupt_before_there_are_workers_ends_the_run(tmp_path, monkeypatch):
+    @contextmanager
+    def hire(*_):
+        signal.raise_signal(signal.SIGINT)  # as while the kernels are compiled
+        yield None  # no client: nothing may be asked of it
+
+    monkeypatch.setattr("scanner.engine.sweep.hire", hire)
+    report = scanner.run_study(grid(), tmp_path / "grid.zarr", progress=False)
+    assert report.exit_status == 130
+    assert sweep_progress(tmp_path / "grid.zarr").tasks_finished == 0
