@@ -45,8 +45,8 @@ def draw_gaps(picked: xr.DataTree, request: Request) -> Axes:
         raise ScannerError(
             f"no resonance has a length gap above its floor at {along} > 0: logarithmic axes have nothing to show"
         )
-    axes = new_axes(request.width, 1.05)
     drawn = data.isel(resonance=np.flatnonzero(opened)[:MOST_RESONANCES])
+    axes = new_axes(request.width, 0.9 + 0.02 * drawn.sizes["resonance"])
     handles: list[Artist] = [
         _draw_resonance(axes, drawn.isel(resonance=place), along) for place in range(drawn.sizes["resonance"])
     ]
@@ -91,8 +91,9 @@ def _resonances_along(picked: xr.DataTree, request: Request) -> tuple[xr.Dataset
 
 def _draw_resonance(axes: Axes, data: xr.Dataset, along: str) -> Line2D:
     amplitude, gap = data[along].values.astype(float), data["length_gap"].values
-    colour = CYCLE[(int(data["resonance_period"]) - 2) % len(CYCLE)]
-    marker = MARKERS[(int(data["rotation"]) - 1) % len(MARKERS)]
+    # where the colours start over, other markers tell the periods apart
+    lap, place = divmod(int(data["resonance_period"]) - 2, len(CYCLE))
+    colour, marker = CYCLE[place], MARKERS[(int(data["rotation"]) - 1 + 4 * lap) % len(MARKERS)]
     certain = gap > data["length_gap_floor"].values
     look: dict[str, Any] = {
         "color": colour,
@@ -117,7 +118,7 @@ def power_text(slope: float, error: float, points: int) -> str:
     """Write a fitted power and its standard error, which two points do not have."""
     if points < 3:
         return f"{slope:.2f} (two points)"
-    decimals = int(np.clip(1 - np.floor(np.log10(max(error, 1e-4))), 1, 3 if error > 5e-4 else 4))
+    decimals = int(np.clip(1 - np.floor(np.log10(max(error, 1e-4))), 1, 3))
     return f"{slope:.{decimals}f} $\\pm$ {error:.{decimals}f}"
 
 

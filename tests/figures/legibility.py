@@ -16,6 +16,9 @@ def assert_legible(figure):
             box = text.get_window_extent(renderer)
             inside = box.x0 > -1 and box.y0 > -1 and box.x1 < figure.bbox.x1 + 1 and box.y1 < figure.bbox.y1 + 1
             assert inside or _is_beyond_the_axis(text, figure), text.get_text()
+    for legend in figure.legends:
+        box = legend.get_window_extent(renderer)
+        assert -1 < box.x0 < box.x1 < figure.bbox.x1 + 1
     for axes in figure.axes:
         labels = [label for label in axes.get_xticklabels() if label.get_text() and not label.get_rotation()]
         boxes = sorted((label.get_window_extent(renderer) for label in labels), key=lambda box: box.x0)

@@ -21,7 +21,7 @@ GAPS = Request(kind="gaps")
 
 def sweep_with_gaps(period_max=4, *, swept=None, powers=(1, 5, 2)):
     """Gaps of exact powers of the amplitude, rounded by half the floor; the last table is not convex."""
-    tree = invented_sweep(swept or {"amplitude": [0.0, *AMPLITUDES, 0.2]}, convex_below=0.95)
+    tree = invented_sweep(swept or {"amplitude": [0.0, *AMPLITUDES.tolist(), 0.2]}, convex_below=0.95)
     dims, shape = tree["table_status"].dims, tree["table_status"].shape
     rotations = rotations_up_to(period_max)
     amplitude = tree[dims[0]].values.reshape(-1, *[1] * len(shape))
@@ -45,8 +45,8 @@ def legend_of(figure):
 def test_powers_put_in_come_out():
     figure, _ = draw_figure(sweep_with_gaps(), GAPS)
     names = legend_of(figure)
-    assert names[0] == r"1/2: power 1.0000 $\pm$ 0.0000"
-    assert names[2] == r"1/4: power 2.0000 $\pm$ 0.0000"
+    assert names[0] == r"1/2: power 1.000 $\pm$ 0.000"
+    assert names[2] == r"1/4: power 2.000 $\pm$ 0.000"
     assert names[3] == "floor of the gap"
     assert figure.axes[0].get_xscale() == figure.axes[0].get_yscale() == "log"
 
