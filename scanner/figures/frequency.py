@@ -102,9 +102,7 @@ def _plateaus(orbits: xr.Dataset) -> Iterator[tuple[float, str]]:
 def _draw_image(axes: Axes, table: Table, bounces: int) -> None:
     across, up = np.meshgrid(cell_centres(0.0, 1.0, GRID[0]), cell_centres(-1.0, 1.0, GRID[1]))
     diffusion = measure_orbits(table, across.ravel(), up.ravel(), bounces)["frequency_diffusion"]
-    # A frequency changes by less than one; grey is left where none was found, as for an island of unknown winding.
-    diffusion = diffusion.where(diffusion <= 0.0)
-    axes.set_facecolor(GREY)
+    axes.set_facecolor(GREY)  # seen where no frequency was found, as for an island of unknown winding
     mesh = axes.imshow(
         diffusion.values.reshape(across.shape),
         origin="lower",

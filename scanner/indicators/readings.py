@@ -51,8 +51,10 @@ class Readings:
 
 
 def digits_of(change: Floats) -> Floats:
-    """Decimal digits of agreement, -log10 of a change, at most MOST_DIGITS."""
-    return -log10_array(np.maximum(np.abs(change), 10.0**-MOST_DIGITS))
+    """Decimal digits of agreement, -log10 of a change, at most MOST_DIGITS; NaN where the change is not known."""
+    known = np.isfinite(change)
+    digits = -log10_array(np.maximum(np.abs(np.where(known, change, 1.0)), 10.0**-MOST_DIGITS))
+    return np.where(known, digits, np.nan)
 
 
 def read_streams(streams: Streams, schedule: Schedule, number: int, chord_scale: float) -> Readings:
