@@ -125,12 +125,13 @@ def _recording_failure(result: CellResult, place: Index, index: Index) -> Iterat
     """Turn whatever a table raises into a failure of that table alone.
 
     Running out of memory says nothing about the table: it is passed on, for the task to be tried again elsewhere.
+    The user's own function may also call ``sys.exit``, which would end the worker.
     """
     try:
         yield
     except MemoryError:
         raise
-    except Exception as error:
+    except (Exception, SystemExit) as error:
         reason = " ".join(str(error).split()) or "no reason given"
         result.record_failure(
             place, index, reason if isinstance(error, ScannerError) else f"{type(error).__name__}: {reason}"

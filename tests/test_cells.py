@@ -120,6 +120,16 @@ def test_a_table_whose_code_raises_fails_alone_with_one_line(own_shapes):
     assert np.isfinite(result.groups[ROOT]["perimeter"]).tolist() == [True, False]
 
 
+def test_a_table_whose_code_ends_the_program_fails_alone(own_shapes, monkeypatch):
+    def leave(*_, **__):
+        raise SystemExit(3)
+
+    monkeypatch.setattr(cells, "build_table", leave)
+    result = compute(own_shapes, own_shapes.tasks[0])
+    assert result.groups[ROOT]["table_status"].tolist() == [FAILED, FAILED]
+    assert result.failures == [((0,), "SystemExit: 3"), ((1,), "SystemExit: 3")]
+
+
 def test_a_failure_after_the_orbits_leaves_no_half_result(plan, monkeypatch):
     def fail(*_):
         raise ZeroDivisionError("nothing to divide by")

@@ -50,7 +50,7 @@ def check_table(plan: Plan, index: Index, parameters: dict[str, Value]) -> Table
         table = build_table(plan.study.family, allow_code=plan.study.allow_code, **parameters)
     except TableError as error:
         return TableCheck(index, parameters, None, "failed", str(error))
-    except Exception as error:  # the user's own function may raise anything
+    except (Exception, SystemExit) as error:  # the user's own function may raise anything
         return TableCheck(index, parameters, None, "failed", " ".join(f"{type(error).__name__}: {error}".split()))
     if table.is_convex:
         return TableCheck(index, parameters, table, "convex")

@@ -15,8 +15,12 @@ from scanner.study.model import Number, Value
 from scanner.study.ranges import MOST_TABLES, Listed, Range, as_float, list_values, require_whole, spread_values
 from scanner.tables import FAMILIES, Parameter
 
-TAKEN = {name for _, name in REGISTER} | {dim for quantity in REGISTER.values() for dim in quantity.dims}
-"""Names in the store that no dimension of a sweep may have."""
+TAKEN = {
+    *(name for entry in REGISTER for name in entry),
+    *(dim for quantity in REGISTER.values() for dim in quantity.dims),
+    *("rotation", "resonance_period"),
+}
+"""Names in the store that no dimension of a sweep may have: of groups, variables, dimensions and coordinates."""
 
 
 @dataclass(frozen=True)
@@ -131,7 +135,9 @@ def _read_swept(parameter: Parameter | None, entry: Mapping[str, object], path: 
             f"{path} = {shown(entry)} must be one line of text, which cannot be swept: write one study each"
         )
     if path.removeprefix("table.") in TAKEN:
-        raise StudyError(f"{path} cannot be swept: the store has a variable of that name; rename the parameter")
+        raise StudyError(
+            f"{path} cannot be swept: the store has a variable or group of that name; rename the parameter"
+        )
     if "values" in entry:
         listed = read_section(Listed, entry, path)
         for index, value in enumerate(listed.values):

@@ -58,9 +58,10 @@ def _read_module(family: str) -> bytes:
     """Import the user's own function and read the file of its module; what that imports in turn is not looked at."""
     try:
         find_function(family)
-    except TableError as error:
+    except (TableError, SystemExit) as error:
+        reason = error if isinstance(error, TableError) else f"its module ends the program when imported ({error})"
         raise StudyError(
-            f"table.family = {shown(family)}: {error}; correct the name, or run from the folder of the module"
+            f"table.family = {shown(family)}: {reason}; correct the name, or run from the folder of the module"
         ) from None
     file = sys.modules[family.partition(":")[0]].__file__
     return Path(file).read_bytes() if file else b""

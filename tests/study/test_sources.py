@@ -98,6 +98,16 @@ def test_own_code_that_raises_is_a_failed_table(tmp_path, monkeypatch):
     assert "\n" not in checks[1].reason
 
 
+def test_own_code_that_ends_the_program_is_told(tmp_path, monkeypatch):
+    monkeypatch.chdir(tmp_path)
+    (tmp_path / "own_ending.py").write_text("raise SystemExit(3)")
+    with pytest.raises(StudyError, match=r"its module ends the program when imported \(3\)"):
+        parse_study(OWN.replace("MODULE", "own_ending"), allow_code=True)
+    (tmp_path / "own_leaving.py").write_text("def make(**_):\n    raise SystemExit(3)")
+    study = parse_study(OWN.replace("MODULE", "own_leaving"), allow_code=True)
+    assert {(check.state, check.reason) for check in check_tables(make_plan(study))} == {("failed", "SystemExit: 3")}
+
+
 @pytest.mark.parametrize(
     ("old", "new", "message"),
     [
@@ -107,6 +117,8 @@ def test_own_code_that_raises_is_a_failed_table(tmp_path, monkeypatch):
         ("waves = 3", '"my key" = 3', r'table\."my key" must be the name of a parameter'),
         ("waves = 3", 'waves = "3"', r'table\.waves = "3" must be a finite number'),
         ("waves = 3", "area = { values = [1] }", r"table\.area cannot be swept: the store has a variable .* rename"),
+        ("waves = 3", "orbits = { values = [1] }", r"table\.orbits cannot be swept: the store has a variable or group"),
+        ("waves = 3", "rotation = { values = [1] }", r"table\.rotation cannot be swept: the store has"),
         ("waves = 3", "orbit = { values = [1] }", r"table\.orbit cannot be swept: the store has a variable .* rename"),
     ],
 )
