@@ -15,7 +15,7 @@ from scanner.analysis.files import check_target, replace_whole
 from scanner.analysis.rows import blocks, stored_steps, to_rows
 from scanner.analysis.sweep import swept_parameters
 from scanner.errors import ScannerError
-from scanner.quantities import DONE, ORBITS, TABLE_STATUS
+from scanner.quantities import DONE, ORBITS, ROOT, TABLE_STATUS, in_group
 
 SUFFIXES = (".nc", ".csv", ".parquet")
 
@@ -56,14 +56,20 @@ def export_sweep(tree: xr.DataTree, target: Path, *, orbits: bool = False, force
 def _frames(tree: xr.DataTree, *, orbits: bool) -> Iterator[pd.DataFrame]:
     """Rows of tables or of orbits, in blocks of bounded size."""
     names = swept_parameters(tree)
-    root = tree.to_dataset()
+    root = _in_order(tree.to_dataset(), ROOT)
     if not orbits:
         yield from (to_rows(block, names) for block in blocks(root, names))
         return
-    with_status = tree[ORBITS].to_dataset().assign(table_status=root["table_status"].drop_encoding())
+    with_status = _in_order(tree[ORBITS].to_dataset(), ORBITS).assign(table_status=root["table_status"].drop_encoding())
     for block in blocks(with_status, [*names, "orbit"]):
         rows = to_rows(block, [*names, "orbit"])
         yield rows[rows["table_status"] == TABLE_STATUS[DONE]].drop(columns="table_status")
+
+
+def _in_order(data: xr.Dataset, group: str) -> xr.Dataset:
+    """Put the variables in the order of the register, others last; a store lists them as its disk does."""
+    known = [quantity.name for quantity in in_group(group) if quantity.name in data]
+    return data[[*known, *sorted(str(name) for name in data.data_vars if name not in known)]]
 
 
 def _write_csv(frames: Iterator[pd.DataFrame], path: Path) -> None:

@@ -18,13 +18,22 @@ to_option = click.option("--to", "target", required=True, metavar="FILE", type=P
 
 
 def _split_selections(_: click.Context, __: click.Parameter, entries: tuple[str, ...]) -> dict[str, str]:
-    found = {}
+    found: dict[str, str] = {}
     for entry in entries:
         name, sign, value = (part.strip() for part in entry.partition("="))
         if not (name and sign and value):
             raise click.BadParameter(f"{entry!r} is not NAME=VALUE, for example --select amplitude=0.05")
+        if name in found:
+            raise click.BadParameter(f"{name} is given twice: keep one of them")
         found[name] = value
     return found
+
+
+def _refuse_repeats(_: click.Context, __: click.Parameter, names: tuple[str, ...]) -> tuple[str, ...]:
+    for name in names:
+        if names.count(name) > 1:
+            raise click.BadParameter(f"{name} is given twice: keep one of them")
+    return names
 
 
 select_option = click.option(
@@ -38,5 +47,6 @@ average_option = click.option(
     "--average",
     multiple=True,
     metavar="NAME",
+    callback=_refuse_repeats,
     help="Average over a swept parameter, such as realisation; may be repeated.",
 )

@@ -41,7 +41,13 @@ def open_store(path: Path) -> Iterator[xr.DataTree]:
 @select_option
 @average_option
 @click.option("--failed", is_flag=True, help="List the tables that failed or are not convex, with reasons.")
-@click.option("--rows", default=40, show_default=True, help="Most rows to show on a terminal; 0 for all.")
+@click.option(
+    "--rows",
+    type=click.IntRange(min=0),
+    default=40,
+    show_default=True,
+    help="Most rows to show on a terminal; 0 for all.",
+)
 @click.option(
     "--format",
     "form",

@@ -113,6 +113,26 @@ def test_rows_of_orbits_are_those_of_the_tables_that_are_done(tmp_path, suffix):
     np.testing.assert_array_equal(one["verdict"], meanings[tree["orbits/verdict"].values[1, 0]])
 
 
+@pytest.mark.parametrize("orbits", [False, True])
+def test_columns_come_in_the_order_of_the_register_however_a_disk_lists_them(tmp_path, orbits):
+    tree = invented_sweep(SWEPT, orbits=ORBITS)
+    turned = {}
+    for node in tree.subtree:
+        data = node.to_dataset(inherit=False)
+        turned[node.path] = data[sorted(data.data_vars, reverse=True)].assign(
+            a_later_variable=tree["table_status"].drop_attrs()
+        )
+        turned[node.path].attrs = data.attrs
+    export_sweep(xr.DataTree.from_dict(turned), tmp_path / "rows.csv", orbits=orbits)
+    columns = (tmp_path / "rows.csv").read_text(encoding="utf-8").splitlines()[0].split(",")
+    assert columns[: 5 - orbits] == (
+        ["amplitude", "harmonic", "orbit", "s0"]
+        if orbits
+        else ["amplitude", "harmonic", "table_status", "regular_area_fraction", "regular_area_fraction_stderr"]
+    )
+    assert columns[-1] == "a_later_variable"
+
+
 def test_blocks_of_a_stored_sweep_come_out_in_the_order_of_the_grid(tmp_path):
     import pandas as pd
 
