@@ -55,18 +55,40 @@ def hire(
     EngineError
         No scheduler answers, or the workers do not start.
     """
+    named = _named_scheduler(resources, scheduler, scheduler_file)
     with ExitStack() as stack:
         if client is not None:
             yield client
-        elif scheduler or scheduler_file:
-            yield _remote_client(stack, scheduler, scheduler_file)
-        elif resources.runner == "scheduler":
-            yield _remote_client(stack, resources.scheduler, resources.scheduler_file)
+        elif named is not None:
+            yield _remote_client(stack, *named)
         elif resources.runner in CLUSTERS:
             stack.enter_context(dask.config.set(PATIENCE))
             yield stack.enter_context(Client(stack.enter_context(batch_cluster(resources, workers, store))))
         else:
             yield _local_client(stack, workers or resources.workers or CPU_COUNT, say)
+
+
+def call_on_scheduler(resources: Resources, scheduler: str | None = None, scheduler_file: str | None = None) -> None:
+    """See whether the running scheduler that ``hire`` would use, if any, answers: before anything is written.
+
+    Raises
+    ------
+    EngineError
+        It does not.
+    """
+    named = _named_scheduler(resources, scheduler, scheduler_file)
+    if named is not None:
+        with ExitStack() as stack:
+            _remote_client(stack, *named)
+
+
+def _named_scheduler(
+    resources: Resources, scheduler: str | None, scheduler_file: str | None
+) -> tuple[str | None, str | None] | None:
+    """Address and file of the running scheduler that is asked for; None where workers are started here."""
+    if scheduler or scheduler_file:
+        return scheduler, scheduler_file
+    return (resources.scheduler, resources.scheduler_file) if resources.runner == "scheduler" else None
 
 
 def _local_client(stack: ExitStack, workers: int, say: Callable[[str], None]) -> Client:

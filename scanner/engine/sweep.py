@@ -11,7 +11,7 @@ from pathlib import Path
 from distributed import Client
 
 from scanner.engine.agenda import Agenda
-from scanner.engine.crew import hire
+from scanner.engine.crew import call_on_scheduler, hire
 from scanner.engine.dispatch import Dispatcher
 from scanner.engine.display import Display, choose_display
 from scanner.engine.interrupts import Interrupts
@@ -137,6 +137,8 @@ def run_study(
         )
     if is_vacant(path):
         check_limits(plan, path)
+        if client is None:
+            call_on_scheduler(study.resources, scheduler, scheduler_file)
     prepare_store(path, plan)
     with StoreLock(path) as lock, log_beside(path), choose_display(progress) as display, Interrupts() as interrupts:
         run = _Run(plan, path, lock, display, interrupts)

@@ -134,6 +134,7 @@ def test_failed_tables_are_listed_and_do_not_stop_the_others(client, tmp_path, m
 def test_no_scheduler_is_one_line(tmp_path):
     with pytest.raises(EngineError, match="no such scheduler file"):
         scanner.run_study(grid(), tmp_path / "grid.zarr", scheduler_file=str(tmp_path / "none.json"), progress=False)
+    assert list(tmp_path.iterdir()) == []
 
 
 def test_nobody_at_the_address_is_one_line(tmp_path, monkeypatch):
@@ -141,6 +142,7 @@ def test_nobody_at_the_address_is_one_line(tmp_path, monkeypatch):
     with pytest.raises(EngineError, match=r"tcp://127.0.0.1:1: no scheduler answers there") as caught:
         scanner.run_study(grid(), tmp_path / "grid.zarr", scheduler="tcp://127.0.0.1:1", progress=False)
     assert "\n" not in str(caught.value)
+    assert list(tmp_path.iterdir()) == []
 
 
 @pytest.mark.parametrize("content", ["", "not json", "{}", "[]"])
