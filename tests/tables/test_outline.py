@@ -55,6 +55,7 @@ def test_amplitude_goes_from_the_best_fit_ellipse_through_the_outline_and_beyond
     assert np.hypot(*(ellipse.harmonics[[0, 2], 0] - [50, -20])) < 1e-3
     undeformed = np.zeros_like(outline.harmonics)
     undeformed[:, :2] = ellipse.harmonics
+    # Exact but for the rounding of numbers up to 50.
     assert beyond.harmonics == pytest.approx(2 * outline.harmonics - undeformed, abs=1e-13)
 
 
@@ -65,6 +66,7 @@ def test_the_ellipse_does_not_depend_on_where_points_are_dense(tmp_path):
         build_table("outline_file", file=write(tmp_path / str(i), *oval(2 * np.pi * turns)), amplitude=0.0)
         for i, turns in enumerate((even, uneven))
     ]
+    # Both fits are to the same smooth curve; their linear systems lose half a dozen digits of 1e-15.
     assert tables[0].harmonics == pytest.approx(tables[1].harmonics, abs=1e-9)
 
 
