@@ -1,3 +1,4 @@
+import os
 import subprocess
 import sys
 
@@ -30,9 +31,10 @@ def test_kernels_are_compiled_once_by_a_process_of_its_own(calls):
     assert calls == [[sys.executable, "-c", COMPILE]] * 2
 
 
-def test_what_is_compiled_is_all_that_a_survey_needs():
-    """Asked in a process of its own of what it had to compile: other tests may fill the same folder meanwhile."""
-    warm_kernels()
+def test_what_is_compiled_is_all_that_a_survey_needs(tmp_path):
+    """Both processes have a folder of their own: other tests fill the usual one meanwhile."""
+    folder = {**os.environ, "SCANNER_CACHE": str(tmp_path)}
+    subprocess.run([sys.executable, "-c", COMPILE], check=True, env=folder)
     script = (
         "import sys\n"
         "import scanner\n"
@@ -46,4 +48,4 @@ def test_what_is_compiled_is_all_that_a_survey_needs():
         "missed = [kernel.__name__ for kernel in kernels if kernel.stats.cache_misses]\n"
         "assert not missed, missed"
     )
-    subprocess.run([sys.executable, "-c", script], check=True)
+    subprocess.run([sys.executable, "-c", script], check=True, env=folder)
