@@ -36,8 +36,8 @@ class Readings:
         The same in decimal digits of agreement.
     exponent
         Growth of the tangent vector per bounce after the transient.
-    growth, late_growth
-        Logarithm of its growth over the whole horizon, and over the second half.
+    growth
+        Logarithm of its growth over the whole horizon.
     """
 
     bounces: int
@@ -47,7 +47,6 @@ class Readings:
     digits: Floats
     exponent: Floats
     growth: Floats
-    late_growth: Floats
 
 
 def digits_of(change: Floats) -> Floats:
@@ -60,7 +59,7 @@ def digits_of(change: Floats) -> Floats:
 def read_streams(streams: Streams, schedule: Schedule, number: int, chord_scale: float) -> Readings:
     """Read the streams at horizon ``number`` of the schedule; chords are compared in units of ``chord_scale``."""
     whole, first, second = schedule.of_window[number]
-    settled, half, end = schedule.of_mark[number]
+    settled, end = schedule.of_mark[number]
     bounces = schedule.horizons[number]
     change = streams.averages[second] - streams.averages[first]
     change[2] /= chord_scale
@@ -74,5 +73,4 @@ def read_streams(streams: Streams, schedule: Schedule, number: int, chord_scale:
         digits=digits_of(disagreement),
         exponent=(streams.growth[end] - streams.growth[settled]) / (bounces - since),
         growth=streams.growth[end],
-        late_growth=streams.growth[end] - streams.growth[half],
     )

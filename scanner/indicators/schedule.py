@@ -44,7 +44,7 @@ class Schedule:
     of_window
         For each horizon its windows: (whole, first half, second half).
     of_mark
-        For each horizon its marks: (end of the transient, half of T, T).
+        For each horizon its marks: (end of the transient, T).
     """
 
     horizons: tuple[int, ...]
@@ -52,7 +52,7 @@ class Schedule:
     weights: npt.NDArray[np.float64]
     marks: npt.NDArray[np.int64]
     of_window: tuple[tuple[int, int, int], ...]
-    of_mark: tuple[tuple[int, int, int], ...]
+    of_mark: tuple[tuple[int, int], ...]
 
 
 @lru_cache(maxsize=256)
@@ -81,7 +81,7 @@ def make_schedule(bounces: int) -> Schedule:
     lengths = sorted({length for _, length in spans})
     pieces = [window_weights(length) for length in lengths]
     starts = dict(zip(lengths, np.cumsum([0, *lengths[:-1]]), strict=True))
-    moments = sorted({moment for end in ends for moment in (end // TRANSIENT, end // 2, end)})
+    moments = sorted({moment for end in ends for moment in (end // TRANSIENT, end)})
     place = {moment: number for number, moment in enumerate(moments)}
     return Schedule(
         horizons=ends,
@@ -89,5 +89,5 @@ def make_schedule(bounces: int) -> Schedule:
         weights=np.concatenate(pieces),
         marks=np.array(moments, dtype=np.int64),
         of_window=tuple((a, b, c) for a, b, c in of_window),
-        of_mark=tuple((place[end // TRANSIENT], place[end // 2], place[end]) for end in ends),
+        of_mark=tuple((place[end // TRANSIENT], place[end]) for end in ends),
     )

@@ -22,8 +22,8 @@ def test_windows_of_a_horizon_lie_where_they_must(bounces: int) -> None:
     for _, length, offset in schedule.windows:
         # A sum of numbers rounded to 1e-16 of their own size.
         assert schedule.weights[offset : offset + length].sum() == pytest.approx(1.0, abs=1e-14)
-    for end, (settled, half_mark, last) in zip(schedule.horizons, schedule.of_mark, strict=True):
-        assert schedule.marks[[settled, half_mark, last]].tolist() == [end // 8, end // 2, end]
+    for end, (settled, last) in zip(schedule.horizons, schedule.of_mark, strict=True):
+        assert schedule.marks[[settled, last]].tolist() == [end // 8, end]
 
 
 def test_powers_of_two_share_windows() -> None:
