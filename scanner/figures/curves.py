@@ -9,9 +9,10 @@ from matplotlib.axes import Axes
 from matplotlib.lines import Line2D
 from matplotlib.patches import Patch
 
+from scanner.figures.colours import BLUE, CYCLE, GREY, VERMILION
 from scanner.figures.labels import parameter_label, quantity_label
 from scanner.figures.scale import Scale, scale_of, spans_without_numbers
-from scanner.figures.style import BLUE, CYCLE, GREY, VERMILION, add_legend, missing_patch, new_axes
+from scanner.figures.style import add_legend, missing_patch, new_axes
 from scanner.quantities import DONE
 
 MOST_LINES = len(CYCLE)

@@ -9,9 +9,10 @@ import xarray as xr
 from matplotlib.axes import Axes
 
 from scanner.errors import ScannerError
+from scanner.figures.colours import COLOUR_MAP, GREY, VERDICT_COLOURS
 from scanner.figures.labels import ARC_LENGTH, MOMENTUM, ROTATION, VERDICTS, quantity_label
 from scanner.figures.portrait import legend_dot
-from scanner.figures.style import COLOUR_MAP, GREY, VERDICT_COLOURS, add_legend, new_panels
+from scanner.figures.style import add_legend, new_panels
 from scanner.indicators import measure_orbits
 from scanner.quantities import VERDICTS as VERDICT_NAMES
 from scanner.tables import Table

@@ -16,9 +16,10 @@ from scipy.stats import linregress
 
 from scanner.analysis import swept_parameters
 from scanner.errors import ScannerError
+from scanner.figures.colours import CYCLE, GREY
 from scanner.figures.labels import parameter_label
 from scanner.figures.request import Request
-from scanner.figures.style import CYCLE, GREY, add_legend, new_axes
+from scanner.figures.style import add_legend, new_axes
 from scanner.quantities import RESONANCES
 
 AMPLITUDE = "amplitude"

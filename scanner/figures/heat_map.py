@@ -7,9 +7,10 @@ import xarray as xr
 from matplotlib.artist import Artist
 from matplotlib.axes import Axes
 
+from scanner.figures.colours import COLOUR_MAP
 from scanner.figures.labels import quantity_label
 from scanner.figures.scale import scale_of
-from scanner.figures.style import COLOUR_MAP, add_legend, missing_patch, new_axes
+from scanner.figures.style import add_legend, missing_patch, new_axes
 from scanner.quantities import DONE, TABLE_STATUS
 
 

@@ -11,7 +11,7 @@ from scanner.analysis import study_of, swept_parameters
 from scanner.bounce import trace
 from scanner.errors import ScannerError
 from scanner.figures.request import Request
-from scanner.quantities import DONE, TABLE_STATUS
+from scanner.quantities import DONE, ORBITS, TABLE_STATUS
 from scanner.tables import Table, build_table
 
 MOST_POINTS = 2_000_000
@@ -27,20 +27,20 @@ def require_one_table(picked: xr.DataTree, kind: str, request: Request) -> None:
         raise ScannerError(f"this table has no orbits to draw, its status is {TABLE_STATUS[status]}: select another")
 
 
-def rebuild_table(picked: xr.DataTree) -> Table:
+def rebuild_table(picked: xr.DataTree, *, allow_code: bool = False) -> Table:
     """Build the one table that is left, from the study and the values at which swept parameters are held."""
     study = study_of(picked)
     held = {str(name): value.item() for name, value in picked.coords.items() if not value.dims}
     parameters: dict[str, Any] = {**study.fixed, **held}
-    return build_table(study.family, **parameters)
+    return build_table(study.family, allow_code=allow_code, **parameters)
 
 
-def follow_anew(picked: xr.DataTree, s: np.ndarray, p: np.ndarray, bounces: int) -> tuple[np.ndarray, np.ndarray]:
-    """Follow the orbits of the one table that is left, from where they started."""
+def follow_anew(table: Table, s: np.ndarray, p: np.ndarray, bounces: int) -> tuple[np.ndarray, np.ndarray]:
+    """Follow orbits from where they started: s and p of shape (orbits, bounces + 1)."""
     if s.size * bounces > MOST_POINTS:
         raise ScannerError(
             f"{s.size} orbits of {bounces} bounces are {s.size * bounces} points, at most {MOST_POINTS} can be told "
             f"apart: ask for {MOST_POINTS // s.size} bounces or fewer"
         )
-    orbits = trace(rebuild_table(picked), s, p, bounces)
+    orbits = trace(table, s, p, bounces)
     return orbits["s"].values, orbits["p"].values

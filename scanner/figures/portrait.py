@@ -10,8 +10,9 @@ from matplotlib.artist import Artist
 from matplotlib.axes import Axes
 from matplotlib.lines import Line2D
 
+from scanner.figures.colours import COLOUR_MAP, GREY, VERDICT_COLOURS
 from scanner.figures.labels import ARC_LENGTH, MOMENTUM, VERDICTS, quantity_label
-from scanner.figures.style import COLOUR_MAP, COLUMN_INCHES, GREY, VERDICT_COLOURS, add_legend, new_axes
+from scanner.figures.style import COLUMN_INCHES, add_legend, new_axes
 from scanner.quantities import VERDICTS as VERDICT_NAMES
 
 COLOURINGS = {

@@ -4,16 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 import xarray as xr
-from matplotlib.axes import Axes
-from matplotlib.axis import Axis
-from matplotlib.ticker import MaxNLocator
 
 from scanner.figures.labels import parameter_label
 from scanner.quantities import DONE, TABLE_STATUS
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+    from matplotlib.axis import Axis
 
 
 @dataclass(frozen=True)
@@ -37,6 +38,8 @@ class Scale:
         (axes.set_xlim if side == "x" else axes.set_ylim)(self.edges[0], self.edges[-1])
         axis.set_label_text(parameter_label(self.name))
         if self.whole and not self.logarithmic:
+            from matplotlib.ticker import MaxNLocator  # here, as scales are of use without matplotlib
+
             axis.set_major_locator(MaxNLocator(integer=True, nbins=8))
 
 

@@ -1,4 +1,4 @@
-"""The look of all figures: column widths, type sizes, colours that the colour-blind can tell apart."""
+"""The look of all figures: column widths, type sizes, legends, marks of what is missing."""
 
 from __future__ import annotations
 
@@ -11,6 +11,8 @@ from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 from matplotlib.patches import Rectangle
 from matplotlib.transforms import Transform
+
+from scanner.figures.colours import MISSING
 
 COLUMN_INCHES = {"single": 3.4, "double": 7.0}
 """Inches of one and of two columns of the usual journals."""
@@ -34,27 +36,6 @@ STYLE = {
     "pdf.fonttype": 42,
     "svg.hashsalt": "scanner",
 }
-
-# Eight colours for all kinds of colour vision: Wong, Nature Methods 8:441, 2011.
-BLUE, ORANGE, GREEN, VERMILION, SKY, PURPLE, YELLOW = (
-    "#0072B2", "#E69F00", "#009E73", "#D55E00", "#56B4E9", "#CC79A7", "#F0E442",
-)  # fmt: skip
-CYCLE = (BLUE, VERMILION, GREEN, PURPLE, ORANGE, SKY, "black", YELLOW)
-GREY = "#8C8C8C"
-VERDICT_COLOURS = {
-    "regular_rotational": BLUE,
-    "regular_librational": GREEN,
-    "chaotic": VERMILION,
-    "undecided": "black",
-}
-COLOUR_MAP = "viridis"
-
-_MISSING = {
-    "not_convex": ("#E6E6E6", "#B4B4B4", "////"),
-    "failed": ("#F6DED1", VERMILION, "xxxx"),
-    "pending": ("white", "#C8C8C8", "...."),
-}
-"""Face, edge and hatch by which a table without numbers is marked, by its status."""
 
 
 def new_axes(width: str, height: float) -> Axes:
@@ -109,7 +90,7 @@ def missing_patch(
     transform: Transform | None = None,
 ) -> Rectangle:
     """Make the hatched rectangle of tables without numbers; without a place, an entry for the legend."""
-    face, edge, hatch = _MISSING[status]
+    face, edge, hatch = MISSING[status]
     patch = Rectangle(corner, width, height, facecolor=face, edgecolor=edge, hatch=hatch, linewidth=0, zorder=0.5)
     patch.set_label(status.replace("_", " "))
     if transform is not None:

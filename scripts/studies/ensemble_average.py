@@ -26,9 +26,10 @@ def draw(averages: xr.Dataset, quantity: xr.DataArray, target: Path) -> None:
     """Draw the mean against the one parameter that is left."""
     import matplotlib
 
+    from scanner.figures.colours import BLUE
     from scanner.figures.drawing import save_figure
     from scanner.figures.labels import parameter_label, quantity_label
-    from scanner.figures.style import BLUE, STYLE, add_legend, figure_of, new_axes
+    from scanner.figures.style import STYLE, add_legend, figure_of, new_axes
 
     (along,) = averages["mean"].dims
     places, mean = averages[along].values, averages["mean"].values

@@ -53,8 +53,9 @@ def draw(spacings: np.ndarray, dynamical: float, fit: RegularPart, target: Path)
     """Draw the spacings as a histogram beside the densities of the orbits and of the fit."""
     import matplotlib
 
+    from scanner.figures.colours import BLUE, GREY, VERMILION
     from scanner.figures.drawing import save_figure
-    from scanner.figures.style import BLUE, GREY, STYLE, VERMILION, add_legend, figure_of, new_axes
+    from scanner.figures.style import STYLE, add_legend, figure_of, new_axes
 
     places = np.linspace(0.0, 4.0, 401)
     with matplotlib.rc_context(STYLE):

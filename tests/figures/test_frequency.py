@@ -9,9 +9,9 @@ from synthetic import invented_sweep
 from scanner import build_table, measure_orbits
 from scanner.errors import ScannerError
 from scanner.figures import Request
+from scanner.figures.colours import GREY, VERDICT_COLOURS
 from scanner.figures.drawing import draw_figure
 from scanner.figures.frequency import GRID
-from scanner.figures.style import GREY, VERDICT_COLOURS
 from scanner.quantities import VERDICTS
 
 BOUNCES = 128

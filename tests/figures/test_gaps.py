@@ -9,9 +9,9 @@ from synthetic import invented_sweep
 
 from scanner.errors import ScannerError
 from scanner.figures import Request
+from scanner.figures.colours import BLUE
 from scanner.figures.drawing import draw_figure
 from scanner.figures.gaps import power_text
-from scanner.figures.style import BLUE
 from scanner.quantities import rotations_up_to
 
 AMPLITUDES = np.geomspace(1e-3, 0.1, 9)
