@@ -8,6 +8,7 @@ import time
 from collections import Counter, deque
 from collections.abc import Callable
 from concurrent.futures import CancelledError
+from dataclasses import dataclass
 from uuid import uuid4
 
 from distributed import Client, Future, KilledWorker
@@ -26,6 +27,30 @@ LONELY_SECONDS = 300.0
 """Time without workers after which that is said, again and again."""
 
 log = logging.getLogger(__name__)
+
+
+@dataclass
+class Losses:
+    """What went wrong in a run and was made good.
+
+    Attributes
+    ----------
+    workers
+        Workers that were lost; those that left in good order do not count.
+    retries
+        Tasks that raised and were tried again.
+    repeated
+        Tasks that were given to another worker because theirs was gone.
+    """
+
+    workers: int = 0
+    retries: int = 0
+    repeated: int = 0
+
+    def __str__(self) -> str:
+        """Append to a line about a run; empty where nothing went wrong."""
+        counts = {"workers lost": self.workers, "tasks tried again": self.retries, "tasks repeated": self.repeated}
+        return "".join(f", {count} {what}" for what, count in counts.items() if count)
 
 
 class Dispatcher:
@@ -57,6 +82,7 @@ class Dispatcher:
     ) -> None:
         self.abandoned: dict[int, str] = {}
         self.workers: dict[str, int] = {}
+        self.losses = Losses()
         self._client = client
         self._order = order
         self._agenda = agenda
@@ -120,7 +146,7 @@ class Dispatcher:
         except (OSError, TimeoutError) as error:
             raise self._scheduler_gone() from error
         for address in self.workers.keys() - present.keys():
-            log.warning("worker %s is gone; what it had begun will be computed again", address)
+            self._note_departure(address)
         for address in present.keys() - self.workers.keys():
             log.info("worker %s has joined", address)
         self.workers = present
@@ -129,6 +155,18 @@ class Dispatcher:
         elif time.monotonic() - self._lonely_since > LONELY_SECONDS:
             self._lonely_since = time.monotonic()
             self._say(f"no workers for {LONELY_SECONDS / 60:.0f} minutes; waiting for some to join, Ctrl-C stops")
+
+    def _note_departure(self, address: str) -> None:
+        """Tell whether a worker left in good order, at the end of its job's time say, or was lost."""
+        events = (event for _, event in self._client.get_events(address))
+        farewell = next((event for event in events if event.get("action") == "remove-worker"), {})
+        unfinished = sum(key.startswith(f"scanner-{self._run}-") for key in farewell.get("processing-tasks", ()))
+        self.losses.repeated += unfinished
+        if farewell.get("expected"):
+            log.info("worker %s has left in good order", address)
+        else:
+            self.losses.workers += 1
+            log.warning("worker %s is gone; the %d tasks it had are given to others", address, unfinished)
 
     def _fill_window(self) -> None:
         threads = max(1, sum(self.workers.values()))
@@ -164,6 +202,7 @@ class Dispatcher:
         if self._client.status != "running":
             raise self._scheduler_gone()
         log.warning("task %d was lost (%s); submitting it again", number, error)
+        self.losses.repeated += 1
         self._agenda.give_back(number)
 
     def _take_failure(self, number: int, error: BaseException) -> None:
@@ -172,6 +211,7 @@ class Dispatcher:
             self._deaths[number] += 1
             log.warning("task %d lost its workers (%d): %s", number, self._deaths[number], reason)
             if self._deaths[number] < ATTEMPTS:
+                self.losses.repeated += 1
                 self._suspects.append(number)
             else:
                 self.abandoned[number] = "its workers died again and again while computing it"
@@ -183,6 +223,7 @@ class Dispatcher:
                 f"task {number} failed {ATTEMPTS} times, last with {type(error).__name__}: {reason}; "
                 "mend that and run the same study on the same store to carry on"
             )
+        self.losses.retries += 1
         self._agenda.give_back(number)
 
     def _scheduler_gone(self) -> EngineError:

@@ -5,14 +5,14 @@ from __future__ import annotations
 import logging
 import time
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 
 from distributed import Client
 
 from scanner.engine.agenda import Agenda
 from scanner.engine.crew import call_on_scheduler, hire
-from scanner.engine.dispatch import Dispatcher
+from scanner.engine.dispatch import Dispatcher, Losses
 from scanner.engine.display import Display, choose_display
 from scanner.engine.interrupts import Interrupts
 from scanner.engine.journal import log_beside
@@ -23,9 +23,11 @@ from scanner.store import (
     Ledger,
     StoreLock,
     SweepProgress,
+    check_numerics,
     is_vacant,
     note_finish,
     prepare_store,
+    refuse_losses,
     remove_leftovers,
     sweep_progress,
 )
@@ -56,6 +58,8 @@ class SweepReport:
         Whether Ctrl-C ended the run before everything was finished.
     seconds, bounces
         Duration of this run, from when there were workers, and what it computed.
+    losses
+        What went wrong in this run and was made good: workers lost, tasks tried again, tasks repeated.
     """
 
     store: Path
@@ -66,6 +70,7 @@ class SweepReport:
     interrupted: bool
     seconds: float
     bounces: int
+    losses: Losses = field(default_factory=Losses)
 
     @property
     def exit_status(self) -> int:
@@ -77,7 +82,7 @@ class SweepReport:
         failed = f", {len(self.failures)} failed" if self.failures else ""
         state = f"{self.store}: {self.done} of {self.tables} tables done, {self.not_convex} not convex{failed}"
         rate = f"{self.bounces / max(self.seconds, 1e-3) / 1e6:.1f} M bounces/s"
-        return f"{state}; this run took {clock(self.seconds)} at {rate}"
+        return f"{state}; this run took {clock(self.seconds)} at {rate}{self.losses}"
 
 
 def run_study(
@@ -141,7 +146,10 @@ def run_study(
             call_on_scheduler(study.resources, scheduler, scheduler_file)
     prepare_store(path, plan)
     with StoreLock(path) as lock, log_beside(path), choose_display(progress) as display, Interrupts() as interrupts:
+        refuse_losses(path)
         run = _Run(plan, path, lock, display, interrupts)
+        if not run.before.complete:
+            check_numerics(path)
         check_limits(plan, path, 1.0 - run.before.tasks_finished / run.before.tasks)
         if not run.before.complete:
             try:
@@ -167,6 +175,7 @@ class _Run:
         self._bounces = 0
         self._reported: set[int] = set()
         self._abandoned: dict[int, str] = {}
+        self._losses = Losses()
         self.before = sweep_progress(path)
         log.info(
             "%s",
@@ -181,7 +190,7 @@ class _Run:
         self._tally = Tally(self.before)
         agenda = Agenda(self._plan, self.before.finished)
         dispatcher = Dispatcher(client, self._order(), agenda, self._land, self._say)
-        self._abandoned = dispatcher.abandoned
+        self._abandoned, self._losses = dispatcher.abandoned, dispatcher.losses
         log.info("%s", f"scheduler {client.scheduler.addr}, dashboard {client.dashboard_link}")
         draining = False
         while dispatcher.turn():
@@ -211,6 +220,7 @@ class _Run:
             interrupted=self._interrupts.requested and not after.complete,
             seconds=time.monotonic() - self._started,
             bounces=self._bounces,
+            losses=self._losses,
         )
         log.info("%s", str(report))
         for line in report.failures:
