@@ -17,6 +17,8 @@ REGULAR_ROTATIONAL, REGULAR_LIBRATIONAL, CHAOTIC, UNDECIDED = range(1, 5)
 
 P_BINS = 20
 PERIODS = tuple(range(2, 65))
+DIRECTIONS = ("forward", "backward")
+"""Along the boundary, p > 0, and against it."""
 CURVES = tuple(1.0 / (whole + 0.5 * (math.sqrt(5.0) - 1.0)) for whole in (2, 3, 4))
 """Rotation numbers of curves that are the last to break nearby: they lie between 1/2, 1/3, 1/4 and 1/5."""
 
@@ -78,6 +80,10 @@ def _resonance(name: str, long_name: str, units: str = "1", reference: str = "")
     return Quantity(name, RESONANCES, ("resonance",), "float64", units, long_name, reference)
 
 
+def _curve(name: str, long_name: str) -> Quantity:
+    return Quantity(name, RESONANCES, ("curve",), "float64", "1", long_name, _GREENE)
+
+
 _SANTALO = "Santalo, Integral Geometry and Geometric Probability, 1976; Chernov, J. Stat. Phys. 88:1, 1997"
 _WEIGHTED = "Das, Saiki, Sander and Yorke, Nonlinearity 30:4111, 2017"
 _LASKAR = "Laskar, Icarus 88:266, 1990"
@@ -109,10 +115,8 @@ _QUANTITIES = (
     _root("rotational_area_fraction", "fraction of the section area on rotational invariant curves"),
     _root("librational_area_fraction", "fraction of the section area inside islands"),
     _root("regular_area_fraction_by_p", "regular fraction of the section area in a bin of p", "p_bin"),
-    _root("rotational_band_p_forward", "|p| beyond which every sampled orbit with p > 0 is on a rotational curve"),
-    _root("rotational_band_p_forward_error", "distance of that |p| from the next sampled orbit below"),
-    _root("rotational_band_p_backward", "|p| beyond which every sampled orbit with p < 0 is on a rotational curve"),
-    _root("rotational_band_p_backward_error", "distance of that |p| from the next sampled orbit below"),
+    _root("rotational_band_p", "|p| beyond which the sampled orbits are on rotational curves", "direction"),
+    _root("rotational_band_p_error", "error of that |p| from the sampling and from undecided orbits", "direction"),
     _root("rotation_range_min", "smallest rotation number of the sampled rotational curves, folded to [0, 1/2]"),
     _root("rotation_range_max", "largest rotation number of the sampled rotational curves, folded to [0, 1/2]"),
     _root("island_area_fraction", "fraction of the section area in islands of period q", "period"),
@@ -195,15 +199,9 @@ _QUANTITIES = (
         reference=_GREENE,
         flags=CURVE_FATES,
     ),
-    Quantity(
-        "curve_residue",
-        RESONANCES,
-        ("curve",),
-        "float64",
-        "1",
-        "residue of the longest periodic orbit that the fate of the curve was judged by",
-        reference=_GREENE,
-    ),
+    _curve("curve_growth", "growth of log residue with the period q of the orbits closing in on the curve"),
+    _curve("curve_growth_error", "standard error of that growth"),
+    _curve("curve_residue", "residue of the longest periodic orbit that the fate of the curve was judged by"),
 )
 
 REGISTER: dict[tuple[str, str], Quantity] = {(entry.group, entry.name): entry for entry in _QUANTITIES}

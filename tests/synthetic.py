@@ -8,6 +8,7 @@ import numpy as np
 import xarray as xr
 
 from scanner.quantities import (
+    DIRECTIONS,
     DONE,
     NOT_CONVEX,
     P_BINS,
@@ -47,6 +48,7 @@ def invented_sweep(
         "replicate": REPLICATES,
         "p_bin": P_BINS,
         "period": len(PERIODS),
+        "direction": len(DIRECTIONS),
     }
     coords = {
         **{name: list(values) for name, values in swept.items()},
@@ -54,6 +56,7 @@ def invented_sweep(
         "replicate": np.arange(REPLICATES),
         "p_bin": -1.0 + (np.arange(P_BINS) + 0.5) * 2.0 / P_BINS,
         "period": list(PERIODS),
+        "direction": list(DIRECTIONS),
     }
 
     def label(quantity: Quantity, values: np.ndarray) -> xr.Variable:

@@ -33,7 +33,7 @@ def to_rows(data: xr.Dataset, dims: Sequence[str]) -> pd.DataFrame:
     for name, variable in data.data_vars.items():
         further = [str(dim) for dim in variable.dims if dim not in dims]
         places = itertools.product(*(_labels(data, dim) for dim in further))
-        suffixes = ["".join(f"_{label:.6g}" for label in place) for place in places]
+        suffixes = ["".join(f"_{_short(label)}" for label in place) for place in places]
         full = variable.variable.set_dims({dim: data.sizes[dim] for dim in (*dims, *further)})  # type: ignore[no-untyped-call]
         values = _words(full.values.reshape(rows, len(suffixes)), variable.attrs)
         columns.update({f"{name}{suffix}": values[:, place] for place, suffix in enumerate(suffixes)})
@@ -66,6 +66,10 @@ def stored_steps(data: xr.Dataset) -> dict[str, int]:
 def _labels(data: xr.Dataset, name: str) -> np.ndarray:
     found: np.ndarray = data[name].values if name in data.coords else np.arange(data.sizes[name])
     return found
+
+
+def _short(label: object) -> str:
+    return label if isinstance(label, str) else f"{label:.6g}"
 
 
 def _words(values: np.ndarray, attributes: Mapping[str, object]) -> np.ndarray:

@@ -21,7 +21,7 @@ if TYPE_CHECKING:
 class Scale:
     """Positions and cell edges of a parameter's values along an axis.
 
-    ``positions`` has one entry a value and ``edges`` one more.
+    ``positions`` has one entry a value and ``edges`` one more; values that are words have ``words`` at them.
     """
 
     name: str
@@ -29,6 +29,7 @@ class Scale:
     edges: np.ndarray
     logarithmic: bool
     whole: bool
+    words: tuple[str, ...] = ()
 
     def dress(self, axes: Axes, side: Literal["x", "y"]) -> None:
         """Give one side of the axes its label, limits, ticks and kind of scale."""
@@ -37,7 +38,9 @@ class Scale:
             (axes.set_xscale if side == "x" else axes.set_yscale)("log")
         (axes.set_xlim if side == "x" else axes.set_ylim)(self.edges[0], self.edges[-1])
         axis.set_label_text(parameter_label(self.name))
-        if self.whole and not self.logarithmic:
+        if self.words:
+            axis.set_ticks(self.positions, self.words)
+        elif self.whole and not self.logarithmic:
             from matplotlib.ticker import MaxNLocator  # here, as scales are of use without matplotlib
 
             axis.set_major_locator(MaxNLocator(integer=True, nbins=8))
@@ -46,6 +49,9 @@ class Scale:
 def scale_of(data: xr.Dataset | xr.DataArray, name: str) -> Scale:
     """Find the axis that suits the values of one dimension."""
     values = data[name].values
+    if values.dtype.kind not in "iuf":
+        positions = np.arange(len(values))
+        return Scale(name, positions, np.arange(len(values) + 1) - 0.5, False, True, tuple(map(str, values)))
     positions, whole = values.astype(float), values.dtype.kind in "iu"
     if len(positions) == 1:
         return Scale(name, positions, positions[0] + np.array([-0.5, 0.5]), False, whole)

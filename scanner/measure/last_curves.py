@@ -10,17 +10,20 @@ import numpy.typing as npt
 
 from scanner.bounce.resonances import resonance_numbers
 from scanner.errors import TableError
-from scanner.measure.residues import LARGE, Fate, convergents, judge_residues
-from scanner.quantities import CURVE_FATES, CURVES, REGULAR_ROTATIONAL
+from scanner.measure.residues import Fate, convergents, judge_residues
+from scanner.quantities import CURVE_FATES, CURVES, REGULAR_ROTATIONAL, UNDECIDED
 from scanner.tables import Table
 
 Floats = npt.NDArray[np.float64]
+Codes = npt.NDArray[np.int8]
 
 LONGEST_ORBIT = 55
 """Bounces of the longest orbits that are sought by default; time grows as the cube."""
+LARGE = 10.0
+"""Residue beyond which no longer orbits are sought of a curve that is broken: they would tell the same."""
 
 
-def last_curves(p: Floats, rotation: Floats, verdict: npt.NDArray[np.int8]) -> dict[str, float]:
+def last_curves(p: Floats, rotation: Floats, verdict: Codes) -> dict[str, float | Floats]:
     """Reach of the rotational curves from the sampled orbits of a table.
 
     Parameters
@@ -31,23 +34,51 @@ def last_curves(p: Floats, rotation: Floats, verdict: npt.NDArray[np.int8]) -> d
     Returns
     -------
     dict
-        ``rotational_band_p_forward`` and ``_backward``: smallest |p| of the orbits of one direction with nothing but
-        rotational curves beyond them, 1 if there are none; ``_error`` is how far below the next orbit lies, so that
-        the band ends in between.  ``rotation_range_min`` and ``_max``: of all rotational curves, rotation numbers
-        beyond 1/2 taken from 1; NaN if there are none.
+        ``rotational_band_p`` and ``_error``, shape (2,): ``find_band`` for p > 0 and for p < 0.
+        ``rotation_range_min`` and ``_max``: of all rotational curves, rotation numbers beyond 1/2 taken from 1; NaN
+        if there are none.
+    """
+    bands = np.array([find_band(np.abs(p[side]), verdict[side]) for side in (p > 0.0, p < 0.0)])
+    rotational = verdict == REGULAR_ROTATIONAL
+    folded = np.minimum(rotation, 1.0 - rotation)[rotational]
+    return {
+        "rotational_band_p": bands[:, 0],
+        "rotational_band_p_error": bands[:, 1],
+        "rotation_range_min": float(folded.min()) if folded.size else math.nan,
+        "rotation_range_max": float(folded.max()) if folded.size else math.nan,
+    }
+
+
+def find_band(height: Floats, verdict: Codes) -> tuple[float, float]:
+    """Smallest |p| beyond which all sampled orbits of one direction are on rotational curves.
+
+    The band cannot begin below the highest orbit that is chaotic or in an island, and begins at the next rotational
+    one above that, if the undecided orbits beyond turn out rotational too.  If none of them does, it begins at the
+    next rotational orbit above all others.  So doubt enlarges the error and does not move the band.
+
+    Parameters
+    ----------
+    height, verdict
+        Shape (orbits,): |p| and verdict of the orbits of that direction.
+
+    Returns
+    -------
+    band, error
+        1 if there is no band.  Where it really begins, as far as these orbits tell, is within the error.
     """
     rotational = verdict == REGULAR_ROTATIONAL
-    found = {}
-    for name, side in (("forward", p > 0.0), ("backward", p < 0.0)):
-        height, curve = np.abs(p[side]), rotational[side]
-        others = float(height[~curve].max(initial=0.0))
-        band = float(height[height > others].min(initial=1.0))
-        found[f"rotational_band_p_{name}"] = band
-        found[f"rotational_band_p_{name}_error"] = band - others
-    folded = np.minimum(rotation, 1.0 - rotation)[rotational]
-    found["rotation_range_min"] = float(folded.min()) if folded.size else math.nan
-    found["rotation_range_max"] = float(folded.max()) if folded.size else math.nan
-    return found
+    below = _highest(height[~rotational & (verdict != UNDECIDED)])
+    band = _lowest(height[rotational & (height > below)])
+    doubtful = _lowest(height[rotational & (height > _highest(height[~rotational]))])
+    return band, max(band - below, doubtful - band)
+
+
+def _highest(height: Floats) -> float:
+    return float(height.max(initial=0.0))
+
+
+def _lowest(height: Floats) -> float:
+    return float(height.min(initial=1.0))
 
 
 @dataclass(frozen=True)
@@ -62,6 +93,9 @@ class CurveFate:
         Rotations (p, q) of the periodic orbits that were used, shortest first.
     residues
         Residue of the minimax orbit of each; NaN where it was not found.
+    growth, growth_error
+        They go as (1/4) exp(growth q): below 0 where the curve survives, 0 at the break; NaN where they are rounding
+        or too few.
     fate
         "survives", "broken" or "undecided".
     """
@@ -69,6 +103,8 @@ class CurveFate:
     rotation: float
     orbits: tuple[tuple[int, int], ...]
     residues: tuple[float, ...]
+    growth: float
+    growth_error: float
     fate: Fate
 
 
@@ -95,17 +131,22 @@ def curve_fate(table: Table, rotation: float = CURVES[0], longest_orbit: int = L
     except ValueError as problem:
         raise TableError(f"{problem}: give the mean advance of a bounce in perimeters") from None
     residues: list[float] = []
-    for p, q in orbits:
-        residues.append(float(resonance_numbers(table, [(p, q)])["residue_minimax"][0]))
-        if residues[-1] > LARGE and judge_residues(residues) == "broken":
+    judged = judge_residues([], residues)
+    for number, orbit in enumerate(orbits, 1):
+        residues.append(float(resonance_numbers(table, [orbit])["residue_minimax"][0]))
+        judged = judge_residues([q for _, q in orbits[:number]], residues)
+        if residues[-1] > LARGE and judged.fate == "broken":
             break
-    return CurveFate(rotation, tuple(orbits[: len(residues)]), tuple(residues), judge_residues(residues))
+    used = tuple(orbits[: len(residues)])
+    return CurveFate(rotation, used, tuple(residues), judged.growth, judged.error, judged.fate)
 
 
 def curve_numbers(table: Table) -> dict[str, npt.NDArray[np.generic]]:
-    """Fate and last residue of the curves that every table is asked about, each of shape (curves,)."""
+    """Fate, growth of residues and last residue of the curves that every table is asked about, shape (curves,)."""
     fates = [curve_fate(table, rotation) for rotation in CURVES]
     return {
         "curve_fate": np.array([CURVE_FATES.index(found.fate) for found in fates], dtype=np.int8),
+        "curve_growth": np.array([found.growth for found in fates]),
+        "curve_growth_error": np.array([found.growth_error for found in fates]),
         "curve_residue": np.array([found.residues[-1] for found in fates]),
     }

@@ -1,29 +1,59 @@
 """Greene's criterion: whether an invariant curve survives, from the residues of the periodic orbits closing in on it.
 
-Along the convergents of an irrational rotation number the residues tend to 0 where a curve of that rotation exists
-and grow without bound where it is broken; at the break they stay near 1/4 (Greene, J. Math. Phys. 20:1183, 1979).
-Nothing here knows of a particular map.
+Along the convergents p/q of an irrational rotation number the residues go as (1/4) f^q: to 0 where a curve of that
+rotation exists, without bound where it is broken, with f = 1 at the break (Greene, J. Math. Phys. 20:1183, 1979).
+That they fall at least exponentially in q where the curve exists is proven (Falcolini and de la Llave, J. Stat. Phys.
+67:609, 1992; MacKay, Nonlinearity 5:161, 1992).  Nothing here knows of a particular map.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
+from dataclasses import dataclass
 from fractions import Fraction
 from typing import Literal
 
+import numpy as np
+import numpy.typing as npt
+
+from scanner.elementary import log_array
+
+Floats = npt.NDArray[np.float64]
 Fate = Literal["survives", "broken", "undecided"]
 
 CRITICAL = 0.25
 """Residue of the periodic orbits near a curve that is about to break."""
-SMALL = 0.2 * CRITICAL
-"""Residues of curves that exist fall below this."""
 NOTHING = 1e-9
-"""Residues below this are rounding: nothing is broken."""
-LARGE = 10.0
-"""Beyond this a curve is taken to be broken: residues so large go on growing."""
-WINDOW = 3
-"""Convergents looked at together: where the boundary is symmetric some of them have smaller residues than others."""
+"""Residues below this are rounding: how small they are is not known."""
+WINDOW = 4
+"""Convergents looked at together: where the boundary is symmetric, those of some periods have smaller residues."""
+FEWEST = 3
+"""Convergents that a growth with an error needs."""
+DOUBT = 3.0
+"""Errors that a growth must be away from 0."""
+MARGIN = 0.25
+"""Least distance of the logarithm of the last residue from that of 1/4, by the fit: at the break of the standard map
+the residues of orbits up to period 55 scatter by up to 0.06 about it."""
+
+
+@dataclass(frozen=True)
+class Growth:
+    """How residues go with the period: (1/4) exp(growth q).
+
+    Attributes
+    ----------
+    growth
+        Logarithm of Greene's f; NaN where it is not known, as where all residues are rounding.
+    error
+        Standard error of the fit.
+    fate
+        What it says of the curve.
+    """
+
+    growth: float
+    error: float
+    fate: Fate
 
 
 def convergents(rotation: float, largest_period: int) -> list[tuple[int, int]]:
@@ -51,53 +81,36 @@ def convergents(rotation: float, largest_period: int) -> list[tuple[int, int]]:
     return found
 
 
-def judge_residues(residues: Sequence[float]) -> Fate:
-    """Tell what has become of a curve.
+def judge_residues(periods: Sequence[int], residues: Sequence[float]) -> Growth:
+    """Tell what has become of a curve, by a fit through residue 1/4 at period 0 to the last convergents.
+
+    The curve survives or is broken where the growth is known to be negative or positive, the last residue would be
+    told from 1/4 by the fit, and the residues themselves go the same way from one convergent to the next.
 
     Parameters
     ----------
+    periods
+        Periods q along the convergents, shortest first.
     residues
-        Residues of the elliptic (minimax) orbits along the convergents, shortest first.  Those not found are NaN.
+        Residues of their elliptic (minimax) orbits.  Those not found are NaN.
     """
-    known = [abs(residue) for residue in residues if math.isfinite(residue)]
-    recent, before = known[-WINDOW:], known[-2 * WINDOW : -WINDOW]
-    if len(recent) < WINDOW:
-        return "undecided"
-    if max(recent) < NOTHING or (before and max(recent) < min(SMALL, max(before))):
-        return "survives"
-    if recent[-1] > LARGE or (before and min(recent) > max(CRITICAL, *before)):
-        return "broken"
-    return "undecided"
+    size = np.abs(np.asarray(residues, dtype=np.float64))
+    found = np.isfinite(size)
+    q, size = np.asarray(periods, dtype=np.float64)[found][-WINDOW:], size[found][-WINDOW:]
+    told = size >= NOTHING
+    if q.size < FEWEST or not told.any():
+        return Growth(math.nan, math.nan, "undecided" if q.size < FEWEST else "survives")
+    height = log_array(np.maximum(size, NOTHING) / CRITICAL)
+    # What is below rounding is taken to lie on the line of the others, unless that line is not so low.
+    height = np.where(told, height, np.minimum(height, _slope(q[told], height[told]) * q))
+    growth = _slope(q, height)
+    error = math.sqrt(math.fsum((height - growth * q) ** 2) / (q.size - 1) / math.fsum(q * q))
+    trend = math.fsum((q - math.fsum(q) / q.size) * height)
+    if abs(growth) <= DOUBT * error or abs(growth) * q[-1] <= MARGIN or growth * trend <= 0.0:
+        return Growth(growth, error, "undecided")
+    return Growth(growth, error, "survives" if growth < 0.0 else "broken")
 
 
-def critical_parameters(
-    residue_at: Callable[[float, int, int], float],
-    orbits: Sequence[tuple[int, int]],
-    low: float,
-    high: float,
-    tolerance: float = 1e-13,
-) -> list[float]:
-    """Parameter at which the residue of each orbit passes 1/4: along convergents they tend to where the curve breaks.
-
-    Parameters
-    ----------
-    residue_at
-        Residue of the elliptic orbit as a function of parameter, p and q.
-    orbits
-        Rotations (p, q), as from ``convergents``.
-    low, high
-        Parameters with the residue of every orbit below 1/4 at one and above at the other.
-    tolerance
-        Error of each parameter.
-
-    Raises
-    ------
-    ValueError
-        If a residue does not pass 1/4 between them.
-    """
-    from scipy.optimize import brentq
-
-    return [
-        float(brentq(lambda at, p=p, q=q: residue_at(at, p, q) - CRITICAL, low, high, xtol=tolerance))
-        for p, q in orbits
-    ]
+def _slope(q: Floats, height: Floats) -> float:
+    """Slope of the line through the origin that fits best, by least squares."""
+    return math.fsum(q * height) / math.fsum(q * q)

@@ -8,7 +8,7 @@ from scanner.indicators import horizons, orbit_numbers
 from scanner.indicators.labelled import label
 from scanner.measure.fractions import table_numbers
 from scanner.measure.sampling import section_points
-from scanner.quantities import DONE, P_BINS, PERIODS, ROOT
+from scanner.quantities import DIRECTIONS, DONE, P_BINS, PERIODS, ROOT
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -16,13 +16,14 @@ if TYPE_CHECKING:
     from scanner.tables import Table
 
 
-def root_coordinates(bounces: int, replicates: int) -> dict[str, list[int] | list[float]]:
+def root_coordinates(bounces: int, replicates: int) -> dict[str, list[int] | list[float] | list[str]]:
     """Values along the dimensions of the root variables: bins of p are named by their centres."""
     return {
         "replicate": list(range(replicates)),
         "p_bin": [(2 * number + 1) / P_BINS - 1.0 for number in range(P_BINS)],
         "horizon": list(horizons(bounces)),
         "period": list(PERIODS),
+        "direction": list(DIRECTIONS),
     }
 
 

@@ -21,7 +21,7 @@ import zarr
 from zarr.codecs import ZstdCodec
 
 from scanner.errors import StoreError
-from scanner.quantities import CURVES, ORBITS, P_BINS, PERIODS, RESONANCES, ROOT
+from scanner.quantities import CURVES, DIRECTIONS, ORBITS, P_BINS, PERIODS, RESONANCES, ROOT
 from scanner.store.durable import Seal, settle
 from scanner.store.ledger import Charter, Ledger
 from scanner.study import Plan
@@ -145,7 +145,13 @@ def _write_arrays(folder: Path, plan: Plan) -> None:
         )
     for group, dim, name, values, meaning in _coordinates(plan):
         attributes: dict[str, Any] = {"long_name": meaning, "units": "1"}
-        fill = 0 if values.dtype.kind == "i" else np.nan
+        fill: float | str = np.nan
+        if values.dtype.kind == "i":
+            fill = 0
+        elif values.dtype.kind == "T":
+            # The only kind of text that the format specifies: others give a warning.
+            fill = ""
+            del attributes["units"]
         shape = values.shape
         array = _create_array(groups[group], name, (dim,), shape, shape, values.dtype, fill, attributes)
         array[:] = values
@@ -162,7 +168,7 @@ def _create_array(
     shape: tuple[int, ...],
     chunks: tuple[int, ...],
     dtype: np.dtype[np.generic],
-    fill_value: float | int,
+    fill_value: float | int | str,
     attributes: dict[str, Any],
 ) -> zarr.Array[Any]:
     return group.create_array(
@@ -202,12 +208,15 @@ def _coordinates(plan: Plan) -> Iterable[Coordinate]:
         ("horizon", np.array(plan.horizons), "bounces after which the verdict is given"),
         ("p_bin", (2 * np.arange(P_BINS) + 1) / P_BINS - 1, "centre of the bin of p"),
         ("period", np.array(PERIODS), "period q of the island"),
+        ("direction", np.array(DIRECTIONS, np.dtypes.StringDType()), "along the boundary, p > 0, or against it"),
     ):
         yield Coordinate(ROOT, name, name, numbers, meaning)
     number = np.arange(sizes["orbit"])
     yield Coordinate(ORBITS, "orbit", "orbit", number, "number of the orbit, replicate after replicate")
     if plan.rotations:
-        # Not "period", as that is a dimension of the root: a group may not have another coordinate of the name.
+        # Not "period": the root has a dimension of that name, whose index every group inherits, over 63 values instead
+        # of these.  Plain xarray opens such a store, but then isel() of the group and the tree's HTML view fail, as the
+        # index has lost its coordinate; with an index of its own the group cannot be part of the tree at all.
         p, q = np.array(plan.rotations).T
         yield Coordinate(RESONANCES, "resonance", "rotation", p, "rounds p of the orbits with rotation p/q")
         yield Coordinate(RESONANCES, "resonance", "resonance_period", q, "bounces q of the orbits with rotation p/q")

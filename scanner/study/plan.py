@@ -10,7 +10,7 @@ from math import prod
 from typing import Literal, overload
 
 from scanner.indicators.schedule import horizons
-from scanner.quantities import CURVES, ORBITS, P_BINS, PERIODS, REGISTER, RESONANCES, ROOT, Quantity
+from scanner.quantities import CURVES, DIRECTIONS, ORBITS, P_BINS, PERIODS, REGISTER, RESONANCES, ROOT, Quantity
 from scanner.study.layout import ceil_divide, lay_out
 from scanner.study.model import Study, Value
 
@@ -176,6 +176,7 @@ class Plan:
             "orbit": orbits.per_table,
             "replicate": orbits.replicates,
             "p_bin": P_BINS,
+            "direction": len(DIRECTIONS),
             "horizon": len(self.horizons),
             "period": len(PERIODS),
             "resonance": len(self.rotations),

@@ -91,6 +91,7 @@ def test_csv_has_one_row_a_table_and_nothing_left_out(tmp_path):
     np.testing.assert_array_equal(found, by_horizon)
     assert float(last["island_area_fraction_3"]) == tree["island_area_fraction"].values[1, 1, 1]
     assert "regular_area_fraction_by_p_-0.95" in last
+    assert float(last["rotational_band_p_backward"]) == tree["rotational_band_p"].values[1, 1, 1]
     assert rows[5]["table_status"] == "not_convex"
     assert rows[5]["regular_area_fraction"] == ""
 

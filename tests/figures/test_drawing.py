@@ -54,6 +54,14 @@ def test_tables_that_are_not_convex_are_marked():
     assert patch.get_x() + patch.get_width() == pytest.approx(figure.axes[0].get_xlim()[1], abs=1e-12)
 
 
+def test_a_dimension_of_words_has_them_on_its_axis():
+    figure, _ = draw_figure(invented_sweep(ONE), Request(quantity="rotational_band_p"))
+    axes = figure.axes[0]
+    assert [tick.get_text() for tick in axes.get_yticklabels()] == ["forward", "backward"]
+    assert axes.collections[0].get_array().shape == (2, len(AMPLITUDES))
+    assert_legible(figure)
+
+
 def test_map_shows_the_stored_numbers():
     tree = invented_sweep(TWO)
     figure, _ = draw_figure(tree, Request(quantity="lyapunov_per_length"))

@@ -47,6 +47,8 @@ def test_coordinates_are_those_of_the_study(empty):
         assert tree["horizon"].values.tolist() == [1024, 2048, 4096, 8192]
         assert tree["p_bin"].values[[0, -1]].tolist() == pytest.approx([-0.95, 0.95], abs=1e-15)
         assert tree["period"].values[[0, -1]].tolist() == [2, 64]
+        assert tree["direction"].values.tolist() == ["forward", "backward"]
+        assert tree["rotational_band_p"].sel(direction="backward").dims == ("amplitude", "harmonic")
         assert tree["orbits/orbit"].values[[0, -1]].tolist() == [0, 255]
         assert tree["regular_area_fraction"].sel(amplitude=0.1, method="nearest")["amplitude"] == pytest.approx(0.12)
         assert tree["amplitude"].attrs["long_name"]
