@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import socket
 import time
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import lru_cache
 from pathlib import Path
 
@@ -14,7 +14,12 @@ from scanner.engine.warmth import warm_kernels
 from scanner.errors import EngineError
 from scanner.quantities import DONE, FAILED, NOT_CONVEX
 from scanner.store import Ledger, Receipt, Regions, compare, list_failures, open_regions
-from scanner.study import Plan, Task, make_plan, parse_study
+from scanner.study import Plan, Task, make_plan, numerics_version, parse_study
+
+
+def code_version() -> str:
+    """Name the code that runs here: the version of the package and that of its numbers."""
+    return f"scanner {__version__}, numerics {numerics_version()}"
 
 
 @dataclass(frozen=True)
@@ -26,7 +31,7 @@ class Order:
     folder: str
     allow_code: bool
     fingerprint: str
-    version: str = __version__
+    code: str = field(default_factory=code_version)
 
 
 @dataclass(frozen=True)
@@ -91,9 +96,9 @@ def _reduce(plan: Plan, task: Task, regions: Regions, ledger: Ledger) -> CellRes
 def _plan(order: Order) -> Plan:
     """Read a study and have the kernels ready, once a process."""
     host = socket.gethostname()
-    if order.version != __version__:
+    if order.code != code_version():
         raise EngineError(
-            f"the worker on {host} runs scanner {__version__}, the client {order.version}; install the same everywhere"
+            f"the worker on {host} runs {code_version()}, the client {order.code}; install the same everywhere"
         )
     if not Path(order.store).exists():
         raise EngineError(

@@ -1,16 +1,18 @@
 """The zarr store of a sweep: its layout, its receipts, its health."""
 
+from scanner.store.compaction import Compaction, compact_store
 from scanner.store.durable import Seal, compare
-from scanner.store.health import Damage, remove_leftovers, repair, verify
+from scanner.store.health import Damage, refuse_losses, remove_leftovers, repair, verify
 from scanner.store.ledger import Charter, Ledger, Receipt
 from scanner.store.lock import StoreLock
-from scanner.store.opening import open_sweep
+from scanner.store.opening import enclosing_store, open_sweep
 from scanner.store.progress import SweepProgress, list_failures, sweep_progress
 from scanner.store.regions import Regions, open_regions
-from scanner.store.template import is_vacant, note_finish, prepare_store
+from scanner.store.template import check_numerics, is_vacant, note_finish, prepare_store
 
 __all__ = [
     "Charter",
+    "Compaction",
     "Damage",
     "Ledger",
     "Receipt",
@@ -18,13 +20,17 @@ __all__ = [
     "Seal",
     "StoreLock",
     "SweepProgress",
+    "check_numerics",
+    "compact_store",
     "compare",
+    "enclosing_store",
     "is_vacant",
     "list_failures",
     "note_finish",
     "open_regions",
     "open_sweep",
     "prepare_store",
+    "refuse_losses",
     "remove_leftovers",
     "repair",
     "sweep_progress",

@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import hashlib
 import os
+import shutil
 from collections import deque
 from collections.abc import Iterable, Iterator, Mapping
 from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 from typing import NamedTuple
+
+from scanner.errors import StoreError
 
 SETTLED_AT_ONCE = 8
 
@@ -54,10 +57,31 @@ def write_durably(path: Path, content: bytes) -> None:
 def compare(folder: Path, seals: Mapping[str, Seal]) -> Iterator[tuple[str, str]]:
     """Go through the files below a folder that differ from their seals: name and kind of damage."""
     for name, seal in seals.items():
-        try:
-            present = Seal.of((folder / name).read_bytes())
-        except FileNotFoundError:
-            yield name, "missing"
+        file = folder / name
+        if not file.is_file():  # nor is a folder read in its place, or a device that never ends
+            yield name, "misplaced" if os.path.lexists(file) else "missing"
             continue
+        present = Seal.of(file.read_bytes())
         if present != seal:
             yield name, "empty" if not present.size else "truncated" if present.size < seal.size else "altered"
+
+
+def make_way(folder: Path, name: str) -> None:
+    """Remove whatever is in the place of a file below a folder, or of one of the folders that lead to it.
+
+    Raises
+    ------
+    StoreError
+        A link on the way leads out of the folder: what is there is not touched.
+    """
+    place = folder
+    for part in Path(name).parts:
+        if not place.resolve().is_relative_to(folder.resolve()):
+            raise StoreError(f"{place}: leads out of the store; put the folder itself in the place of the link")
+        place /= part
+        if not place.is_dir():
+            break
+    if place.is_dir() and not place.is_symlink():
+        shutil.rmtree(place)
+    else:
+        place.unlink(missing_ok=True)

@@ -2,15 +2,16 @@
 
 from __future__ import annotations
 
-import json
-from collections.abc import Iterable
+import os
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
-from scanner.store.durable import compare, settle
+from scanner.errors import StoreError
+from scanner.store.durable import compare, make_way, settle
 from scanner.store.ledger import Ledger
-from scanner.store.lock import StoreLock
-from scanner.store.template import ROOT_METADATA, note_finish
+from scanner.store.lock import StoreLock, is_running
+from scanner.store.template import ROOT_METADATA, is_finished, note_finish, root_is_sound
 
 
 @dataclass(frozen=True)
@@ -24,7 +25,9 @@ class Damage:
     task
         The task whose block it belongs to; None for metadata and coordinates, which belong to the whole store.
     kind
-        "missing", "empty", "truncated", "altered" or "unreadable".
+        "missing", "empty", "truncated", "altered"; "misplaced" for a folder or anything else that is no file;
+        "unreadable" for a receipt or metadata that is none, or those of another study; "leftover" for what a writer
+        that was killed has left half-written.
     """
 
     file: str
@@ -49,15 +52,55 @@ def verify(path: str | Path) -> list[Damage]:
     ledger = Ledger(store)
     charter = ledger.charter()
     found = [Damage(name, None, kind) for name, kind in compare(store, charter.template)]
-    if not _is_readable(store / ROOT_METADATA):
+    if not root_is_sound(store, charter):
         found.append(Damage(ROOT_METADATA, None, "unreadable"))
+    if charter.compacted:
+        return [*found, *_verify_shards(ledger)]
     for task in ledger.listed():
         seals = ledger.seals(task)
         if seals is None:
-            found.append(Damage(str(ledger.receipt_path(task).relative_to(store)), task, "unreadable"))
+            found.append(Damage(_receipt_name(ledger, task), task, "unreadable"))
         else:
             found.extend(Damage(name, task, kind) for name, kind in compare(store, seals))
+    if is_finished(store):
+        lost = set(range(charter.tasks)) - set(ledger.listed())
+        found.extend(Damage(_receipt_name(ledger, task), task, "missing") for task in sorted(lost))
+    if not is_running(store):
+        found.extend(Damage(str(file.relative_to(store)), None, "leftover") for file in _leftovers(store))
     return found
+
+
+def _verify_shards(ledger: Ledger) -> Iterator[Damage]:
+    """Find what is damaged of a compacted store beside its template."""
+    for name in ledger.damaged_parts():
+        yield Damage(name, None, "unreadable")
+    for name, kind in compare(ledger.store, ledger.shards() or {}):
+        yield Damage(name, None, kind)
+
+
+def refuse_losses(path: Path) -> None:
+    """See that the files of finished tasks are there, by the names in their folders alone: quick on any disk.
+
+    Raises
+    ------
+    StoreError
+        Some are not.
+    """
+    ledger = Ledger(path)
+    present: dict[str, set[str]] = {}
+    lost = []
+    for task in ledger.listed():
+        for name in ledger.seals(task) or {}:
+            folder, _, file = name.rpartition("/")
+            if folder not in present:
+                present[folder] = _names_in(path / folder)
+            if file not in present[folder]:
+                lost.append(name)
+    if lost:
+        raise StoreError(
+            f"{path}: {len(lost)} files of finished tasks are missing, the first is {lost[0]}; "
+            "clear what they belong to with `scanner verify --repair` and sweep again"
+        )
 
 
 def repair(path: str | Path) -> list[Damage]:
@@ -78,38 +121,47 @@ def repair(path: str | Path) -> list[Damage]:
     ledger.charter()
     with StoreLock(store):
         damaged = verify(store)
-        _remove(store / damage.file for damage in damaged if damage.task is None)
-        for task in sorted({damage.task for damage in damaged if damage.task is not None}):
+        _remove(store, (damage.file for damage in damaged if damage.task is None))
+        tasks = sorted({damage.task for damage in damaged if damage.task is not None})
+        for task in tasks:
             _clear_block(ledger, task)
-        if damaged and (store / ROOT_METADATA).exists():
+        if tasks and root_is_sound(store, ledger.charter()):
             note_finish(store, finished=False)
     return damaged
 
 
 def remove_leftovers(path: Path) -> None:
     """Remove half-written files of workers that were killed; call it only while no worker writes."""
-    for partial in path.rglob("*.partial"):
+    for partial in _leftovers(path):
         partial.unlink(missing_ok=True)
 
 
-def _is_readable(metadata: Path) -> bool:
+def _leftovers(path: Path) -> Iterator[Path]:
+    return (partial for partial in path.rglob("*.partial") if not partial.is_dir())
+
+
+def _receipt_name(ledger: Ledger, task: int) -> str:
+    return str(ledger.receipt_path(task).relative_to(ledger.store))
+
+
+def _names_in(folder: Path) -> set[str]:
     try:
-        return isinstance(json.loads(metadata.read_bytes()), dict)
-    except (OSError, ValueError):
-        return False
+        return set(os.listdir(folder))
+    except OSError:
+        return set()
 
 
 def _clear_block(ledger: Ledger, task: int) -> None:
     """Take back a receipt first and its chunks after, so that nothing half cleared ever counts as finished."""
     seals = ledger.seals(task) or {}
-    _remove([ledger.receipt_path(task)])
-    _remove(ledger.store / name for name in seals)
+    _remove(ledger.store, [_receipt_name(ledger, task)])
+    _remove(ledger.store, seals)
 
 
-def _remove(files: Iterable[Path]) -> None:
-    """Remove files for good."""
+def _remove(store: Path, names: Iterable[str]) -> None:
+    """Remove files for good, and what is in the place of their folders."""
     folders = set()
-    for file in files:
-        file.unlink(missing_ok=True)
-        folders.add(file.parent)
+    for name in names:
+        make_way(store, name)
+        folders.add((store / name).parent)
     settle(folder for folder in folders if folder.exists())

@@ -3,28 +3,49 @@
 A missing chunk says nothing (it reads as "not done" and so does a lost one), so that receipts alone decide.
 They live in a folder of the ``table_status`` array: zarr looks for no members inside an array, so that every reader
 stays free of warnings, and a store that is moved or copied takes them along.
+
+A compacted store is finished for good: all its receipts are in one file, and another one seals its shards.
 """
 
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator, Mapping
-from dataclasses import asdict, dataclass
-from pathlib import Path
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import asdict, dataclass, replace
+from pathlib import Path, PurePosixPath
+from typing import Any
 
+from scanner import __version__
 from scanner.errors import StoreError
 from scanner.store.durable import Seal, write_durably
 
 LEDGER = Path("table_status") / "ledger"
-LAYOUT = 1
+CHARTER = "charter.json"
+LAYOUT = 2
+"""Raised when what this version writes cannot be read by the one before; stores of lower layouts are still read."""
 
 
 @dataclass(frozen=True)
 class Charter:
     """What a store was made for; written once, never changed.
 
-    ``template`` seals every file the store was made with (array metadata and coordinates) but the root's own
-    metadata, which also holds the times of the run.
+    Attributes
+    ----------
+    fingerprint, study
+        Of the study, and its text.
+    tasks, tables, orbits, bounces
+        Tasks and tables in all, orbits of a table and bounces of an orbit.
+    template
+        Seals of every file the store was made with (array metadata and coordinates) but the root's own metadata,
+        which also holds the time of completion.
+    root
+        That metadata as it was made, to tell damage and to mend it.
+    version, numerics
+        Which version of the package made the store, and which code its numbers come from.
+    compacted
+        Whether the store is finished and compacted: whole shards instead of the chunks of tasks.
+    layout
+        Version of the layout of files; 1 had neither of the last four.
     """
 
     fingerprint: str
@@ -34,6 +55,10 @@ class Charter:
     orbits: int
     bounces: int
     template: Mapping[str, Seal]
+    root: str = ""
+    version: str = ""
+    numerics: str = ""
+    compacted: bool = False
     layout: int = LAYOUT
 
 
@@ -68,7 +93,7 @@ def _sealed_lines(path: Path) -> list[bytes] | None:
     """Read such lines without their checksum; None where the file is missing, torn or altered."""
     try:
         content = path.read_bytes()
-    except (FileNotFoundError, NotADirectoryError):
+    except (FileNotFoundError, NotADirectoryError, IsADirectoryError):
         return None
     body = content[: -len(_checksum_line(b""))]
     return body.splitlines() if content == body + _checksum_line(body) else None
@@ -85,11 +110,25 @@ class Ledger:
         self.store = store
         self.folder = store / LEDGER
         self._receipts = self.folder / "receipts"
+        self._gathered = self.folder / "receipts.json"
+        self._shards = self.folder / "shards.json"
+        self._charter: Charter | None = None
 
     def found(self, charter: Charter) -> None:
-        """Begin a ledger in a store that is being made."""
-        self._receipts.mkdir(parents=True)
-        write_durably(self.folder / "charter.json", _seal_lines(asdict(charter)))
+        """Begin a ledger in a store that is being made, or give one its charter back."""
+        self._receipts.mkdir(parents=True, exist_ok=True)
+        write_durably(self.folder / CHARTER, _seal_lines(asdict(charter)))
+
+    def found_compacted(self, charter: Charter, receipts: Iterable[Receipt], shards: Mapping[str, Seal]) -> None:
+        """Begin the ledger of a compacted store that is being made; the files it seals must be there already."""
+        self.folder.mkdir(parents=True)
+        write_durably(self._gathered, _seal_lines(*map(asdict, receipts)))
+        write_durably(self._shards, _seal_lines(shards))
+        write_durably(self.folder / CHARTER, _seal_lines(asdict(replace(charter, compacted=True))))
+
+    def is_founded(self) -> bool:
+        """Whether there is a sound charter."""
+        return _sealed_lines(self.folder / CHARTER) is not None
 
     def charter(self) -> Charter:
         """Read what the store was made for.
@@ -99,16 +138,23 @@ class Ledger:
         StoreError
             The path is missing, is no store of this tool, or was written in a layout not known here.
         """
+        if self._charter is None:
+            self._charter = self._read_charter()
+        return self._charter
+
+    def _read_charter(self) -> Charter:
         if not self.store.exists():
             raise StoreError(f"{self.store}: there is no such store; `scanner sweep STUDY --store PATH` makes one")
-        lines = _sealed_lines(self.folder / "charter.json")
+        lines = _sealed_lines(self.folder / CHARTER)
         if lines is None:
-            raise StoreError(f"{self.store}: not a store of this tool, or its charter is damaged; give another path")
+            remedy = "the same `scanner sweep` writes it again" if self.folder.is_dir() else "give another path"
+            raise StoreError(f"{self.store}: not a store of this tool, or its charter is damaged; {remedy}")
         record = json.loads(lines[0])
-        if record["layout"] != LAYOUT:
+        if record["layout"] > LAYOUT:
+            made_by = record.get("version") or "a later version"
             raise StoreError(
-                f"{self.store}: written in layout {record['layout']}, this version reads layout {LAYOUT}; "
-                "use the version named in its attributes"
+                f"{self.store}: made by scanner {made_by} in layout {record['layout']}, this is scanner {__version__} "
+                f"and reads layouts up to {LAYOUT}; install scanner {made_by} or later"
             )
         return Charter(**{**record, "template": _seals(record["template"])})
 
@@ -118,33 +164,73 @@ class Ledger:
 
     def write(self, receipt: Receipt, seals: Mapping[str, Seal]) -> None:
         """Put a receipt on the disk; the files it seals, by their names in the store, must be there already."""
-        write_durably(self.receipt_path(receipt.task), _seal_lines(asdict(receipt), seals))
+        record = {**asdict(receipt), "study": self.charter().fingerprint}
+        write_durably(self.receipt_path(receipt.task), _seal_lines(record, seals))
 
     def read(self, task: int) -> Receipt | None:
         """Read the receipt of a task, or None where there is no sound one."""
-        lines = _sealed_lines(self.receipt_path(task))
+        lines = self._receipt_lines(task)
         if lines is None:
             return None
-        record = json.loads(lines[0])
-        failures = tuple((tuple(index), reason) for index, reason in record["failures"])
-        return Receipt(**{**record, "failures": failures})
+        return _receipt(lines[0])
 
     def seals(self, task: int) -> dict[str, Seal] | None:
         """Read what a task wrote: seals by the names of files; None where there is no sound receipt."""
-        lines = _sealed_lines(self.receipt_path(task))
+        lines = self._receipt_lines(task)
         return None if lines is None else _seals(json.loads(lines[1]))
+
+    def _receipt_lines(self, task: int) -> list[bytes] | None:
+        """Read a receipt, unless it is torn or belongs to another task or another study."""
+        lines = _sealed_lines(self.receipt_path(task))
+        if lines is None:
+            return None
+        record: dict[str, Any] = json.loads(lines[0])
+        charter = self.charter()
+        belongs = record["task"] == task < charter.tasks and record.get("study", "") in ("", charter.fingerprint)
+        return lines if belongs else None
 
     def listed(self) -> list[int]:
         """Tasks that have a receipt, sound or not, in order."""
         return sorted(int(path.stem) for path in self._receipts.glob("*.json") if path.stem.isdecimal())
 
+    def shards(self) -> dict[str, Seal] | None:
+        """Read what a compacted store consists of: seals by the names of files; None where that is damaged."""
+        lines = _sealed_lines(self._shards)
+        return None if lines is None else _seals(json.loads(lines[0]))
+
+    def damaged_parts(self) -> list[str]:
+        """Name the files of a compacted store's ledger that are damaged."""
+        parts = (self._gathered, self._shards)
+        return [str(part.relative_to(self.store)) for part in parts if _sealed_lines(part) is None]
+
     def receipts(self) -> Iterator[Receipt]:
-        """All sound receipts, in the order of their tasks."""
+        """All sound receipts, in the order of their tasks.
+
+        Raises
+        ------
+        StoreError
+            The store is compacted, and the one file of its receipts is damaged.
+        """
+        if self.charter().compacted:
+            lines = _sealed_lines(self._gathered)
+            if lines is None:
+                raise StoreError(f"{self._gathered}: damaged; take that file from a backup of the compacted store")
+            yield from map(_receipt, lines)
+            return
         for task in self.listed():
             receipt = self.read(task)
             if receipt is not None:
                 yield receipt
 
 
+def _receipt(line: bytes) -> Receipt:
+    record = json.loads(line)
+    record.pop("study", None)
+    failures = tuple((tuple(index), reason) for index, reason in record["failures"])
+    return Receipt(**{**record, "failures": failures})
+
+
 def _seals(record: dict[str, list[int | str]]) -> dict[str, Seal]:
-    return {name: Seal(*seal) for name, seal in record.items()}  # type: ignore[arg-type]
+    """Read seals by names; none but of files inside the store, whoever wrote them."""
+    inside = (name for name in record if not {"..", "/"} & set(PurePosixPath(name).parts))
+    return {name: Seal(*record[name]) for name in inside}  # type: ignore[arg-type]

@@ -11,6 +11,12 @@ if TYPE_CHECKING:
     import xarray as xr
 
 
+def enclosing_store(place: Path) -> Path | None:
+    """Find the store, of this tool or another zarr hierarchy, that a place is in or is itself."""
+    here = place.absolute()
+    return next((folder for folder in (here, *here.parents) if (folder / "zarr.json").exists()), None)
+
+
 def open_sweep(path: str | Path) -> xr.DataTree:
     """Open a store as labelled data, finished or not; values are read when they are used.
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import os
 import platform
 import shutil
@@ -10,6 +11,7 @@ import sys
 import warnings
 from collections.abc import Iterable, Iterator
 from contextlib import contextmanager
+from dataclasses import replace
 from datetime import UTC, datetime
 from importlib.metadata import version
 from pathlib import Path
@@ -20,11 +22,13 @@ import numpy as np
 import zarr
 from zarr.codecs import ZstdCodec
 
+from scanner import __version__
 from scanner.errors import StoreError
 from scanner.quantities import CURVES, DIRECTIONS, ORBITS, P_BINS, PERIODS, RESONANCES, ROOT
-from scanner.store.durable import Seal, settle
-from scanner.store.ledger import Charter, Ledger
-from scanner.study import Plan
+from scanner.store.durable import Seal, compare, make_way, settle, write_durably
+from scanner.store.ledger import CHARTER, LAYOUT, LEDGER, Charter, Ledger
+from scanner.store.opening import enclosing_store
+from scanner.study import Plan, numerics_version
 from scanner.tables import FAMILIES
 
 ROOT_METADATA = "zarr.json"
@@ -39,6 +43,9 @@ def prepare_store(path: Path, plan: Plan) -> None:
     StoreError
         The path holds something else, or cannot be written; nothing is changed then.
     """
+    around = enclosing_store(path.parent)
+    if around is not None:
+        raise StoreError(f"{path}: lies inside the store {around}; give a place outside")
     if is_vacant(path):
         try:
             with _template(path, plan) as template:
@@ -48,8 +55,9 @@ def prepare_store(path: Path, plan: Plan) -> None:
         except OSError as error:
             if not path.exists():
                 raise StoreError(f"{path}: cannot be made ({error}); give a place that can be written") from None
+    _mend_charter(path, plan)
     check_fingerprint(path, plan)
-    _restore_template(path, plan)
+    _mend_template(path, plan)
 
 
 def is_vacant(path: Path) -> bool:
@@ -74,6 +82,23 @@ def check_fingerprint(path: Path, plan: Plan) -> None:
         )
 
 
+def check_numerics(path: Path) -> None:
+    """See that what is still to be computed would come from the same code as what is there.
+
+    Raises
+    ------
+    StoreError
+        The store was begun with another version of it.
+    """
+    charter = Ledger(path).charter()
+    if charter.numerics != numerics_version():
+        raise StoreError(
+            f"{path}: begun by scanner {charter.version or '0.1.0'} with numerics {charter.numerics or 'unknown'}, "
+            f"this is scanner {__version__} with {numerics_version()}, and a store must not mix the two; "
+            "finish it with that version, or give another --store"
+        )
+
+
 def note_finish(path: Path, finished: bool) -> None:
     """Set or remove the time of completion among the root's attributes; once set it stays."""
     root = zarr.open_group(path, mode="r+")
@@ -83,18 +108,61 @@ def note_finish(path: Path, finished: bool) -> None:
         del root.attrs["finished"]
 
 
-def _restore_template(path: Path, plan: Plan) -> None:
-    """Write missing metadata and coordinates again; they follow from the study."""
-    missing = [name for name in Ledger(path).charter().template if not (path / name).exists()]
-    if not (path / ROOT_METADATA).exists():
-        missing.append(ROOT_METADATA)
-    if not missing:
+def is_finished(path: Path) -> bool:
+    """Whether the time of completion is noted."""
+    try:
+        return "finished" in json.loads((path / ROOT_METADATA).read_bytes())["attributes"]
+    except (OSError, ValueError, TypeError, KeyError):
+        return False
+
+
+def read_root(path: Path) -> dict[str, Any] | None:
+    """Read the root's metadata without the time of completion; None where there is none that can be read."""
+    try:
+        found = json.loads((path / ROOT_METADATA).read_bytes())
+        found["attributes"].pop("finished", None)
+    except (OSError, ValueError, TypeError, KeyError, AttributeError):
+        return None
+    return dict(found)
+
+
+def root_is_sound(path: Path, charter: Charter) -> bool:
+    """Whether the root's metadata is as it was made, but for the time of completion."""
+    root = read_root(path)
+    return root == json.loads(charter.root) if charter.root else root is not None
+
+
+def _mend_charter(path: Path, plan: Plan) -> None:
+    """Write a damaged charter again, where the root's metadata says that the store is this study's."""
+    ledger, root = Ledger(path), read_root(path)
+    if root is None or ledger.is_founded() or root["attributes"].get("fingerprint") != plan.study.fingerprint:
         return
+    own = root["attributes"]
+    make_way(path, f"{LEDGER}/{CHARTER}")
     with _template(path, plan) as template:
-        for name in missing:
-            (path / name).parent.mkdir(parents=True, exist_ok=True)
-            (template / name).replace(path / name)
-    settle(path / name for name in missing)
+        made = Ledger(template).charter()
+    ledger.found(replace(made, root=json.dumps(root), version=own.get("scanner", ""), numerics=own.get("numerics", "")))
+
+
+def _mend_template(path: Path, plan: Plan) -> None:
+    """Write damaged metadata and coordinates again; they follow from the study."""
+    charter = Ledger(path).charter()
+    damaged = [name for name, _ in compare(path, charter.template)]
+    if damaged:
+        with _template(path, plan) as template:
+            for name, _ in compare(template, {name: charter.template[name] for name in damaged}):
+                raise StoreError(
+                    f"{path / name}: damaged, and this version would write it otherwise; "
+                    f"mend it with scanner {charter.version or '0.1.0'}, which made the store"
+                )
+            for name in damaged:
+                make_way(path, name)
+                (path / name).parent.mkdir(parents=True, exist_ok=True)
+                (template / name).replace(path / name)
+        settle(path / name for name in damaged)
+    if charter.root and not root_is_sound(path, charter):
+        make_way(path, ROOT_METADATA)
+        write_durably(path / ROOT_METADATA, charter.root.encode())
 
 
 @contextmanager
@@ -117,6 +185,9 @@ def _template(path: Path, plan: Plan) -> Iterator[Path]:
                 orbits=study.orbits.per_table,
                 bounces=study.orbits.bounces,
                 template=seals,
+                root=(folder / ROOT_METADATA).read_text(),
+                version=__version__,
+                numerics=numerics_version(),
             )
         )
         settle(files)
@@ -133,7 +204,7 @@ def _write_arrays(folder: Path, plan: Plan) -> None:
         names = " ".join(found.name for found in _coordinates(plan) if found.dim == "resonance")
         groups[RESONANCES] = root.create_group(RESONANCES, attributes={"coordinates": names})
     for quantity in plan.quantities:
-        _create_array(
+        create_array(
             groups[quantity.group],
             quantity.name,
             plan.array_dims(quantity),
@@ -153,15 +224,20 @@ def _write_arrays(folder: Path, plan: Plan) -> None:
             fill = ""
             del attributes["units"]
         shape = values.shape
-        array = _create_array(groups[group], name, (dim,), shape, shape, values.dtype, fill, attributes)
+        array = create_array(groups[group], name, (dim,), shape, shape, values.dtype, fill, attributes)
         array[:] = values
+    consolidate(folder)
+
+
+def consolidate(folder: Path) -> None:
+    """Gather all metadata in that of the root."""
     with warnings.catch_warnings():
         # Not yet in the specification, as zarr warns; without it plain xarray warns at every opening instead.
         warnings.filterwarnings("ignore", "Consolidated metadata", category=UserWarning)
         zarr.consolidate_metadata(folder)
 
 
-def _create_array(
+def create_array(
     group: zarr.Group,
     name: str,
     dims: tuple[str, ...],
@@ -170,11 +246,14 @@ def _create_array(
     dtype: np.dtype[np.generic],
     fill_value: float | int | str,
     attributes: dict[str, Any],
+    shards: tuple[int, ...] | None = None,
 ) -> zarr.Array[Any]:
+    """Make one array as all of a store are made."""
     return group.create_array(
         name,
         shape=shape,
         chunks=chunks,
+        shards=shards,
         dtype=dtype,
         fill_value=fill_value,
         dimension_names=dims,
@@ -230,6 +309,9 @@ def _root_attributes(plan: Plan) -> dict[str, str]:
         "title": plan.study.title,
         "study": plan.study.text,
         "fingerprint": plan.study.fingerprint,
+        "version": __version__,
+        "numerics": numerics_version(),
+        "layout": str(LAYOUT),
         "versions": ", ".join(f"{name} {version(name)}" for name in ("scanner", *libraries)),
         "python": sys.version.split()[0],
         "platform": platform.platform(),

@@ -4,6 +4,7 @@ from scanner.study.checking import TableCheck, check_tables
 from scanner.study.estimate import Estimate, estimate_cost
 from scanner.study.limits import check_limits
 from scanner.study.model import Orbits, Resources, Study
+from scanner.study.numerics import numerics_version
 from scanner.study.plan import Plan, Task, make_plan
 from scanner.study.reading import load_study, parse_study
 
@@ -20,5 +21,6 @@ __all__ = [
     "estimate_cost",
     "load_study",
     "make_plan",
+    "numerics_version",
     "parse_study",
 ]
