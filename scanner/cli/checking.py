@@ -1,7 +1,8 @@
-"""Commands that look after a store and an installation: progress, verify, selfcheck."""
+"""Commands that look after a store and an installation: progress, verify, compact, selfcheck."""
 
 from __future__ import annotations
 
+import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -61,6 +62,28 @@ def verify(store: Path, repair: bool) -> int:
         return 0
     click.echo(f"{len(damaged):,} files are damaged: clear them with --repair, then sweep again", err=True)
     return 1
+
+
+@click.command(short_help="A finished store in few large files.")
+@store_argument
+def compact(store: Path) -> None:
+    """Put the finished sweep in PATH into few large files, without changing a value.
+
+    Nobody should read it meanwhile.  Interrupt it at any moment: the store stays as it was.
+    """
+    from scanner.store import compact_store
+
+    with click.progressbar(length=1, label="compacting", file=sys.stderr) as bar:
+
+        def show(done: int, total: int) -> None:
+            bar.length = total
+            bar.update(done - bar.pos)
+
+        made = compact_store(store, show)
+    if made.already:
+        click.echo(f"compacted already: {made.after:,} files")
+    else:
+        click.echo(f"{made.before:,} files before, {made.after:,} now")
 
 
 @click.command(short_help="This installation against closed forms.")
