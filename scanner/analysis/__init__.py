@@ -8,7 +8,14 @@ from __future__ import annotations
 from scanner.analysis.export import export_sweep
 from scanner.analysis.files import check_target, replace_whole
 from scanner.analysis.summary import failures, summarise
-from scanner.analysis.sweep import StudyFacts, average_tables, pick_tables, study_of, swept_parameters
+from scanner.analysis.sweep import (
+    StudyFacts,
+    average_tables,
+    pick_tables,
+    require_resonances,
+    study_of,
+    swept_parameters,
+)
 
 __all__ = [
     "StudyFacts",
@@ -18,6 +25,7 @@ __all__ = [
     "failures",
     "pick_tables",
     "replace_whole",
+    "require_resonances",
     "study_of",
     "summarise",
     "swept_parameters",

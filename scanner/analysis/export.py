@@ -1,4 +1,4 @@
-"""A sweep in other people's formats: netCDF-4 whole, csv and parquet as rows of tables or of orbits."""
+"""A sweep in other people's formats: netCDF-4 whole, csv and parquet as rows of tables, of orbits or of resonances."""
 
 from __future__ import annotations
 
@@ -13,14 +13,18 @@ import xarray as xr
 
 from scanner.analysis.files import check_target, replace_whole
 from scanner.analysis.rows import blocks, stored_steps, to_rows
-from scanner.analysis.sweep import swept_parameters
+from scanner.analysis.sweep import require_resonances, swept_parameters
 from scanner.errors import ScannerError
-from scanner.quantities import DONE, ORBITS, ROOT, TABLE_STATUS, in_group
+from scanner.quantities import DONE, ORBITS, RESONANCES, ROOT, TABLE_STATUS, in_group
 
 SUFFIXES = (".nc", ".csv", ".parquet")
+ROW_DIMS = {ORBITS: "orbit", RESONANCES: "resonance"}
+"""Dimension of each group along which it has rows of its own."""
+ROW_NAMES: dict[str, list[str]] = {ORBITS: [], RESONANCES: ["rotation", "resonance_period"]}
+"""Coordinates that name those rows where their number does not."""
 
 
-def export_sweep(tree: xr.DataTree, target: Path, *, orbits: bool = False, force: bool = False) -> None:
+def export_sweep(tree: xr.DataTree, target: Path, *, rows: str = ROOT, force: bool = False) -> None:
     """Write a sweep to a file of another format, whole or not at all.
 
     Parameters
@@ -28,18 +32,21 @@ def export_sweep(tree: xr.DataTree, target: Path, *, orbits: bool = False, force
     tree
         A sweep.
     target
-        File to write: ``.nc`` is the whole sweep as netCDF-4 with the group ``orbits``; ``.csv`` and ``.parquet``
-        are rows with codes as words.
-    orbits
-        Rows of orbits of the tables that are done, instead of one row a table; netCDF holds both in any case.
+        File to write: ``.nc`` is the whole sweep as netCDF-4 with all groups; ``.csv`` and ``.parquet`` are rows with
+        codes as words.
+    rows
+        Group whose rows are written: ``root`` for one row a table, with the fate of its curves if there are
+        resonances; ``orbits`` and ``resonances`` for one row each of the tables that are done.
     force
         Replace a file that exists.
 
     Raises
     ------
     ScannerError
-        The file cannot or must not be written, or pyarrow is not installed.
+        The file cannot or must not be written, the sweep has no resonances, or pyarrow is not installed.
     """
+    if rows == RESONANCES:
+        require_resonances(tree)
     check_target(target, SUFFIXES, force=force)
     suffix = target.suffix.lower()
     if suffix == ".parquet" and importlib.util.find_spec("pyarrow") is None:
@@ -48,22 +55,35 @@ def export_sweep(tree: xr.DataTree, target: Path, *, orbits: bool = False, force
         if suffix == ".nc":
             _write_netcdf(tree, partial)
         elif suffix == ".csv":
-            _write_csv(_frames(tree, orbits=orbits), partial)
+            _write_csv(_frames(tree, rows), partial)
         else:
-            _write_parquet(_frames(tree, orbits=orbits), partial)
+            _write_parquet(_frames(tree, rows), partial)
 
 
-def _frames(tree: xr.DataTree, *, orbits: bool) -> Iterator[pd.DataFrame]:
-    """Rows of tables or of orbits, in blocks of bounded size."""
+def _frames(tree: xr.DataTree, group: str) -> Iterator[pd.DataFrame]:
+    """Rows of one group, in blocks of bounded size."""
     names = swept_parameters(tree)
     root = _in_order(tree.to_dataset(), ROOT)
-    if not orbits:
-        yield from (to_rows(block, names) for block in blocks(root, names))
+    if group == ROOT:
+        whole = root.assign(_of_whole_tables(tree))
+        yield from (to_rows(block, names) for block in blocks(whole, names))
         return
-    with_status = _in_order(tree[ORBITS].to_dataset(), ORBITS).assign(table_status=root["table_status"].drop_encoding())
-    for block in blocks(with_status, [*names, "orbit"]):
-        rows = to_rows(block, [*names, "orbit"])
-        yield rows[rows["table_status"] == TABLE_STATUS[DONE]].drop(columns="table_status")
+    dim, named_by = ROW_DIMS[group], ROW_NAMES[group]
+    data = _in_order(tree[group].to_dataset(), group)
+    own = [name for name, variable in data.data_vars.items() if dim in variable.dims]
+    rows = data.reset_coords(named_by)[[*named_by, *own]].assign(table_status=root["table_status"].drop_encoding())
+    left_out = ["table_status", *([dim] if named_by else [])]
+    for block in blocks(rows, [*names, dim]):
+        frame = to_rows(block, [*names, dim])
+        yield frame[frame["table_status"] == TABLE_STATUS[DONE]].drop(columns=left_out)
+
+
+def _of_whole_tables(tree: xr.DataTree) -> dict[str, xr.DataArray]:
+    """Numbers of the group of resonances that are no resonance's own: those of the curves between them."""
+    if RESONANCES not in tree.children:
+        return {}
+    curves = _in_order(tree[RESONANCES].to_dataset(), RESONANCES)
+    return {str(name): found for name, found in curves.data_vars.items() if ROW_DIMS[RESONANCES] not in found.dims}
 
 
 def _in_order(data: xr.Dataset, group: str) -> xr.Dataset:

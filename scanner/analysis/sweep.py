@@ -10,7 +10,7 @@ import numpy as np
 import xarray as xr
 
 from scanner.errors import ScannerError
-from scanner.quantities import DONE
+from scanner.quantities import DONE, RESONANCES
 
 
 @dataclass(frozen=True)
@@ -83,6 +83,14 @@ def require_swept(sweep: xr.DataTree | xr.Dataset, name: str) -> None:
     if name not in names:
         known = f"it sweeps {', '.join(names)}" if names else "it holds a single table"
         raise ScannerError(f"{name!r} is not a swept parameter of this study: {known}")
+
+
+def require_resonances(sweep: xr.DataTree) -> None:
+    """Refuse a sweep whose study did not ask for periodic orbits."""
+    if RESONANCES not in sweep.children:
+        raise ScannerError(
+            "this store has no resonances: put [resonances] with period_max = 8 in the study file and sweep it again"
+        )
 
 
 def _nearest(name: str, stored: np.ndarray, value: float | str) -> int:

@@ -83,16 +83,20 @@ def summary(store: Path, select: dict[str, str], average: tuple[str, ...], faile
 @store_argument
 @to_option
 @click.option("--orbits", is_flag=True, help="One row an orbit instead of one row a table.")
+@click.option("--resonances", is_flag=True, help="One row a resonance of each table.")
 @force_option
-def export(store: Path, target: Path, orbits: bool, force: bool) -> None:
+def export(store: Path, target: Path, orbits: bool, resonances: bool, force: bool) -> None:
     """Write the sweep in PATH to a file of another format.
 
     .nc is the whole sweep as netCDF-4; .csv and .parquet hold one row a table.
     """
     from scanner.analysis import export_sweep
+    from scanner.quantities import ORBITS, RESONANCES, ROOT
 
+    if orbits and resonances:
+        raise click.UsageError("--orbits and --resonances are rows of different kinds: write a file each")
     with open_store(store) as tree:
-        export_sweep(tree, target, orbits=orbits, force=force)
+        export_sweep(tree, target, rows=ORBITS if orbits else RESONANCES if resonances else ROOT, force=force)
     click.echo(f"wrote {target}", err=True)
 
 

@@ -14,7 +14,7 @@ from matplotlib.patches import Patch
 from matplotlib.ticker import LogLocator
 from scipy.stats import linregress
 
-from scanner.analysis import swept_parameters
+from scanner.analysis import require_resonances, swept_parameters
 from scanner.errors import ScannerError
 from scanner.figures.colours import CYCLE, GREY
 from scanner.figures.labels import parameter_label
@@ -70,10 +70,7 @@ def draw_gaps(picked: xr.DataTree, request: Request) -> Axes:
 
 def _resonances_along(picked: xr.DataTree, request: Request) -> tuple[xr.Dataset, str]:
     """Stored resonances over the one parameter that is left, and its name."""
-    if RESONANCES not in picked.children:
-        raise ScannerError(
-            "this store has no resonances: put [resonances] with period_max = 8 in the study file and sweep it again"
-        )
+    require_resonances(picked)
     names = swept_parameters(picked)
     along = request.along or AMPLITUDE
     if along not in names:

@@ -68,6 +68,8 @@ def test_no_command_shows_the_help(call):
         ),
         (["export", "{store}", "--to", "{out}/no/tables.csv"], "there is no folder"),
         (["export", "{store}", "--to", "{out}"], "is a folder"),
+        (["export", "{store}", "--to", "{out}/rows.csv", "--resonances"], "this store has no resonances"),
+        (["export", "{store}", "--to", "{out}/rows.csv", "--resonances", "--orbits"], "write a file each"),
         (["figure", "{store}", "--to", "{out}/figure.gif"], "it must be .png, .pdf or .svg"),
         (["figure", "{store}", "--to", "{out}/figure.png", "--kind", "portrait"], "give a value of amplitude"),
         (["figure", "{store}", "--to", "{out}/figure.png", "--quantity", "chaos"], "no variable 'chaos'"),

@@ -1,3 +1,5 @@
+import csv
+
 import numpy as np
 import pytest
 import xarray as xr
@@ -5,7 +7,7 @@ from sweeps import fill, grid, results
 
 from scanner.analysis import export_sweep, pick_tables
 from scanner.cells import compute
-from scanner.errors import StudyError
+from scanner.errors import ScannerError, StudyError
 from scanner.measure import survey_resonances
 from scanner.quantities import CURVE_FATES, RESONANCES, in_group
 from scanner.store import verify
@@ -66,7 +68,36 @@ def test_the_group_is_exported(store, tmp_path):
         export_sweep(tree, tmp_path / "sweep.nc")
         with xr.open_datatree(tmp_path / "sweep.nc", engine="h5netcdf") as copy:
             xr.testing.assert_equal(copy[RESONANCES].to_dataset(), tree[RESONANCES].to_dataset())
+
+
+def test_one_row_a_resonance_is_exported(store, tmp_path):
+    with xr.open_datatree(store, engine="zarr") as tree:
+        export_sweep(tree, tmp_path / "rows.csv", rows=RESONANCES)
+        with (tmp_path / "rows.csv").open(newline="") as file:
+            rows = list(csv.DictReader(file))
+        assert list(rows[0])[:5] == ["amplitude", "harmonic", "rotation", "resonance_period", "length_maximal"]
+        assert not any(name.startswith(("curve", "table_status")) or name == "resonance" for name in rows[0])
+        # Three of the four tables are convex; five rotations each.
+        assert len(rows) == 3 * 5
+        assert (rows[9]["harmonic"], rows[9]["rotation"], rows[9]["resonance_period"]) == ("3", "2", "5")
+        assert float(rows[9]["length_gap"]) == tree["resonances/length_gap"].values[0, 1, 4]
+
+
+def test_rows_of_tables_hold_the_fate_of_their_curves(store, tmp_path):
+    with xr.open_datatree(store, engine="zarr") as tree:
         export_sweep(tree, tmp_path / "sweep.csv")
+    with (tmp_path / "sweep.csv").open(newline="") as file:
+        rows = list(csv.DictReader(file))
+    assert [row["curve_fate_0.381966"] for row in rows] == ["undecided", "broken", "broken", "pending"]
+    assert "length_gap" not in rows[0]
+
+
+def test_resonances_that_were_not_asked_for_cannot_be_exported(tmp_path):
+    fill(tmp_path / "grid.zarr", grid(), tasks=())
+    with xr.open_datatree(tmp_path / "grid.zarr", engine="zarr") as tree:
+        with pytest.raises(ScannerError, match="this store has no resonances"):
+            export_sweep(tree, tmp_path / "rows.csv", rows=RESONANCES)
+    assert not (tmp_path / "rows.csv").exists()
 
 
 def test_a_split_table_gets_them_once(study, store):
