@@ -16,7 +16,7 @@ from scanner.engine import interrupts
 from scanner.engine.batch import CLUSTERS, batch_cluster
 from scanner.engine.warmth import kernels_are_warm, warm_kernels
 from scanner.errors import EngineError
-from scanner.study import Resources
+from scanner.study import Resources, Study
 
 CONNECT_SECONDS = 20
 PATIENCE = {"distributed.scheduler.allowed-failures": 10}
@@ -25,7 +25,7 @@ PATIENCE = {"distributed.scheduler.allowed-failures": 10}
 
 @contextmanager
 def hire(
-    resources: Resources,
+    study: Study,
     store: Path,
     say: Callable[[str], None],
     client: Client | None = None,
@@ -37,8 +37,9 @@ def hire(
 
     Parameters
     ----------
-    resources
-        What the study says about it; the other arguments go first.
+    study
+        Its ``[resources]`` say where they come from, unless the other arguments do, and what is asked which kernels
+        they need.
     store
         What they are to fill; jobs of a batch system leave what they print in a folder beside it.
     say
@@ -55,6 +56,7 @@ def hire(
     EngineError
         No scheduler answers, or the workers do not start.
     """
+    resources = study.resources
     named = _named_scheduler(resources, scheduler, scheduler_file)
     with ExitStack() as stack:
         if client is not None:
@@ -65,7 +67,8 @@ def hire(
             stack.enter_context(dask.config.set(PATIENCE))
             yield stack.enter_context(Client(stack.enter_context(batch_cluster(resources, workers, store))))
         else:
-            yield _local_client(stack, workers or resources.workers or CPU_COUNT, say)
+            _warm_this_machine(bool(study.rotations), say)
+            yield _local_client(stack, workers or resources.workers or CPU_COUNT)
 
 
 def call_on_scheduler(resources: Resources, scheduler: str | None = None, scheduler_file: str | None = None) -> None:
@@ -91,10 +94,13 @@ def _named_scheduler(
     return (resources.scheduler, resources.scheduler_file) if resources.runner == "scheduler" else None
 
 
-def _local_client(stack: ExitStack, workers: int, say: Callable[[str], None]) -> Client:
-    if not kernels_are_warm():
+def _warm_this_machine(resonances: bool, say: Callable[[str], None]) -> None:
+    if not kernels_are_warm(resonances=resonances):
         say("compiling the kernels, once on this machine: about a minute")
-        warm_kernels()
+        warm_kernels(resonances=resonances)
+
+
+def _local_client(stack: ExitStack, workers: int) -> Client:
     stack.enter_context(dask.config.set(PATIENCE))
     with interrupts.interrupts_ignored():
         try:

@@ -153,7 +153,7 @@ def run_study(
         check_limits(plan, path, 1.0 - run.before.tasks_finished / run.before.tasks)
         if not run.before.complete:
             try:
-                with hire(study.resources, path, display.say, client, workers, scheduler, scheduler_file) as crew:
+                with hire(study, path, display.say, client, workers, scheduler, scheduler_file) as crew:
                     if not interrupts.requested:
                         run.work(crew)
             except KeyboardInterrupt:

@@ -107,5 +107,5 @@ def _plan(order: Order) -> Plan:
     study = parse_study(order.text, allow_code=order.allow_code, folder=order.folder)
     if study.fingerprint != order.fingerprint:
         raise EngineError(f"the worker on {host} reads other input files than the client; put them on a shared disk")
-    warm_kernels()
+    warm_kernels(resonances=bool(study.rotations))
     return make_plan(study)
