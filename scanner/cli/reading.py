@@ -9,8 +9,15 @@ from typing import TYPE_CHECKING
 
 import click
 
-from scanner.cli.options import average_option, force_option, select_option, store_argument, to_option
-from scanner.figures.request import COLOURS, FREQUENCY_BOUNCES, KINDS, LINE_ORBITS, WIDTHS
+from scanner.cli.options import (
+    allow_code_option,
+    average_option,
+    force_option,
+    select_option,
+    store_argument,
+    to_option,
+)
+from scanner.figures.request import CHORDS, COLOURS, FREQUENCY_BOUNCES, KINDS, LINE_ORBITS, WIDTHS
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -108,6 +115,8 @@ def export(store: Path, target: Path, orbits: bool, resonances: bool, force: boo
     type=click.Choice(KINDS),
     help="fractions: regular fractions against one parameter. curve: one variable against one parameter. "
     "map: one variable over two dimensions. portrait: the orbits of one table. "
+    "table: one table with chosen orbits in it and their caustics. "
+    "exponents: how the Lyapunov exponents are distributed, in one table or along one parameter. "
     "frequency: rotation numbers and their diffusion in one table, measured anew. "
     "gaps: length gaps of stored resonances against the amplitude. "
     "By default what suits the number of swept parameters.",
@@ -125,14 +134,21 @@ def export(store: Path, target: Path, orbits: bool, resonances: bool, force: boo
     default=0,
     metavar="N",
     help="Follow each orbit of a portrait anew for N bounces and draw them all, not its start alone; "
-    f"for a frequency figure, bounces of each orbit, {FREQUENCY_BOUNCES} unless given.",
+    f"for a frequency figure, bounces of each orbit, {FREQUENCY_BOUNCES} unless given; "
+    f"for a table, chords drawn of each orbit, {CHORDS} unless given.",
 )
 @click.option(
     "--s",
     type=click.FloatRange(0.0, 1.0),
     default=0.0,
     show_default=True,
-    help="Arc length over the perimeter of the line of a frequency figure.",
+    help="Arc length over the perimeter of the line of a frequency figure, and of the orbits that start at --p.",
+)
+@click.option(
+    "--p",
+    type=click.FloatRange(-1.0, 1.0, min_open=True, max_open=True),
+    multiple=True,
+    help="Start of an orbit to draw in a table; may be repeated. Without it, stored orbits of each sort.",
 )
 @click.option(
     "--orbits",
@@ -140,11 +156,12 @@ def export(store: Path, target: Path, orbits: bool, resonances: bool, force: boo
     default=LINE_ORBITS,
     show_default=True,
     metavar="N",
-    help="Orbits along that line.",
+    help="Orbits along the line of a frequency figure.",
 )
 @click.option(
     "--width", type=click.Choice(WIDTHS), default="single", show_default=True, help="Columns of a journal's page."
 )
+@allow_code_option
 @force_option
 def figure(
     store: Path,
@@ -157,14 +174,18 @@ def figure(
     colour: str,
     bounces: int,
     s: float,
+    p: tuple[float, ...],
     orbits: int,
     width: str,
+    allow_code: bool,
     force: bool,
 ) -> None:
     """Draw the sweep in PATH as a figure for print: PNG, PDF or SVG by the suffix of FILE."""
     from scanner.figures import Request, write_figure
 
-    request = Request(kind or "", select, average, quantity, along, colour, bounces, s, orbits, width)
+    request = Request(
+        kind or "", select, average, quantity, along, colour, bounces, s, p, orbits, width, allow_code=allow_code
+    )
     with open_store(store) as tree:
         taken = write_figure(tree, target, request, force=force)
     click.echo(f"wrote {target}" + (f", tables at {taken}" if taken else ""), err=True)

@@ -14,14 +14,15 @@ from scanner.analysis import average_tables, pick_tables, replace_whole, study_o
 from scanner.analysis.sweep import describe
 from scanner.errors import ScannerError
 from scanner.figures.curves import MOST_LINES, draw_curve, draw_fractions
+from scanner.figures.exponents import draw_exponents
 from scanner.figures.frequency import GRID, draw_frequency
 from scanner.figures.gaps import draw_gaps
 from scanner.figures.heat_map import draw_map
-from scanner.figures.one_table import follow_anew, rebuild_table, require_one_table
+from scanner.figures.inside import FEWEST_BOUNCES, choose_starts, draw_inside
+from scanner.figures.one_table import follow_anew, orbits_of, rebuild_table, require_one_table
 from scanner.figures.portrait import draw_portrait
-from scanner.figures.request import FREQUENCY_BOUNCES, Request
+from scanner.figures.request import CHORDS, FREQUENCY_BOUNCES, Request
 from scanner.figures.style import STYLE, figure_of, write_title
-from scanner.quantities import ORBITS
 
 DEFAULT_QUANTITY = "regular_area_fraction"
 
@@ -53,8 +54,9 @@ def draw_figure(tree: xr.DataTree, request: Request) -> tuple[Figure, str]:
     kind = request.kind or _default_kind(root, request)
     with matplotlib.rc_context(STYLE):  # type: ignore[arg-type]
         axes = _draw(kind, picked, root, request)
-        write_title(axes, study_of(tree).title, _notes(tree, kind, describe(taken), request))
-    return figure_of(axes), describe(taken)
+        figure = figure_of(axes)
+        write_title(figure, study_of(tree).title, _notes(tree, kind, describe(taken), request))
+    return figure, describe(taken)
 
 
 def save_figure(figure: Figure, target: Path) -> None:
@@ -81,10 +83,14 @@ def _default_kind(root: xr.Dataset, request: Request) -> str:
 def _draw(kind: str, picked: xr.DataTree, root: xr.Dataset, request: Request) -> Axes:
     if kind == "portrait":
         return _draw_portrait(picked, request)
+    if kind == "table":
+        return _draw_inside(picked, request)
     if kind == "frequency":
         return _draw_frequency(picked, request)
     if kind == "gaps":
         return draw_gaps(picked, request)
+    if kind == "exponents":
+        return draw_exponents(picked, request)
     names = swept_parameters(root)
     quantity = request.quantity or DEFAULT_QUANTITY
     if quantity not in root:
@@ -115,17 +121,31 @@ def _draw(kind: str, picked: xr.DataTree, root: xr.Dataset, request: Request) ->
 
 def _draw_portrait(picked: xr.DataTree, request: Request) -> Axes:
     require_one_table(picked, "portrait", request)
-    orbits = picked[ORBITS].to_dataset()
+    orbits = orbits_of(picked)
     s, p = orbits["s0"].values[:, None], orbits["p0"].values[:, None]
     if request.bounces:
-        s, p = follow_anew(picked, s[:, 0], p[:, 0], request.bounces)
+        table = rebuild_table(picked, allow_code=request.allow_code)
+        s, p = follow_anew(table, s[:, 0], p[:, 0], request.bounces)
     return draw_portrait(s, p, orbits, request.colour, request.width)
+
+
+def _draw_inside(picked: xr.DataTree, request: Request) -> Axes:
+    require_one_table(picked, "table", request)
+    s, p = ([request.s] * len(request.p), request.p) if request.p else choose_starts(orbits_of(picked))
+    table = rebuild_table(picked, allow_code=request.allow_code)
+    return draw_inside(table, s, p, request.bounces or CHORDS, _judged(picked), request.width)
+
+
+def _judged(tree: xr.DataTree) -> int:
+    """Bounces by which an orbit in a table is judged: as in the store, but enough for a caustic."""
+    return max(study_of(tree).bounces or 0, FEWEST_BOUNCES)
 
 
 def _draw_frequency(picked: xr.DataTree, request: Request) -> Axes:
     require_one_table(picked, "frequency figure", request)
     bounces = request.bounces or FREQUENCY_BOUNCES
-    return draw_frequency(rebuild_table(picked), request.s, request.orbits, bounces, request.width)
+    table = rebuild_table(picked, allow_code=request.allow_code)
+    return draw_frequency(table, request.s, request.orbits, bounces, request.width)
 
 
 def _notes(tree: xr.DataTree, kind: str, taken: str, request: Request) -> list[str]:
@@ -142,10 +162,18 @@ def _notes(tree: xr.DataTree, kind: str, taken: str, request: Request) -> list[s
             f"{GRID[0]} by {GRID[1]} over the section",
             f"{request.bounces or FREQUENCY_BOUNCES} bounces each",
         ]
+    if kind == "table":
+        return [
+            *notes,
+            f"{request.bounces or CHORDS} chords of each orbit",
+            f"judged by {_judged(tree)} bounces",
+        ]
     if study.orbits and study.bounces:
         notes.append(f"{study.orbits} orbits of {study.bounces} bounces a table")
-    if request.bounces:
+    if request.bounces and kind == "portrait":
         notes.append(f"{request.bounces} bounces drawn")
+    if kind == "fractions":
+        notes.append("doubt: earlier less final, error, undecided")
     return notes
 
 

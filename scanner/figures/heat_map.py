@@ -6,12 +6,18 @@ import numpy as np
 import xarray as xr
 from matplotlib.artist import Artist
 from matplotlib.axes import Axes
+from matplotlib.collections import QuadMesh
+from matplotlib.colors import LogNorm, Normalize
+from matplotlib.ticker import MaxNLocator
 
 from scanner.figures.colours import COLOUR_MAP
-from scanner.figures.labels import quantity_label
-from scanner.figures.scale import scale_of
+from scanner.figures.labels import quantity_label, starts_at_zero
+from scanner.figures.scale import Scale, scale_of
 from scanner.figures.style import add_legend, missing_patch, new_axes
 from scanner.quantities import DONE, TABLE_STATUS
+
+LUMINANCE = np.array([0.2126, 0.7152, 0.0722])
+"""Weights of red, green and blue in what the eye takes for brightness (ITU-R BT.709)."""
 
 
 def draw_map(root: xr.Dataset, quantity: str, dims: tuple[str, str], width: str) -> Axes:
@@ -19,13 +25,14 @@ def draw_map(root: xr.Dataset, quantity: str, dims: tuple[str, str], width: str)
     axes = new_axes(width, 0.95)
     across, up = (scale_of(root, name) for name in dims)
     values = root[quantity].transpose(*dims[::-1])
-    lowest, highest = _limits(quantity, values.values)
-    mesh = axes.pcolormesh(
-        across.edges, up.edges, values.values, cmap=COLOUR_MAP, vmin=lowest, vmax=highest, rasterized=values.size > 5000
-    )
+    colours = _colours(quantity, values.values)
+    shown = np.ma.masked_less_equal(values.values, 0.0) if isinstance(colours, LogNorm) else values.values
+    mesh = axes.pcolormesh(across.edges, up.edges, shown, cmap=COLOUR_MAP, norm=colours, rasterized=values.size > 5000)
     across.dress(axes, "x")
     up.dress(axes, "y")
     axes.figure.colorbar(mesh, ax=axes, label=quantity_label(values), pad=0.02)
+    if not across.whole and not up.whole:  # between whole numbers there is nothing for a line to run through
+        _draw_contours(axes, mesh, across, up, values.values)
     status = root["table_status"].broadcast_like(values).transpose(*dims).values
     marked: dict[str, Artist] = {}
     for place in np.argwhere(status != DONE):
@@ -38,13 +45,34 @@ def draw_map(root: xr.Dataset, quantity: str, dims: tuple[str, str], width: str)
     return axes
 
 
-def _limits(quantity: str, values: np.ndarray) -> tuple[float | None, float | None]:
-    """Limits of the colours: fractions and exponents from zero, all other numbers as they fall."""
+def _draw_contours(axes: Axes, mesh: QuadMesh, across: Scale, up: Scale, values: np.ndarray) -> None:
+    """Draw lines of equal value, white on dark colours and black on bright ones."""
     finite = values[np.isfinite(values)]
-    if not finite.size:
-        return 0.0, 1.0
+    if min(values.shape) < 3 or not finite.size or not np.ptp(finite):
+        return
+    lowest, highest = mesh.get_clim()
+    levels = MaxNLocator(5).tick_values(lowest, highest)
+    levels = levels[(levels > finite.min()) & (levels < finite.max())]
+    if not levels.size:
+        return
+    luminance = mesh.to_rgba(levels)[:, :3] @ LUMINANCE
+    lines = axes.contour(
+        across.positions,
+        up.positions,
+        values,
+        levels=levels,
+        colors=["black" if bright > 0.5 else "white" for bright in luminance],
+        linewidths=0.7,
+    )
+    axes.clabel(lines, fontsize=5.5)
+
+
+def _colours(quantity: str, values: np.ndarray) -> Normalize:
+    """Scale of the colours: fractions and exponents from zero, islands by powers of ten, other numbers as they fall."""
+    finite = values[np.isfinite(values)]
+    lowest, highest = (float(finite.min()), float(finite.max())) if finite.size else (0.0, 1.0)
+    if quantity.startswith("island") and highest > 0.0:
+        return LogNorm(float(finite[finite > 0.0].min()), highest)
     if "_fraction" in quantity:
-        return 0.0, 1.0 if finite.max() > 0.5 else max(float(finite.max()), 1e-3)
-    if quantity.startswith(("lyapunov", "entropy")):
-        return 0.0, None
-    return None, None
+        return Normalize(0.0, 1.0 if highest > 0.5 else max(highest, 1e-3))
+    return Normalize(0.0 if starts_at_zero(quantity) else lowest, highest)

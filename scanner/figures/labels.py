@@ -65,5 +65,10 @@ def quantity_label(variable: xr.DataArray, width: int = 46) -> str:
     return "\n".join(textwrap.wrap(label, width)) + (f" ({powers.get(units, units)})" if units != "1" else "")
 
 
+def starts_at_zero(name: str) -> bool:
+    """Tell whether a variable is an exponent or a fraction, which are read against zero."""
+    return "_fraction" in name or name.startswith(("lyapunov", "entropy"))
+
+
 def _plain(name: str) -> str:
     return name.replace("_", " ").replace("$", r"\$")

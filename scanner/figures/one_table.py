@@ -27,6 +27,11 @@ def require_one_table(picked: xr.DataTree, kind: str, request: Request) -> None:
         raise ScannerError(f"this table has no orbits to draw, its status is {TABLE_STATUS[status]}: select another")
 
 
+def orbits_of(picked: xr.DataTree) -> xr.Dataset:
+    """Orbits of the one table that is left, all over the section."""
+    return picked[ORBITS].to_dataset().load()
+
+
 def rebuild_table(picked: xr.DataTree, *, allow_code: bool = False) -> Table:
     """Build the one table that is left, from the study and the values at which swept parameters are held."""
     study = study_of(picked)

@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
-KINDS = ("fractions", "curve", "map", "portrait", "frequency", "gaps")
+KINDS = ("fractions", "curve", "map", "portrait", "table", "exponents", "frequency", "gaps")
 COLOURS = ("verdict", "exponent", "diffusion", "rotation")
 WIDTHS = ("single", "double")
 FREQUENCY_BOUNCES = 1024
+CHORDS = 120
 LINE_ORBITS = 1000
 SUFFIXES = (".png", ".pdf", ".svg")
 
@@ -24,6 +25,8 @@ class Request:
         ``curve``: one variable against one parameter, a line for each value of a second one.
         ``map``: one variable as colours over two dimensions.
         ``portrait``: the orbits of one table, p against s.
+        ``table``: one table with chosen orbits in it, their chords and caustics.
+        ``exponents``: how many orbits have which Lyapunov exponent, in one table or along one parameter.
         ``frequency``: rotation number of one table along a line of the section, and its diffusion over all of it.
         ``gaps``: length gaps of stored resonances against the amplitude, with fitted powers.
         Empty: the kind that suits how many parameters are left.
@@ -40,12 +43,17 @@ class Request:
     bounces
         Bounces for which a portrait follows each orbit anew; 0 shows the starting points alone.
         Bounces of each orbit that a frequency figure measures; 0 stands for `FREQUENCY_BOUNCES`.
+        Chords drawn of each orbit in a table; 0 stands for `CHORDS`.
     s
-        Arc length, as a fraction of the perimeter, of the line of a frequency figure.
+        Arc length, as a fraction of the perimeter, of the line of a frequency figure and of the starts of `p`.
+    p
+        Starts of the orbits drawn in a table; empty for some stored ones of each sort.
     orbits
-        Orbits measured along that line.
+        Orbits measured along the line of a frequency figure.
     width
         ``single`` or ``double`` column.
+    allow_code
+        Whether the user's own function may run where orbits are followed anew.
     """
 
     kind: str = ""
@@ -56,5 +64,7 @@ class Request:
     colour: str = "verdict"
     bounces: int = 0
     s: float = 0.0
+    p: tuple[float, ...] = ()
     orbits: int = LINE_ORBITS
     width: str = "single"
+    allow_code: bool = False

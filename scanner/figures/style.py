@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import textwrap
 from collections.abc import Sequence
+from math import ceil
 
 from matplotlib.artist import Artist
 from matplotlib.axes import Axes
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 from matplotlib.patches import Rectangle
-from matplotlib.transforms import Transform
+from matplotlib.transforms import ScaledTranslation, Transform
 
 from scanner.figures.colours import MISSING
 
@@ -37,23 +38,52 @@ STYLE = {
     "svg.hashsalt": "scanner",
 }
 
+TITLE_POINTS, NOTE_POINTS = 8.0, 6.5
+
 
 def new_axes(width: str, height: float) -> Axes:
     """Make a figure of one plot, `height` being a share of the width of a single column."""
-    figure = Figure(figsize=(COLUMN_INCHES[width], height * COLUMN_INCHES["single"]), dpi=300, layout="constrained")
-    FigureCanvasAgg(figure)
-    return figure.subplots()
+    return _new_figure(width, height).subplots()
 
 
 def new_panels(width: str, height: float) -> tuple[Axes, Axes]:
     """Make a figure of two plots, one over the other in a single column and side by side in two."""
     across, up = (2, 1) if width == "double" else (1, 2)
-    figure = Figure(
-        figsize=(COLUMN_INCHES[width], up * height * COLUMN_INCHES["single"]), dpi=300, layout="constrained"
-    )
-    FigureCanvasAgg(figure)
-    first, second = figure.subplots(up, across)
+    first, second = _new_figure(width, up * height).subplots(up, across)
     return first, second
+
+
+def new_stack(width: str, height: float) -> tuple[Axes, Axes]:
+    """Make a figure of a plot over a lower one on the same horizontal axis."""
+    figure = _new_figure(width, height)
+    first, second = figure.subplots(2, 1, sharex=True, height_ratios=(3, 1))
+    return first, second
+
+
+def new_grid(width: str, count: int, aspect: float) -> list[Axes]:
+    """Make a figure of plots without frames and ticks, two in a row in a single column and four in two.
+
+    `aspect` is the height over the width of what they will show.
+    """
+    most = 2 if width == "single" else 4
+    across, up = min(count, most), ceil(count / most)
+    side = COLUMN_INCHES[width] / max(across, 2)
+    figure = _new_figure(width, (up * (aspect * side + 0.4) + 0.8) / COLUMN_INCHES["single"])
+    found = list(figure.subplots(up, across, squeeze=False).ravel())
+    for axes in found:
+        axes.set_xticks([])
+        axes.set_yticks([])
+        axes.spines[:].set_visible(False)
+    for axes in found[count:]:
+        axes.remove()
+    return found[:count]
+
+
+def _new_figure(width: str, height: float) -> Figure:
+    size = (COLUMN_INCHES[width], height * COLUMN_INCHES["single"])
+    figure = Figure(figsize=size, dpi=300, layout="constrained")
+    FigureCanvasAgg(figure)
+    return figure
 
 
 def figure_of(axes: Axes) -> Figure:
@@ -63,15 +93,20 @@ def figure_of(axes: Axes) -> Figure:
     return figure
 
 
-def write_title(axes: Axes, title: str, notes: Sequence[str]) -> None:
-    """Put the study's title over the plot, and below it in smaller type what was measured."""
-    figure = figure_of(axes)
+def write_title(figure: Figure, title: str, notes: Sequence[str]) -> None:
+    """Put the study's title over the plots, and below it in smaller type what was measured."""
     letters = int(15.5 * figure.get_figwidth())
     lines = textwrap.wrap(title, letters, max_lines=2, placeholder=" ...")
-    unbroken = (note.replace(" ", "\u00a0") for note in notes)
-    small = textwrap.wrap("; ".join(unbroken), letters, max_lines=4, placeholder=" ...")
-    figure.suptitle("\n".join(lines), x=0.01, ha="left", fontsize=8, fontweight="bold", parse_math=False)
-    axes.set_title("\n".join(small), loc="left", fontsize=6.5, parse_math=False)
+    # a note is broken only where it does not fit a line of its own
+    unbroken = (note.replace(" ", "\u00a0") if len(note) < letters else note for note in notes)
+    small = textwrap.wrap("; ".join(unbroken), letters, max_lines=5, placeholder=" ...")
+    # the layout keeps room for the title alone, so that empty lines of it hold the place of the notes
+    held = [*lines, *[""] * ceil(len(small) * NOTE_POINTS / TITLE_POINTS)]
+    figure.suptitle("\n".join(held), x=0.01, ha="left", fontsize=TITLE_POINTS, fontweight="bold", parse_math=False)
+    below = ScaledTranslation(0.0, -(3.0 + 1.2 * TITLE_POINTS * len(lines) + 2.0) / 72.0, figure.dpi_scale_trans)
+    top = figure.transFigure + below
+    text = "\n".join(small)
+    figure.text(0.01, 1.0, text, transform=top, va="top", fontsize=NOTE_POINTS, parse_math=False, gid="notes")
 
 
 def add_legend(axes: Axes, handles: Sequence[Artist]) -> None:

@@ -9,6 +9,7 @@ from matplotlib.text import Text
 
 def assert_legible(figure):
     """Lay the figure out as it would be saved and look at every text of it."""
+    figure.set_dpi(100)
     figure.canvas.draw()
     renderer = figure.canvas.get_renderer()
     for text in figure.findobj(Text):
@@ -25,6 +26,12 @@ def assert_legible(figure):
         boxes = [box for box in boxes if box.width and axes.bbox.x0 - 1 < (box.x0 + box.x1) / 2]
         for left, right in itertools.pairwise(boxes):
             assert left.x1 < right.x0
+
+
+def notes_of(figure):
+    """What stands below the title, as one line."""
+    (notes,) = (text for text in figure.texts if text.get_gid() == "notes")
+    return notes.get_text().replace("\u00a0", " ").replace("\n", " ")
 
 
 def _is_beyond_the_axis(text, figure):

@@ -9,7 +9,8 @@ import warnings
 
 import numpy as np
 import pytest
-from legibility import assert_legible
+from legibility import assert_legible, notes_of
+from matplotlib.contour import ContourSet
 from synthetic import invented_sweep
 
 from scanner.errors import ScannerError
@@ -42,7 +43,23 @@ def test_fractions_show_the_stored_numbers_and_their_bands():
     fan = {tuple(entry.get_ydata()) for entry in axes.lines if entry.get_linewidth() == 0.5}
     assert tuple(tree["regular_volume_fraction_by_horizon"].values[:, 0]) in fan
     assert len(fan) == 6
-    assert axes.get_xlabel() == r"amplitude $\varepsilon$"
+
+
+def test_doubts_stand_below_the_fractions_on_the_same_axis():
+    tree = invented_sweep(ONE)
+    above, below = draw_figure(tree, Request())[0].axes
+    assert below.get_xlabel() == r"amplitude $\varepsilon$"
+    assert above.get_xlim() == below.get_xlim()
+    np.testing.assert_array_equal(
+        line(below, "undecided section area").get_ydata(), tree["undecided_area_fraction"].values
+    )
+    by_horizon = tree["regular_area_fraction_by_horizon"].values
+    fan = [entry.get_ydata() for entry in below.lines if entry.get_linewidth() == 0.5]
+    np.testing.assert_array_equal(fan[0], by_horizon[:, 0] - tree["regular_area_fraction"].values)
+    assert len(fan) == 3
+    band = below.collections[0].get_paths()[0].vertices[:, 1]
+    np.testing.assert_array_equal(np.unique(band), [-0.0123, 0.0123])  # the error of all invented fractions
+    assert len(below.patches) == len(above.patches) == 1  # both say where tables are not convex
 
 
 def test_tables_that_are_not_convex_are_marked():
@@ -92,7 +109,7 @@ def test_average_over_one_parameter_leaves_the_other():
     drawn = line(figure.axes[0], "section area")
     # the same mean by numpy: equal but for the order of summation
     np.testing.assert_allclose(drawn.get_ydata(), tree["regular_area_fraction"].values.mean(axis=0), rtol=1e-13)
-    assert "mean\u00a0over\u00a0realisation" in figure.axes[0].get_title(loc="left")
+    assert "mean over realisation" in notes_of(figure)
 
 
 def test_portrait_shows_the_table_nearest_to_the_selected():
@@ -107,6 +124,23 @@ def test_portrait_shows_the_table_nearest_to_the_selected():
         figure.axes[0].collections[-1].get_offsets()[:, 1], tree["orbits/p0"].isel(place).values[chaotic]
     )
     assert (figure.axes[0].get_xlim(), figure.axes[0].get_ylim()) == ((0.0, 1.0), (-1.0, 1.0))
+
+
+def test_contours_run_along_equal_values():
+    swept = {"amplitude": AMPLITUDES, "eccentricity": np.linspace(0.0, 0.8, 9).tolist()}
+    tree = invented_sweep(swept, convex_below=9.0)
+    contours = next(
+        entry for entry in draw_figure(tree, Request())[0].axes[0].collections if isinstance(entry, ContourSet)
+    )
+    assert contours.levels.tolist() == pytest.approx([0.2, 0.4, 0.6, 0.8])
+    # the invented fraction falls in proportion to the first parameter where the second is at its lowest value
+    (crossing,) = (point for point in contours.get_paths()[1].vertices if point[1] == 0.0)
+    assert crossing[0] == pytest.approx(0.12 * (1.0 - 0.4), abs=1e-12)
+
+
+def test_whole_numbers_have_no_contours_between_them():
+    axes = draw_figure(invented_sweep(TWO, convex_below=9.0), Request())[0].axes[0]
+    assert not any(isinstance(entry, ContourSet) for entry in axes.collections)
 
 
 @pytest.mark.parametrize(
@@ -133,6 +167,11 @@ CASES = [
     ({"amplitude": np.geomspace(1e-4, 0.1, 7).tolist()}, Request()),
     ({"eccentricity": [0.1, 0.2, 0.5], "amplitude": [0.0, 0.5, 1.0]}, Request()),
     ({"amplitude": [0.03]}, Request()),
+    ({"eccentricity": np.linspace(0.0, 0.9, 9).tolist(), "amplitude": AMPLITUDES}, Request(width="double")),
+    (ONE, Request(quantity="island_area_fraction")),
+    (ONE, Request(kind="exponents")),
+    (ONE, Request(kind="exponents", select={"amplitude": 0.03})),
+    ({**ONE, "realisation": [1, 2]}, Request(average=("realisation",))),
 ]
 
 

@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from legibility import assert_legible
+from legibility import assert_legible, notes_of
 from matplotlib.colors import to_hex
 from synthetic import invented_sweep
 
@@ -75,7 +75,7 @@ def test_image_is_the_diffusion_over_the_section(figure):
 
 
 def test_notes_say_what_was_measured_anew(figure):
-    notes = figure.axes[0].get_title(loc="left").replace("\u00a0", " ").replace("\n", " ")
+    notes = notes_of(figure)
     assert "measured anew: 60 orbits at s/L = 0.25; 96 by 64 over the section; 128 bounces each" in notes
     assert "a table" not in notes  # the orbits of the store play no part
 
