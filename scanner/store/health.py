@@ -66,7 +66,7 @@ def verify(path: str | Path) -> list[Damage]:
         lost = set(range(charter.tasks)) - set(ledger.listed())
         found.extend(Damage(_receipt_name(ledger, task), task, "missing") for task in sorted(lost))
     if not is_running(store):
-        found.extend(Damage(str(file.relative_to(store)), None, "leftover") for file in _leftovers(store))
+        found.extend(_list_leftovers(store))
     return found
 
 
@@ -120,7 +120,7 @@ def repair(path: str | Path) -> list[Damage]:
     ledger = Ledger(store)
     ledger.charter()
     with StoreLock(store):
-        damaged = verify(store)
+        damaged = [*verify(store), *_list_leftovers(store)]
         _remove(store, (damage.file for damage in damaged if damage.task is None))
         tasks = sorted({damage.task for damage in damaged if damage.task is not None})
         for task in tasks:
@@ -134,6 +134,10 @@ def remove_leftovers(path: Path) -> None:
     """Remove half-written files of workers that were killed; call it only while no worker writes."""
     for partial in _leftovers(path):
         partial.unlink(missing_ok=True)
+
+
+def _list_leftovers(store: Path) -> list[Damage]:
+    return [Damage(str(file.relative_to(store)), None, "leftover") for file in _leftovers(store)]
 
 
 def _leftovers(path: Path) -> Iterator[Path]:

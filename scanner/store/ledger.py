@@ -165,6 +165,7 @@ class Ledger:
     def write(self, receipt: Receipt, seals: Mapping[str, Seal]) -> None:
         """Put a receipt on the disk; the files it seals, by their names in the store, must be there already."""
         record = {**asdict(receipt), "study": self.charter().fingerprint}
+        self._receipts.mkdir(exist_ok=True)  # where it was lost
         write_durably(self.receipt_path(receipt.task), _seal_lines(record, seals))
 
     def read(self, task: int) -> Receipt | None:

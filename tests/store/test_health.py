@@ -1,12 +1,11 @@
 import shutil
 
 import pytest
-from sweeps import everything, fill, grid, order_for, results
+from sweeps import fill, grid
 
 import scanner
-from scanner.engine.work import run_task
 from scanner.errors import StoreError
-from scanner.store import Damage, Ledger, StoreLock, note_finish, repair, sweep_progress, verify
+from scanner.store import Damage, Ledger, StoreLock, note_finish, repair, verify
 
 VICTIM = "orbits/s0/c.1.0.0"
 
@@ -55,29 +54,6 @@ def test_each_kind_of_damage_is_named_with_its_task(store, kind):
     assert verify(store) == [damage]
 
 
-def test_repair_then_the_damaged_blocks_alone_are_computed_again(store, sound):
-    for kind, name in zip(
-        HARMS, ("orbits/s0/c.0.0.0", "area/c.0.0", "table_status/c.1.0", "orbits/p0/c.2.0.0"), strict=True
-    ):
-        HARMS[kind](store / name)
-    before = everything(store)
-    broken = {damage.task for damage in verify(store)}
-    repair(store)
-    left = {receipt.task for receipt in Ledger(store).receipts()}
-    assert left == set(range(sweep_progress(store).tasks)) - broken
-    assert broken
-    assert left
-    assert verify(store) == []
-    study = grid()
-    for task in broken:
-        run_task(order_for(store, study), task)
-    assert results(store) == results(sound)
-    healthy = {str(Ledger(store).receipt_path(task).relative_to(store)) for task in left}
-    healthy |= {name for task in left for name in Ledger(store).seals(task)}
-    after = everything(store)
-    assert {name: after[name] for name in healthy} == {name: before[name] for name in healthy}
-
-
 def test_a_cleared_block_reads_as_not_done(store):
     flip_byte(store / VICTIM)
     note_finish(store, finished=True)
@@ -85,21 +61,6 @@ def test_a_cleared_block_reads_as_not_done(store):
     with scanner.open_sweep(store) as tree:
         assert int((tree["table_status"] == 0).sum()) > 0
         assert "finished" not in tree.attrs
-
-
-def test_an_altered_receipt_is_damage_and_is_cleared(store):
-    flip_byte(Ledger(store).receipt_path(0))
-    assert [(damage.task, damage.kind) for damage in verify(store)] == [(0, "unreadable")]
-    repair(store)
-    assert 0 not in Ledger(store).listed()
-
-
-def test_damaged_coordinates_are_cleared_and_come_back(store, sound):
-    flip_byte(store / "amplitude/c.0")
-    assert [(damage.file, damage.task) for damage in verify(store)] == [("amplitude/c.0", None)]
-    repair(store)
-    fill(store, grid(), tasks=[])
-    assert results(store) == results(sound)
 
 
 def test_repair_waits_for_no_running_sweep(store):
