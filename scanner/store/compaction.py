@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 import os
 import shutil
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Collection, Iterator
 from dataclasses import dataclass, replace
 from itertools import product
 from pathlib import Path
@@ -15,9 +15,8 @@ import numpy as np
 import zarr
 
 from scanner.errors import StoreError
-from scanner.quantities import REGISTER, ROOT
 from scanner.store.durable import Seal, compare, settle
-from scanner.store.ledger import Ledger
+from scanner.store.ledger import Ledger, Looseness
 from scanner.store.lock import StoreLock
 from scanner.store.progress import sweep_progress
 from scanner.store.regions import chunk_name
@@ -134,8 +133,17 @@ def _make_copy(ledger: Ledger, beside: Path, report: Report) -> None:
     consolidate(beside)
     settle(beside / name for name in (*charter.template, ROOT_METADATA))
     template = {name: Seal.of((beside / name).read_bytes()) for name in charter.template}
-    root = json.dumps(read_root(beside))
-    Ledger(beside).found_compacted(replace(charter, template=template, root=root), ledger.receipts(), shards)
+    root = json.dumps(read_root(beside), indent=2)
+    Ledger(beside).found_compacted(
+        replace(charter, template=template, root=root, compacted=True),
+        ledger.receipts(),
+        shards,
+        Looseness(charter, _read_metadata(ledger.store, template), _read_metadata(beside, template)),
+    )
+
+
+def _read_metadata(store: Path, template: Collection[str]) -> dict[str, str]:
+    return {name: (store / name).read_text() for name in template if name.endswith(ROOT_METADATA)}
 
 
 def _check_task(ledger: Ledger, task: int) -> None:
@@ -148,10 +156,13 @@ def _check_task(ledger: Ledger, task: int) -> None:
         )
 
 
-def _lay_out_copy(store: Path, beside: Path, template: Iterable[str]) -> Iterator[_Block]:
+def _lay_out_copy(store: Path, beside: Path, template: Collection[str]) -> Iterator[_Block]:
     """Make the empty copy: metadata and coordinates as they are, every other array in shards; name what it lacks."""
     source = zarr.open_group(store, mode="r", use_consolidated=False)
-    arrays = [array for key in REGISTER if (array := _find_array(source, *key)) is not None]
+    known = set(template)
+    members = (member for _, member in source.members(max_depth=None))
+    # What has chunks of the template are coordinates.
+    arrays = [array for array in members if isinstance(array, zarr.Array) and f"{array.path}/c.0" not in known]
     remade = {f"{array.path}/{ROOT_METADATA}" for array in arrays}
     for name in (ROOT_METADATA, *template):
         if name not in remade:
@@ -165,12 +176,6 @@ def _lay_out_copy(store: Path, beside: Path, template: Iterable[str]) -> Iterato
         for start in starts:
             ends = map(min, map(sum, zip(start, steps, strict=True)), array.shape)
             yield _Block(array, copy, tuple(map(slice, start, ends)))
-
-
-def _find_array(root: zarr.Group, group: str, name: str) -> zarr.Array[Any] | None:
-    """Find a registered array, in a store that may have been made without its group."""
-    found = root.get(name if group == ROOT else f"{group}/{name}")
-    return found if isinstance(found, zarr.Array) else None
 
 
 def _create_copy(root: zarr.Group, array: zarr.Array[Any]) -> zarr.Array[Any]:

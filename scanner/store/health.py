@@ -9,6 +9,7 @@ from pathlib import Path
 
 from scanner.errors import StoreError
 from scanner.store.durable import compare, make_way, settle
+from scanner.store.expansion import repair_compacted
 from scanner.store.ledger import Ledger
 from scanner.store.lock import StoreLock, is_running
 from scanner.store.template import ROOT_METADATA, is_finished, note_finish, root_is_sound
@@ -121,6 +122,9 @@ def repair(path: str | Path) -> list[Damage]:
     ledger.charter()
     with StoreLock(store):
         damaged = [*verify(store), *_list_leftovers(store)]
+        if ledger.charter().compacted:
+            repair_compacted(store, {damage.file for damage in damaged})
+            return damaged
         _remove(store, (damage.file for damage in damaged if damage.task is None))
         tasks = sorted({damage.task for damage in damaged if damage.task is not None})
         for task in tasks:

@@ -11,13 +11,14 @@ from __future__ import annotations
 
 import json
 from collections.abc import Iterable, Iterator, Mapping
-from dataclasses import asdict, dataclass, replace
+from dataclasses import asdict, dataclass
 from pathlib import Path, PurePosixPath
 from typing import Any
 
 from scanner import __version__
 from scanner.errors import StoreError
 from scanner.store.durable import Seal, write_durably
+from scanner.store.swap import refuse_left_aside
 
 LEDGER = Path("table_status") / "ledger"
 CHARTER = "charter.json"
@@ -67,7 +68,7 @@ class Receipt:
     """Proof that a task is finished, and what came out.
 
     ``orbits`` counts the orbits it settles, ``bounces`` what was really computed for them; ``failures`` lists tables
-    by their index in the grid with a one-line reason.
+    by their index in the grid with a one-line reason; ``tables`` says in words which tables it is about.
     """
 
     task: int
@@ -81,6 +82,24 @@ class Receipt:
     not_convex: int
     failed: int
     failures: tuple[tuple[tuple[int, ...], str], ...]
+    tables: str = ""
+
+
+@dataclass(frozen=True)
+class Looseness:
+    """What a compacted store was before, and what mends it.
+
+    Attributes
+    ----------
+    charter, metadata
+        Its charter then, and the metadata of its arrays by the names of files.
+    compacted_metadata
+        The same of the compacted store.
+    """
+
+    charter: Charter
+    metadata: Mapping[str, str]
+    compacted_metadata: Mapping[str, str]
 
 
 def _seal_lines(*records: object) -> bytes:
@@ -112,6 +131,7 @@ class Ledger:
         self._receipts = self.folder / "receipts"
         self._gathered = self.folder / "receipts.json"
         self._shards = self.folder / "shards.json"
+        self._before = self.folder / "before.json"
         self._charter: Charter | None = None
 
     def found(self, charter: Charter) -> None:
@@ -119,16 +139,23 @@ class Ledger:
         self._receipts.mkdir(parents=True, exist_ok=True)
         write_durably(self.folder / CHARTER, _seal_lines(asdict(charter)))
 
-    def found_compacted(self, charter: Charter, receipts: Iterable[Receipt], shards: Mapping[str, Seal]) -> None:
+    def found_compacted(
+        self, charter: Charter, receipts: Iterable[Receipt], shards: Mapping[str, Seal], before: Looseness
+    ) -> None:
         """Begin the ledger of a compacted store that is being made; the files it seals must be there already."""
         self.folder.mkdir(parents=True)
         write_durably(self._gathered, _seal_lines(*map(asdict, receipts)))
         write_durably(self._shards, _seal_lines(shards))
-        write_durably(self.folder / CHARTER, _seal_lines(asdict(replace(charter, compacted=True))))
+        write_durably(self._before, _seal_lines(asdict(before)))
+        write_durably(self.folder / CHARTER, _seal_lines(asdict(charter)))
 
     def is_founded(self) -> bool:
         """Whether there is a sound charter."""
         return _sealed_lines(self.folder / CHARTER) is not None
+
+    def is_gathered(self) -> bool:
+        """Whether the receipts are those of a compacted store, whatever the charter says."""
+        return self._gathered.exists()
 
     def charter(self) -> Charter:
         """Read what the store was made for.
@@ -143,6 +170,7 @@ class Ledger:
         return self._charter
 
     def _read_charter(self) -> Charter:
+        refuse_left_aside(self.store)
         if not self.store.exists():
             raise StoreError(f"{self.store}: there is no such store; `scanner sweep STUDY --store PATH` makes one")
         lines = _sealed_lines(self.folder / CHARTER)
@@ -156,7 +184,7 @@ class Ledger:
                 f"{self.store}: made by scanner {made_by} in layout {record['layout']}, this is scanner {__version__} "
                 f"and reads layouts up to {LAYOUT}; install scanner {made_by} or later"
             )
-        return Charter(**{**record, "template": _seals(record["template"])})
+        return _charter(record)
 
     def receipt_path(self, task: int) -> Path:
         """Where the receipt of a task is or will be."""
@@ -199,9 +227,17 @@ class Ledger:
         lines = _sealed_lines(self._shards)
         return None if lines is None else _seals(json.loads(lines[0]))
 
+    def looseness(self) -> Looseness | None:
+        """Read what a compacted store was before; None where that is damaged."""
+        lines = _sealed_lines(self._before)
+        if lines is None:
+            return None
+        record = json.loads(lines[0])
+        return Looseness(**{**record, "charter": _charter(record["charter"])})
+
     def damaged_parts(self) -> list[str]:
         """Name the files of a compacted store's ledger that are damaged."""
-        parts = (self._gathered, self._shards)
+        parts = (self._gathered, self._shards, self._before)
         return [str(part.relative_to(self.store)) for part in parts if _sealed_lines(part) is None]
 
     def receipts(self) -> Iterator[Receipt]:
@@ -222,6 +258,10 @@ class Ledger:
             receipt = self.read(task)
             if receipt is not None:
                 yield receipt
+
+
+def _charter(record: dict[str, Any]) -> Charter:
+    return Charter(**{**record, "template": _seals(record["template"])})
 
 
 def _receipt(line: bytes) -> Receipt:

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from functools import lru_cache
+from itertools import product
 from pathlib import Path
 from typing import Any
 
@@ -14,6 +15,7 @@ import zarr
 from scanner.quantities import ORBITS, REGISTER, ROOT, in_group
 from scanner.store.durable import Seal, settle
 from scanner.study import Task
+from scanner.study.layout import ceil_divide
 
 Arrays = Mapping[str, npt.NDArray[np.generic]]
 
@@ -63,6 +65,28 @@ class Regions:
                 files.append(self._store / array.path / chunk_name(region, array.chunks, array.shape))
         settle(files)
         return {str(file.relative_to(self._store)): Seal.of(file.read_bytes()) for file in files}
+
+    def read(self, task: Task) -> dict[str, dict[str, npt.NDArray[np.generic]]]:
+        """Read what a task has written: group to name to values."""
+        return {
+            group: {
+                entry.name: np.asarray(self._arrays[group, entry.name][task.region(entry)]) for entry in in_group(group)
+            }
+            for group in task.groups
+        }
+
+    def files_of(self, task: Task) -> Iterator[str]:
+        """Name the files, chunks or shards of chunks, that hold what a task has written."""
+        for group in task.groups:
+            for entry in in_group(group):
+                array = self._arrays[group, entry.name]
+                steps = array.shards or array.chunks
+                spans = [part.indices(size) for part, size in zip(task.region(entry), array.shape, strict=True)]
+                places = [
+                    range(start // step, ceil_divide(stop, step))
+                    for (start, stop, _), step in zip(spans, steps, strict=True)
+                ]
+                yield from (f"{array.path}/{'.'.join(['c', *map(str, place)])}" for place in product(*places))
 
     def read_orbits(self, task: Task) -> dict[str, npt.NDArray[np.generic]]:
         """Read all variables of the group ``orbits`` for the tables and orbits of a task."""

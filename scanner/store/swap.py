@@ -11,6 +11,7 @@ import errno
 import os
 from pathlib import Path
 
+from scanner.errors import StoreError
 from scanner.store.durable import settle
 
 _HERE = -100
@@ -50,6 +51,18 @@ def put_back(store: Path) -> None:
     else:
         aside.rename(store)
         settle([store])
+
+
+def refuse_left_aside(store: Path) -> None:
+    """Refuse a store that was left aside so.
+
+    Raises
+    ------
+    StoreError
+        It was.
+    """
+    if not store.exists() and name_aside(store).exists():
+        raise StoreError(f"{store}: left aside by `scanner compact`; run that again, which puts it back")
 
 
 def _exchange(one: Path, other: Path) -> bool:

@@ -28,6 +28,7 @@ from scanner.quantities import CURVES, DIRECTIONS, ORBITS, P_BINS, PERIODS, RESO
 from scanner.store.durable import Seal, compare, make_way, settle, write_durably
 from scanner.store.ledger import CHARTER, LAYOUT, LEDGER, Charter, Ledger
 from scanner.store.opening import enclosing_store
+from scanner.store.swap import refuse_left_aside
 from scanner.study import Plan, numerics_version
 from scanner.tables import FAMILIES
 
@@ -46,6 +47,7 @@ def prepare_store(path: Path, plan: Plan) -> None:
     around = enclosing_store(path.parent)
     if around is not None:
         raise StoreError(f"{path}: lies inside the store {around}; give a place outside")
+    refuse_left_aside(path)
     if is_vacant(path):
         try:
             with _template(path, plan) as template:
@@ -137,6 +139,10 @@ def _mend_charter(path: Path, plan: Plan) -> None:
     ledger, root = Ledger(path), read_root(path)
     if root is None or ledger.is_founded() or root["attributes"].get("fingerprint") != plan.study.fingerprint:
         return
+    if ledger.is_gathered():
+        raise StoreError(
+            f"{path}: the charter of this compacted store is damaged; take {LEDGER / CHARTER} from a backup"
+        )
     own = root["attributes"]
     make_way(path, f"{LEDGER}/{CHARTER}")
     with _template(path, plan) as template:
