@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 @store_argument
 def progress(store: Path) -> None:
     """Print how far the sweep in PATH is, while it is being written or long after."""
-    from scanner.store import sweep_progress
+    from scanner.store import read_pulse, sweep_progress
 
     state = sweep_progress(store)
     share = state.tasks_finished / state.tasks
@@ -28,19 +28,30 @@ def progress(store: Path) -> None:
         f"tables  {state.settled:,} of {state.tables:,}: {state.done:,} done, "
         f"{state.not_convex:,} not convex, {state.failed:,} failed"
     )
+    pulse = read_pulse(store) if state.running else None
+    if pulse is not None:
+        losses = f"; {pulse.losses}" if pulse.losses else ""
+        click.echo(f"now     {pulse.workers:,} workers, {pulse.handed_out:,} tasks handed out to them{losses}")
     if state.bounces_per_second is not None:
-        left = "" if state.complete or state.seconds_left is None else f", {duration(state.seconds_left)} left"
+        left = "" if not state.running or state.seconds_left is None else f", {duration(state.seconds_left)} left"
         click.echo(f"rate    {state.bounces_per_second / 1e6:,.1f} million bounces/s{left}")
+        click.echo(f"spent   {state.core_seconds / 3600:,.3g} core-hours")
     if state.hosts:
         click.echo("hosts   " + ", ".join(f"{host} {100 * part:.0f} %" for host, part in state.hosts.items()))
+    for number, (tables, seconds) in enumerate(state.slowest):
+        click.echo(f"{'' if number else 'slowest':<8}{seconds:,.1f} s a table: {tables}")
     if state.failed:
         click.echo("failed  list the tables with `scanner summary --failed`")
 
 
 def _activity(state: SweepProgress) -> str:
+    """Say whether somebody is at work, and what to do if nobody is."""
     if state.complete:
         return "complete"
-    return "running" if state.running else "not running: the same `scanner sweep` carries on"
+    if state.holder is None:
+        return "not running: the same `scanner sweep` carries on"
+    client = f"process {state.holder.pid} on {state.holder.host}, last sign of life {duration(state.silent)} ago"
+    return f"running ({client})" if state.running else f"its client is dead ({client}): `scanner sweep` carries on"
 
 
 @click.command(short_help="Look for damage in a store, and clear it.")

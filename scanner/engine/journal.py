@@ -8,6 +8,8 @@ from contextlib import contextmanager
 from logging.handlers import MemoryHandler
 from pathlib import Path
 
+from scanner.errors import ScannerError
+
 
 @contextmanager
 def log_beside(store: Path) -> Iterator[None]:
@@ -25,6 +27,9 @@ def log_beside(store: Path) -> Iterator[None]:
         logger.handlers[:] = [passed_on]
     try:
         yield
+    except ScannerError as error:
+        package.error("%s", error)
+        raise
     finally:
         for logger, handlers in on_screen.items():
             logger.handlers[:] = handlers

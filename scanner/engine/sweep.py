@@ -14,6 +14,7 @@ from scanner.engine.agenda import Agenda
 from scanner.engine.crew import call_on_scheduler, hire
 from scanner.engine.dispatch import Dispatcher, Losses
 from scanner.engine.display import Display, choose_display
+from scanner.engine.forecast import expected_core_hours
 from scanner.engine.interrupts import Interrupts
 from scanner.engine.journal import log_beside
 from scanner.engine.tally import Tally, clock
@@ -21,6 +22,7 @@ from scanner.engine.work import Order, Outcome
 from scanner.errors import EngineError, StoreError
 from scanner.store import (
     Ledger,
+    Pulse,
     StoreLock,
     SweepProgress,
     check_numerics,
@@ -30,6 +32,7 @@ from scanner.store import (
     refuse_losses,
     remove_leftovers,
     sweep_progress,
+    write_pulse,
 )
 from scanner.study import Plan, Study, load_study, make_plan
 from scanner.study.limits import check_limits
@@ -60,6 +63,9 @@ class SweepReport:
         Duration of this run, from when there were workers, and what it computed.
     losses
         What went wrong in this run and was made good: workers lost, tasks tried again, tasks repeated.
+    core_hours, expected_core_hours
+        What all finished tasks of the store took, also in earlier runs, and what was expected when it was begun; None
+        where there was no quick estimate.
     """
 
     store: Path
@@ -71,6 +77,8 @@ class SweepReport:
     seconds: float
     bounces: int
     losses: Losses = field(default_factory=Losses)
+    core_hours: float = 0.0
+    expected_core_hours: float | None = None
 
     @property
     def exit_status(self) -> int:
@@ -81,8 +89,12 @@ class SweepReport:
         """One line."""
         failed = f", {len(self.failures)} failed" if self.failures else ""
         state = f"{self.store}: {self.done} of {self.tables} tables done, {self.not_convex} not convex{failed}"
+        expected = self.expected_core_hours
+        cost = f"{self.core_hours:.3g} core-hours" + ("" if expected is None else f", {expected:.3g} expected")
+        if not self.bounces:
+            return f"{state}; {cost}{self.losses}"
         rate = f"{self.bounces / max(self.seconds, 1e-3) / 1e6:.1f} M bounces/s"
-        return f"{state}; this run took {clock(self.seconds)} at {rate}{self.losses}"
+        return f"{state}; {cost}; this run took {clock(self.seconds)} at {rate}{self.losses}"
 
 
 def run_study(
@@ -176,6 +188,7 @@ class _Run:
         self._reported: set[int] = set()
         self._abandoned: dict[int, str] = {}
         self._losses = Losses()
+        self._expected: float | None = None
         self.before = sweep_progress(path)
         log.info(
             "%s",
@@ -186,6 +199,7 @@ class _Run:
     def work(self, client: Client) -> None:
         """Have all that is not finished computed, until done or interrupted."""
         note_finish(self._path, finished=False)
+        self._expected = expected_core_hours(self._plan, self._path)
         self._started = time.monotonic()
         self._tally = Tally(self.before)
         agenda = Agenda(self._plan, self.before.finished)
@@ -193,9 +207,12 @@ class _Run:
         self._abandoned, self._losses = dispatcher.abandoned, dispatcher.losses
         log.info("%s", f"scheduler {client.scheduler.addr}, dashboard {client.dashboard_link}")
         draining = False
+        workers = -1
         while dispatcher.turn():
-            self._lock.beat()
-            self._display.show(self._tally, sum(dispatcher.workers.values()))
+            before, workers = workers, sum(dispatcher.workers.values())
+            if self._lock.beat() or workers != before:
+                write_pulse(self._path, Pulse(workers, dispatcher.flying, str(self._losses).removeprefix(", ")))
+            self._display.show(self._tally, workers)
             if self._interrupts.requested and not draining:
                 draining = True
                 dispatcher.drain()
@@ -221,6 +238,8 @@ class _Run:
             seconds=time.monotonic() - self._started,
             bounces=self._bounces,
             losses=self._losses,
+            core_hours=after.core_seconds / 3600,
+            expected_core_hours=self._expected,
         )
         log.info("%s", str(report))
         for line in report.failures:

@@ -76,9 +76,19 @@ def run_task(order: Order, number: int) -> Outcome:
         not_convex=result.count(NOT_CONVEX),
         failed=result.count(FAILED),
         failures=tuple(result.failures),
+        tables=_name_tables(plan, task),
     )
     ledger.write(receipt, seals)
     return Outcome(**{name: getattr(receipt, name) for name in Outcome.__dataclass_fields__})
+
+
+def _name_tables(plan: Plan, task: Task) -> str:
+    """Say which tables a task is about: the values of the swept parameters, from the first to the last."""
+    names = []
+    for (name, values), part in zip(plan.study.swept.items(), task.box, strict=True):
+        first, last = values[part.start], values[part.stop - 1]
+        names.append(f"{name} = {first:.6g}" + (f" to {last:.6g}" if last != first else ""))
+    return ", ".join(names) or "the table"
 
 
 def _reduce(plan: Plan, task: Task, regions: Regions, ledger: Ledger) -> CellResult:

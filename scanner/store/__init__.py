@@ -7,6 +7,7 @@ from scanner.store.ledger import Charter, Ledger, Receipt
 from scanner.store.lock import StoreLock
 from scanner.store.opening import enclosing_store, open_sweep
 from scanner.store.progress import SweepProgress, list_failures, sweep_progress
+from scanner.store.pulse import Pulse, read_pulse, write_pulse
 from scanner.store.regions import Regions, open_regions
 from scanner.store.template import check_numerics, is_vacant, note_finish, prepare_store
 
@@ -15,6 +16,7 @@ __all__ = [
     "Compaction",
     "Damage",
     "Ledger",
+    "Pulse",
     "Receipt",
     "Regions",
     "Seal",
@@ -30,9 +32,11 @@ __all__ = [
     "open_regions",
     "open_sweep",
     "prepare_store",
+    "read_pulse",
     "refuse_losses",
     "remove_leftovers",
     "repair",
     "sweep_progress",
     "verify",
+    "write_pulse",
 ]

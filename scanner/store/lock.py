@@ -61,7 +61,7 @@ class StoreLock:
             holder, silent = self._look()
             if holder is None:
                 continue
-            if _lives(holder, silent):
+            if lives(holder, silent):
                 raise StoreError(
                     f"{self.store}: in use by process {holder.pid} on {holder.host}, which gave a sign of life "
                     f"{silent:.0f} s ago; wait for it or stop it (silence of {SILENCE_SECONDS:.0f} s frees the store)"
@@ -76,8 +76,13 @@ class StoreLock:
         if self._look()[0] == self._own:
             self._path.unlink()
 
-    def beat(self) -> None:
+    def beat(self) -> bool:
         """Show a sign of life; cheap enough to be called at every turn of a loop.
+
+        Returns
+        -------
+        bool
+            Whether it was time for one.
 
         Raises
         ------
@@ -85,12 +90,13 @@ class StoreLock:
             The store was taken over, because this process had been silent (asleep, say) for long.
         """
         if time.monotonic() - self._last_beat < BEAT_SECONDS:
-            return
+            return False
         holder = self._look()[0]
         if holder != self._own:
             raise StoreError(f"{self.store}: taken over by {holder or 'someone'} while this process was not responding")
         os.utime(self._path)
         self._last_beat = time.monotonic()
+        return True
 
     def _take(self) -> bool:
         """Put the lock in place whole, or find that there is one."""
@@ -140,10 +146,11 @@ def _read(path: Path) -> Holder:
 def is_running(store: Path) -> bool:
     """Whether a living process holds the store."""
     holder, silent = look(store)
-    return holder is not None and _lives(holder, silent)
+    return holder is not None and lives(holder, silent)
 
 
-def _lives(holder: Holder, silent: float) -> bool:
+def lives(holder: Holder, silent: float) -> bool:
+    """Whether a holder is still there: its process on this host, on another one by its signs of life."""
     if holder.host != socket.gethostname():
         return silent < SILENCE_SECONDS
     try:

@@ -8,9 +8,10 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from scanner.store.ledger import Ledger, Receipt
-from scanner.store.lock import is_running
+from scanner.store.lock import Holder, lives, look
 
 RECENT_SECONDS = 600.0
+SLOWEST = 3
 
 
 @dataclass(frozen=True)
@@ -33,6 +34,13 @@ class SweepProgress:
         Index in the grid and reason of every failed table.
     running
         Whether a living process holds the store.
+    holder, silent
+        Who holds the store, dead or alive, and for how many seconds it has given no sign of life; None where nobody
+        does, as after a run that ended in good order.
+    core_seconds
+        Time of all workers that went into finished tasks.
+    slowest
+        The tables that took the longest, as their parameters, and seconds a table.
     """
 
     tables: int
@@ -49,6 +57,10 @@ class SweepProgress:
     hosts: dict[str, float]
     failures: dict[tuple[int, ...], str]
     running: bool
+    holder: Holder | None = None
+    silent: float = 0.0
+    core_seconds: float = 0.0
+    slowest: tuple[tuple[str, float], ...] = ()
 
     @property
     def tasks_finished(self) -> int:
@@ -77,6 +89,7 @@ def sweep_progress(path: str | Path) -> SweepProgress:
     orbits = charter.tables * charter.orbits
     settled = sum(receipt.orbits for receipt in receipts)
     orbit_rate, bounce_rate = _recent_rates(receipts)
+    holder, silent = look(store)
     return SweepProgress(
         tables=charter.tables,
         settled=done + not_convex + failed,
@@ -91,7 +104,11 @@ def sweep_progress(path: str | Path) -> SweepProgress:
         seconds_left=(orbits - settled) / orbit_rate if orbit_rate else None,
         hosts=_shares(receipts),
         failures=list_failures(receipts),
-        running=is_running(store),
+        running=holder is not None and lives(holder, silent),
+        holder=holder,
+        silent=silent,
+        core_seconds=sum(receipt.seconds for receipt in receipts),
+        slowest=_slowest(receipts),
     )
 
 
@@ -123,3 +140,14 @@ def _shares(receipts: Sequence[Receipt]) -> dict[str, float]:
     total = sum(seconds.values())
     by_time = sorted(seconds.items(), key=lambda entry: -entry[1])
     return {host: spent / total for host, spent in by_time} if total else {}
+
+
+def _slowest(receipts: Sequence[Receipt]) -> tuple[tuple[str, float], ...]:
+    """Tables that took the longest, those of one task together; a table may have been split over several tasks."""
+    seconds: defaultdict[str, float] = defaultdict(float)
+    tables: defaultdict[str, int] = defaultdict(int)
+    for receipt in receipts:
+        seconds[receipt.tables] += receipt.seconds
+        tables[receipt.tables] += receipt.done + receipt.not_convex + receipt.failed
+    each = [(name, seconds[name] / count) for name, count in tables.items() if name and count]
+    return tuple(sorted(each, key=lambda entry: -entry[1])[:SLOWEST])
