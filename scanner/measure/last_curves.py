@@ -20,7 +20,7 @@ Codes = npt.NDArray[np.int8]
 LONGEST_ORBIT = 55
 """Bounces of the longest orbits that are sought by default; time grows as the cube."""
 LARGE = 10.0
-"""Residue beyond which no longer orbits are sought of a curve that is broken: they would tell the same."""
+"""Residue beyond which no longer orbits are sought for a curve that is broken: they would tell the same."""
 
 
 def last_curves(p: Floats, rotation: Floats, verdict: Codes) -> dict[str, float | Floats]:
@@ -119,7 +119,8 @@ def curve_fate(table: Table, rotation: float = CURVES[0], longest_orbit: int = L
         An irrational number in (0, 1), best a noble one as in ``quantities.CURVES``; the curve of 1 - rotation is the
         same one run backwards.
     longest_orbit
-        Most bounces of the periodic orbits; longer ones are not sought once the curve is known to be broken.
+        Most bounces of the periodic orbits; they are sought only until large residues, or such as are all rounding,
+        have told.
 
     Raises
     ------
@@ -135,7 +136,8 @@ def curve_fate(table: Table, rotation: float = CURVES[0], longest_orbit: int = L
     for number, orbit in enumerate(orbits, 1):
         residues.append(float(resonance_numbers(table, [orbit])["residue_minimax"][0]))
         judged = judge_residues([q for _, q in orbits[:number]], residues)
-        if residues[-1] > LARGE and judged.fate == "broken":
+        all_rounding = judged.fate == "survives" and math.isnan(judged.growth)
+        if all_rounding or (judged.fate == "broken" and residues[-1] > LARGE):
             break
     used = tuple(orbits[: len(residues)])
     return CurveFate(rotation, used, tuple(residues), judged.growth, judged.error, judged.fate)

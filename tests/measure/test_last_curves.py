@@ -3,6 +3,7 @@ import math
 import numpy as np
 import pytest
 
+from scanner.bounce import trace
 from scanner.errors import TableError
 from scanner.measure import survey_table
 from scanner.measure.last_curves import curve_fate, find_band, last_curves
@@ -116,6 +117,20 @@ def test_zero_curvature_leaves_no_band():
         build_table("radial_harmonic", amplitude=0.2, harmonic=2), orbits=256, bounces=4096, replicates=2
     )
     assert flat["rotational_band_p"].values.tolist() == [1.0, 1.0]
+
+
+def test_orbits_cross_a_broken_curve_and_none_that_survives():
+    """The advance of an orbit over 500 bounces at a time tells on which side of the curve it is; computed here."""
+    curve = CURVES[0]
+    s, p = (grid.ravel() for grid in np.meshgrid(np.arange(4) / 8.0, np.linspace(0.2, 0.5, 8)))
+    for amplitude, fate, crossed in ((0.045, "survives", False), (0.06, "broken", True)):
+        table = build_table("radial_harmonic", amplitude=amplitude, harmonic=2)
+        assert curve_fate(table, curve).fate == fate
+        advance = np.diff(trace(table, s, p, bounces=40_000)["s"].values) % 1.0
+        means = advance.reshape(s.size, -1, 500).mean(axis=-1)
+        # Orbits on the curve itself have means within 1/500 of it.
+        crossing = (means.min(axis=1) < curve - 0.004) & (means.max(axis=1) > curve + 0.004)
+        assert crossing.any() == crossed
 
 
 def test_growth_of_the_residues_passes_zero_once():
