@@ -5,7 +5,8 @@ from scanner.store.durable import Seal, compare
 from scanner.store.health import Damage, refuse_losses, remove_leftovers, repair, verify
 from scanner.store.ledger import Charter, Ledger, Receipt
 from scanner.store.lock import StoreLock
-from scanner.store.opening import enclosing_store, open_sweep
+from scanner.store.metadata import enclosing_store
+from scanner.store.opening import open_sweep
 from scanner.store.progress import SweepProgress, list_failures, sweep_progress
 from scanner.store.pulse import Pulse, read_pulse, write_pulse
 from scanner.store.regions import Regions, open_regions

@@ -18,10 +18,11 @@ from scanner.errors import StoreError
 from scanner.store.durable import Seal, compare, settle
 from scanner.store.ledger import Ledger, Looseness
 from scanner.store.lock import StoreLock
+from scanner.store.metadata import ROOT_METADATA, read_root
 from scanner.store.progress import sweep_progress
 from scanner.store.regions import chunk_name
 from scanner.store.swap import name_beside, put_back, swap
-from scanner.store.template import ROOT_METADATA, consolidate, create_array, read_root
+from scanner.store.template import consolidate, create_array
 from scanner.study.layout import ceil_divide
 
 CHUNK_BYTES = 2**18

@@ -12,9 +12,10 @@ from scanner.errors import StoreError
 from scanner.quantities import ORBITS, RESONANCES
 from scanner.store.durable import compare, make_way, settle, write_durably
 from scanner.store.ledger import Ledger, Looseness
+from scanner.store.metadata import ROOT_METADATA
 from scanner.store.regions import Regions
 from scanner.store.swap import name_beside, swap
-from scanner.store.template import ROOT_METADATA, check_numerics
+from scanner.store.template import check_numerics
 from scanner.study.plan import TaskList
 
 

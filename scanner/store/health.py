@@ -12,7 +12,8 @@ from scanner.store.durable import compare, make_way, settle
 from scanner.store.expansion import repair_compacted
 from scanner.store.ledger import Ledger
 from scanner.store.lock import StoreLock, is_running
-from scanner.store.template import ROOT_METADATA, is_finished, note_finish, root_is_sound
+from scanner.store.metadata import damaged_metadata, is_finished, root_is_sound
+from scanner.store.template import note_finish
 
 
 @dataclass(frozen=True)
@@ -52,9 +53,7 @@ def verify(path: str | Path) -> list[Damage]:
     store = Path(path)
     ledger = Ledger(store)
     charter = ledger.charter()
-    found = [Damage(name, None, kind) for name, kind in compare(store, charter.template)]
-    if not root_is_sound(store, charter):
-        found.append(Damage(ROOT_METADATA, None, "unreadable"))
+    found = [Damage(name, None, kind) for name, kind in damaged_metadata(store)]
     if charter.compacted:
         return [*found, *_verify_shards(ledger)]
     for task in ledger.listed():

@@ -5,16 +5,11 @@ from __future__ import annotations
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from scanner.store.ledger import Ledger
+from scanner.errors import StoreError
+from scanner.store.metadata import damaged_metadata
 
 if TYPE_CHECKING:
     import xarray as xr
-
-
-def enclosing_store(place: Path) -> Path | None:
-    """Find the store, of this tool or another zarr hierarchy, that a place is in or is itself."""
-    here = place.absolute()
-    return next((folder for folder in (here, *here.parents) if (folder / "zarr.json").exists()), None)
 
 
 def open_sweep(path: str | Path) -> xr.DataTree:
@@ -34,9 +29,11 @@ def open_sweep(path: str | Path) -> xr.DataTree:
     Raises
     ------
     StoreError
-        The path is missing or not a store of this tool.
+        The path is missing or not a store of this tool, or its metadata is damaged.
     """
     import xarray as xr  # here, as it would be a fifth of a worker's memory, and workers do not read this way
 
-    Ledger(Path(path)).charter()
+    # Looked at beforehand: of damaged metadata the libraries complain at length.
+    for name, kind in damaged_metadata(Path(path)):
+        raise StoreError(f"{path}: damaged, {name} is {kind}; the same `scanner sweep` writes it again")
     return xr.open_datatree(path, engine="zarr", consolidated=False)

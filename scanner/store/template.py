@@ -27,13 +27,10 @@ from scanner.errors import StoreError
 from scanner.quantities import CURVES, DIRECTIONS, ORBITS, P_BINS, PERIODS, RESONANCES, ROOT
 from scanner.store.durable import Seal, compare, make_way, settle, write_durably
 from scanner.store.ledger import CHARTER, LAYOUT, LEDGER, Charter, Ledger
-from scanner.store.opening import enclosing_store
+from scanner.store.metadata import ROOT_METADATA, enclosing_store, read_root, root_is_sound
 from scanner.store.swap import refuse_left_aside
 from scanner.study import Plan, numerics_version
 from scanner.tables import FAMILIES
-
-ROOT_METADATA = "zarr.json"
-"""The one file of a store that differs between two runs of a study, beside the ledger: it holds times and host."""
 
 
 def prepare_store(path: Path, plan: Plan) -> None:
@@ -110,30 +107,6 @@ def note_finish(path: Path, finished: bool) -> None:
         del root.attrs["finished"]
 
 
-def is_finished(path: Path) -> bool:
-    """Whether the time of completion is noted."""
-    try:
-        return "finished" in json.loads((path / ROOT_METADATA).read_bytes())["attributes"]
-    except (OSError, ValueError, TypeError, KeyError):
-        return False
-
-
-def read_root(path: Path) -> dict[str, Any] | None:
-    """Read the root's metadata without the time of completion; None where there is none that can be read."""
-    try:
-        found = json.loads((path / ROOT_METADATA).read_bytes())
-        found["attributes"].pop("finished", None)
-    except (OSError, ValueError, TypeError, KeyError, AttributeError):
-        return None
-    return dict(found)
-
-
-def root_is_sound(path: Path, charter: Charter) -> bool:
-    """Whether the root's metadata is as it was made, but for the time of completion."""
-    root = read_root(path)
-    return root == json.loads(charter.root) if charter.root else root is not None
-
-
 def _mend_charter(path: Path, plan: Plan) -> None:
     """Write a damaged charter again, where the root's metadata says that the store is this study's."""
     ledger, root = Ledger(path), read_root(path)
@@ -147,7 +120,7 @@ def _mend_charter(path: Path, plan: Plan) -> None:
     make_way(path, f"{LEDGER}/{CHARTER}")
     with _template(path, plan) as template:
         made = Ledger(template).charter()
-    ledger.found(replace(made, root=json.dumps(root), version=own.get("scanner", ""), numerics=own.get("numerics", "")))
+    ledger.found(replace(made, root=json.dumps(root), version=own.get("version", ""), numerics=own.get("numerics", "")))
 
 
 def _mend_template(path: Path, plan: Plan) -> None:
