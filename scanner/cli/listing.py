@@ -5,15 +5,15 @@ from __future__ import annotations
 import json
 import shutil
 import sys
-from collections.abc import Callable, Sequence
 
 import click
 import pandas as pd
 import xarray as xr
 
 from scanner.analysis import study_of, summarise, swept_parameters
-from scanner.analysis.summary import DRIFT, count_statuses, largest_drift
-from scanner.cli.terminal import align, number, on_terminal, print_lines, uncertain
+from scanner.analysis.summary import count_statuses, largest_drift
+from scanner.analysis.wording import first_and_last, number, write_parameters, write_summary
+from scanner.cli.terminal import align, on_terminal, print_lines
 
 DISPENSABLE = ("diffusion", "undecided", "drift", "tables", "Lyapunov/bounce", "regular volume")
 """Columns that make room on a narrow terminal, the first one first."""
@@ -24,7 +24,7 @@ def list_tables(root: xr.Dataset, most: int) -> None:
     study = study_of(root)
     rows = summarise(root)
     most = most if on_terminal() else 0
-    texts = _texts(rows if not most else _ends(rows, most), swept_parameters(root))
+    texts = write_summary(first_and_last(rows, most), swept_parameters(root))
     omitted = _fit(texts, shutil.get_terminal_size().columns) if on_terminal() else []
     lines = align(texts)
     hidden = len(rows) - len(texts)
@@ -53,7 +53,7 @@ def list_failures(rows: pd.DataFrame) -> None:
     texts["status"] = texts["status"].str.replace("_", " ")
     if not any(texts["reason"]):
         del texts["reason"]
-    print_lines(align(_written(texts, [name for name in texts if name not in ("status", "reason")])))
+    print_lines(align(write_parameters(texts, [name for name in texts if name not in ("status", "reason")])))
     click.echo("\nwhy a table is not convex: scanner estimate STUDY")
 
 
@@ -65,35 +65,6 @@ def write_rows(rows: pd.DataFrame, form: str) -> None:
     else:
         known = rows.astype(object).where(rows.notna(), None)
         click.echo(json.dumps(known.to_dict("records"), indent=1, ensure_ascii=False))
-
-
-def _ends(rows: pd.DataFrame, most: int) -> pd.DataFrame:
-    """Return the first and the last rows."""
-    return rows if len(rows) <= most else pd.concat([rows.head((most + 1) // 2), rows.tail(most // 2)])
-
-
-def _written(rows: pd.DataFrame, names: Sequence[str]) -> pd.DataFrame:
-    """Write the columns of these swept parameters as people do."""
-    return rows.assign(**{name: [f"{value:.6g}" for value in rows[name]] for name in names})
-
-
-def _texts(rows: pd.DataFrame, names: Sequence[str]) -> pd.DataFrame:
-    """Summary as texts under the headings that people see."""
-
-    def column(write: Callable[..., str], *keys: str) -> list[str]:
-        return [write(*values) for values in zip(*(rows[key] for key in keys), strict=True)]
-
-    texts = _written(rows, names)[list(names)]
-    texts["status"] = column(lambda status: status.replace("_", " "), "table_status")
-    if "tables_averaged" in rows:
-        texts["tables"] = column(str, "tables_averaged")
-    texts["regular area"] = column(uncertain, "regular_area_fraction", "regular_area_fraction_stderr")
-    texts["regular volume"] = column(uncertain, "regular_volume_fraction", "regular_volume_fraction_stderr")
-    texts["undecided"] = column(number, "undecided_area_fraction")
-    texts["Lyapunov/bounce"] = column(uncertain, "lyapunov_per_bounce", "lyapunov_per_bounce_stderr")
-    texts["diffusion"] = column(lambda value: number(value, 2), "diffusion_median")
-    texts["drift"] = column(lambda value: number(value, 4, "+"), DRIFT)
-    return texts
 
 
 def _fit(texts: pd.DataFrame, width: int) -> list[str]:

@@ -1,4 +1,4 @@
-"""Commands that read a store: summary, export, figure."""
+"""Commands that read a store: summary, export, figure, report."""
 
 from __future__ import annotations
 
@@ -188,4 +188,45 @@ def figure(
     )
     with open_store(store) as tree:
         taken = write_figure(tree, target, request, force=force)
+    click.echo(f"wrote {target}" + (f", tables at {taken}" if taken else ""), err=True)
+
+
+@click.command(short_help="Write one page with figures, numbers and doubts.")
+@store_argument
+@to_option
+@select_option
+@average_option
+@click.option(
+    "--rows",
+    type=click.IntRange(min=0),
+    default=400,
+    show_default=True,
+    help="Most rows of the table of numbers; 0 for all.",
+)
+@allow_code_option
+@force_option
+def report(
+    store: Path,
+    target: Path,
+    select: dict[str, str],
+    average: tuple[str, ...],
+    rows: int,
+    allow_code: bool,
+    force: bool,
+) -> None:
+    """Write a report of the sweep in PATH: one HTML file that opens without a network and prints well."""
+    from scanner.report import write_report
+    from scanner.store import sweep_progress
+
+    with open_store(store) as tree:
+        taken = write_report(
+            tree,
+            sweep_progress(store),
+            target,
+            select=select,
+            average=average,
+            rows=rows,
+            allow_code=allow_code,
+            force=force,
+        )
     click.echo(f"wrote {target}" + (f", tables at {taken}" if taken else ""), err=True)

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-import math
 import sys
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from typing import TYPE_CHECKING
 
 import click
@@ -29,14 +30,19 @@ def on_terminal() -> bool:
     return sys.stdout.isatty()
 
 
-def number(value: float, digits: int = 4, sign: str = "") -> str:
-    """Write a number with a fixed count of decimals, a dash where there is none."""
-    return f"{value:{sign}.{digits}f}" if math.isfinite(value) else "-"
+@contextmanager
+def progress_bar(label: str) -> Iterator[Callable[[int, int], None]]:
+    """Give a function that shows how many steps of how many are done; silent where nobody looks at standard error."""
+    if not sys.stderr.isatty():
+        yield lambda done, total: None
+        return
+    with click.progressbar(length=1, label=label, file=sys.stderr) as bar:
 
+        def show(done: int, total: int) -> None:
+            bar.length = total
+            bar.update(done - bar.pos)
 
-def uncertain(value: float, error: float) -> str:
-    """Write a number with its standard error."""
-    return f"{number(value)} ± {number(error)}" if math.isfinite(value) else "-"
+        yield show
 
 
 def size(count: float) -> str:

@@ -12,7 +12,7 @@ from scanner.figures.request import SUFFIXES, Request
 if TYPE_CHECKING:
     import xarray as xr
 
-__all__ = ["Request", "write_figure"]
+__all__ = ["Request", "require_matplotlib", "write_figure"]
 
 
 def write_figure(tree: xr.DataTree, target: Path, request: Request | None = None, *, force: bool = False) -> str:
@@ -42,10 +42,15 @@ def write_figure(tree: xr.DataTree, target: Path, request: Request | None = None
     from scanner.analysis import check_target
 
     check_target(target, SUFFIXES, force=force)
-    if importlib.util.find_spec("matplotlib") is None:
-        raise ScannerError("figures need matplotlib, install it with: pip install 'scanner[figures]'")
+    require_matplotlib()
     from scanner.figures.drawing import draw_figure, save_figure
 
     figure, taken = draw_figure(tree, request or Request())
     save_figure(figure, target)
     return taken
+
+
+def require_matplotlib() -> None:
+    """Refuse to draw where matplotlib is not installed."""
+    if importlib.util.find_spec("matplotlib") is None:
+        raise ScannerError("figures need matplotlib, install it with: pip install 'scanner[figures]'")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import warnings
 from pathlib import Path
 
@@ -59,13 +60,22 @@ def draw_figure(tree: xr.DataTree, request: Request) -> tuple[Figure, str]:
     return figure, describe(taken)
 
 
-def save_figure(figure: Figure, target: Path) -> None:
-    """Write a figure as its suffix says, whole or not at all; the same figure gives the same bytes."""
-    undated = {".pdf": {"CreationDate": None}, ".svg": {"Date": None}}.get(target.suffix.lower())
-    with replace_whole(target) as partial, matplotlib.rc_context(STYLE), warnings.catch_warnings():  # type: ignore[arg-type]
+def render_figure(figure: Figure, suffix: str) -> bytes:
+    """Return a figure as the content of a file of this suffix; the same figure gives the same bytes."""
+    undated = {".pdf": {"CreationDate": None}, ".svg": {"Date": None}}.get(suffix)
+    content = io.BytesIO()
+    with matplotlib.rc_context(STYLE), warnings.catch_warnings():  # type: ignore[arg-type]
         # a letter of the title that the typeface lacks is drawn as a box, which says enough
         warnings.filterwarnings("ignore", message="Glyph .* missing from font")
-        figure.savefig(partial, metadata=undated)
+        figure.savefig(content, format=suffix.removeprefix("."), metadata=undated)
+    return content.getvalue()
+
+
+def save_figure(figure: Figure, target: Path) -> None:
+    """Write a figure as its suffix says, whole or not at all."""
+    content = render_figure(figure, target.suffix.lower())
+    with replace_whole(target) as partial:
+        partial.write_bytes(content)
 
 
 def _default_kind(root: xr.Dataset, request: Request) -> str:

@@ -21,6 +21,8 @@ from scanner.figures.style import add_legend, new_axes
 from scanner.quantities import VERDICTS as VERDICT_NAMES
 
 BINS = 60
+LEAST_RANGE = 0.01
+"""Exponents per bounce shown at least, so that those of regular orbits alone are seen to be small."""
 EXPONENT = "lyapunov_per_bounce"
 
 
@@ -45,7 +47,7 @@ def _bins(exponents: np.ndarray) -> np.ndarray:
     finite = exponents[np.isfinite(exponents)]
     if not finite.size:
         raise ScannerError("no orbit here has an exponent: select tables that are done")
-    return np.linspace(min(finite.min(), 0.0), max(finite.max(), 1e-3), BINS + 1)
+    return np.linspace(min(finite.min(), 0.0), max(1.02 * finite.max(), LEAST_RANGE), BINS + 1)
 
 
 def _draw_one(picked: xr.DataTree, width: str) -> Axes:
@@ -87,6 +89,8 @@ def _draw_along(picked: xr.DataTree, along: str, width: str) -> Axes:
         np.ma.masked_equal(shares.T, 0.0),
         cmap=COLOUR_MAP,
         norm=LogNorm(1.0 / exponents.sizes["orbit"], 1.0),
+        edgecolors="face",
+        linewidth=0.3,
         rasterized=shares.size > 5000,
     )
     axes.figure.colorbar(mesh, ax=axes, label="share of the section area", pad=0.02)

@@ -27,11 +27,22 @@ def draw_map(root: xr.Dataset, quantity: str, dims: tuple[str, str], width: str)
     values = root[quantity].transpose(*dims[::-1])
     colours = _colours(quantity, values.values)
     shown = np.ma.masked_less_equal(values.values, 0.0) if isinstance(colours, LogNorm) else values.values
-    mesh = axes.pcolormesh(across.edges, up.edges, shown, cmap=COLOUR_MAP, norm=colours, rasterized=values.size > 5000)
+    # cells are given edges of their own colour, as viewers of vector graphics leave white seams between them otherwise
+    mesh = axes.pcolormesh(
+        across.edges,
+        up.edges,
+        shown,
+        cmap=COLOUR_MAP,
+        norm=colours,
+        edgecolors="face",
+        linewidth=0.3,
+        rasterized=values.size > 5000,
+    )
     across.dress(axes, "x")
     up.dress(axes, "y")
     axes.figure.colorbar(mesh, ax=axes, label=quantity_label(values), pad=0.02)
-    if not across.whole and not up.whole:  # between whole numbers there is nothing for a line to run through
+    # between whole numbers, and between bins, there is nothing for a line to run through
+    if set(dims) == set(root["table_status"].dims) and not (across.whole or up.whole):
         _draw_contours(axes, mesh, across, up, values.values)
     status = root["table_status"].broadcast_like(values).transpose(*dims).values
     marked: dict[str, Artist] = {}

@@ -25,9 +25,9 @@ MOST_ORBITS = 8
 MOST_CHORDS = 20_000
 FEWEST_BOUNCES = 16384
 OUTLINE_POINTS = 721
-PIECES = 1000
+PIECES = 400
 """Pieces of a caustic as long as the table: more could not be told apart in print."""
-LONGEST = 6
+LONGEST = 4
 """Length in pieces of a straight bit of a caustic where its points lie far apart."""
 
 

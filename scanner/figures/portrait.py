@@ -43,7 +43,7 @@ def draw_portrait(s: np.ndarray, p: np.ndarray, orbits: xr.Dataset, colouring: s
     # dots that would fill half the plot if none hid another
     room = 0.5 * (72 * COLUMN_INCHES[width]) * (72 * 0.6 * COLUMN_INCHES["single"])
     size = float(np.clip(room / max(s.size, 1), 0.05, 14.0))
-    dots: dict[str, Any] = {"s": size, "linewidths": 0, "rasterized": s.size > 3000}
+    dots: dict[str, Any] = {"s": size, "linewidths": 0, "rasterized": s.size > 2000}
     if colouring == "verdict":
         handles: list[Artist] = []
         for code, name in enumerate(VERDICT_NAMES):
