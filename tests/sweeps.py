@@ -7,7 +7,7 @@ from pathlib import Path
 
 from scanner.engine.work import Order, run_task
 from scanner.store import prepare_store
-from scanner.study import Plan, Study, make_plan, parse_study
+from scanner.study import Plan, Study, TableCheck, check_table, make_plan, parse_study
 
 GRID = """
 [study]
@@ -44,6 +44,11 @@ def grid(**replaced: str) -> Study:
     lines = [f"{line.split(' = ')[0]} = {replaced[line.split(' = ')[0]]}" if line.split(" = ")[0] in replaced else line
              for line in GRID.splitlines()]  # fmt: skip
     return parse_study("\n".join(lines))
+
+
+def check_all(plan: Plan) -> list[TableCheck]:
+    """Build every table of a plan."""
+    return [check_table(plan, index, parameters) for index, parameters in plan.tables()]
 
 
 def results(store: Path) -> dict[str, bytes]:

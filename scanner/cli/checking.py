@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
 
 from scanner.cli.options import store_argument
-from scanner.cli.terminal import align, duration, print_lines
+from scanner.cli.terminal import align, duration, print_lines, progress_bar
 
 if TYPE_CHECKING:
     from scanner.store import SweepProgress
@@ -84,12 +83,7 @@ def compact(store: Path) -> None:
     """
     from scanner.store import compact_store
 
-    with click.progressbar(length=1, label="compacting", file=sys.stderr) as bar:
-
-        def show(done: int, total: int) -> None:
-            bar.length = total
-            bar.update(done - bar.pos)
-
+    with progress_bar("compacting") as show:
         made = compact_store(store, show)
     if made.already:
         click.echo(f"compacted already: {made.after:,} files")

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 import click
 
 from scanner.cli.options import PATH, allow_code_option, study_argument
-from scanner.cli.terminal import duration, size
+from scanner.cli.terminal import duration, progress_bar, size
 from scanner.errors import ScannerError
 
 if TYPE_CHECKING:
@@ -93,7 +93,9 @@ def _estimate(asked: Study, store: Path | None) -> Estimate:
     from scanner.study import make_plan
     from scanner.study.estimate import estimate_cost
 
-    return estimate_cost(make_plan(asked), store)
+    plan = make_plan(asked)
+    with progress_bar("checking tables") as show:
+        return estimate_cost(plan, store, report=lambda checked: show(checked, plan.table_count))
 
 
 def _list_faults(found: Estimate) -> None:

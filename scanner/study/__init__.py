@@ -1,6 +1,6 @@
 """What is asked: the study file, its parameters, its tasks and what they will cost."""
 
-from scanner.study.checking import TableCheck, check_tables
+from scanner.study.checking import TableCheck, check_table
 from scanner.study.estimate import Estimate, estimate_cost
 from scanner.study.limits import check_limits
 from scanner.study.model import Orbits, Resources, Study
@@ -17,7 +17,7 @@ __all__ = [
     "TableCheck",
     "Task",
     "check_limits",
-    "check_tables",
+    "check_table",
     "estimate_cost",
     "load_study",
     "make_plan",

@@ -4,26 +4,28 @@ from __future__ import annotations
 
 import itertools
 import time
-from array import array
 from collections import Counter
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
+import numpy.typing as npt
 
 from scanner.bounce.lanes import LANES
 from scanner.bounce.resonances import resonance_numbers
 from scanner.indicators import orbit_numbers
 from scanner.measure import section_points
-from scanner.study.checking import TableCheck, check_table, check_tables
+from scanner.study.checking import STATES, TableCheck, check_states, check_table
 from scanner.study.limits import check_limits, store_bytes
 from scanner.study.plan import Plan
+from scanner.study.screening import CONVEX
 from scanner.tables import Table
 
 CALIBRATION_SECONDS = 2.0
 CALIBRATION_BOUNCES = 8192
 CALIBRATION_TABLES = 4
+TIMED_TABLES = 8
 MOST_FAULTS = 5
 
 
@@ -78,7 +80,7 @@ def estimate_cost(
     seconds
         How long to time orbits.
     report
-        Called with the number of tables checked so far, after each.
+        Called now and then with the number of tables checked so far.
 
     Raises
     ------
@@ -86,20 +88,12 @@ def estimate_cost(
         One line: the study does not fit the memory of a worker or the disk.
     """
     check_limits(plan, store)
-    counts: Counter[str] = Counter()
-    faults: list[TableCheck] = []
-    convex = array("q")
-    check_table(plan, *next(plan.tables()))  # compiles, or loads what is compiled
-    begun = time.thread_time()
-    for number, check in enumerate(check_tables(plan)):
-        counts[check.state] += 1
-        if check.state == "convex":
-            convex.append(number)
-        elif len(faults) < MOST_FAULTS:
-            faults.append(check)
-        report(number + 1)
-    building = time.thread_time() - begun
-    samples = _pick_tables(plan, convex) if convex else []
+    states = check_states(plan, report)
+    counts = Counter(STATES[code] for code in states)
+    convex = np.flatnonzero(states == CONVEX)
+    faults = [_check(plan, int(number)) for number in np.flatnonzero(states != CONVEX)[:MOST_FAULTS]]
+    building = plan.table_count * _time_building(plan)
+    samples = _pick_tables(plan, convex) if len(convex) else []
     pace = _calibrate(plan, samples, seconds) if samples else None
     resonances = len(convex) * _time_resonances(plan, samples)
     orbits = len(convex) * plan.study.orbits.per_table
@@ -118,16 +112,31 @@ def estimate_cost(
     )
 
 
-def _pick_tables(plan: Plan, convex: array[int]) -> list[Table]:
+def _check(plan: Plan, number: int) -> TableCheck:
+    """Check the table of a number in the order of the grid."""
+    index = tuple(map(int, np.unravel_index(number, plan.shape))) if plan.shape else ()
+    return check_table(plan, index, plan.parameters_at(index))
+
+
+def _spread(count: int, wanted: int) -> list[int]:
+    """Choose a few places, evenly spread over so many."""
+    return sorted({(2 * i + 1) * count // (2 * wanted) for i in range(wanted)})
+
+
+def _time_building(plan: Plan) -> float:
+    """Seconds of a core that building a table takes, the mean over a few of the study."""
+    _check(plan, 0)  # compiles, or loads what is compiled
+    places = _spread(plan.table_count, TIMED_TABLES)
+    begun = time.thread_time()
+    for number in places:
+        _check(plan, number)
+    return (time.thread_time() - begun) / len(places)
+
+
+def _pick_tables(plan: Plan, convex: npt.NDArray[np.int64]) -> list[Table]:
     """Take a few convex tables, evenly spread over the study."""
-    places = sorted({(2 * i + 1) * len(convex) // (2 * CALIBRATION_TABLES) for i in range(CALIBRATION_TABLES)})
-    found = []
-    for place in places:
-        index = tuple(int(i) for i in np.unravel_index(convex[place], plan.shape)) if plan.shape else ()
-        check = check_table(plan, index, plan.parameters_at(index))
-        if check.table is not None:
-            found.append(check.table)
-    return found
+    checks = (_check(plan, int(convex[place])) for place in _spread(len(convex), CALIBRATION_TABLES))
+    return [check.table for check in checks if check.table is not None]
 
 
 def _time_resonances(plan: Plan, tables: Sequence[Table]) -> float:

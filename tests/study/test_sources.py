@@ -3,9 +3,10 @@
 import math
 
 import pytest
+from sweeps import check_all
 
 from scanner.errors import StudyError
-from scanner.study import check_tables, load_study, make_plan, parse_study
+from scanner.study import load_study, make_plan, parse_study
 
 TEXT = """\
 [study]
@@ -48,7 +49,7 @@ def test_an_outline_counts_by_its_content(tmp_path):
         (folder / "study.toml").write_text(TEXT)
         study = load_study(folder / "study.toml")
         assert study.fixed["file"] == str(folder / "outline.txt")
-        assert [check.state for check in check_tables(make_plan(study))] == ["convex", "convex"]
+        assert [check.state for check in check_all(make_plan(study))] == ["convex", "convex"]
         prints.append(study.fingerprint)
     assert prints[0] == prints[1] != prints[2]
 
@@ -92,7 +93,7 @@ def test_own_code_that_raises_is_a_failed_table(tmp_path, monkeypatch):
     monkeypatch.chdir(tmp_path)
     (tmp_path / "own_raising.py").write_text(CODE)
     study = parse_study(OWN.replace("MODULE", "own_raising").replace("[0, 1]", "[1, 2]"), allow_code=True)
-    checks = list(check_tables(make_plan(study)))
+    checks = check_all(make_plan(study))
     assert [check.state for check in checks] == ["convex", "failed"]
     assert "KeyError" in checks[1].reason
     assert "\n" not in checks[1].reason
@@ -105,7 +106,7 @@ def test_own_code_that_ends_the_program_is_told(tmp_path, monkeypatch):
         parse_study(OWN.replace("MODULE", "own_ending"), allow_code=True)
     (tmp_path / "own_leaving.py").write_text("def make(**_):\n    raise SystemExit(3)")
     study = parse_study(OWN.replace("MODULE", "own_leaving"), allow_code=True)
-    assert {(check.state, check.reason) for check in check_tables(make_plan(study))} == {("failed", "SystemExit: 3")}
+    assert {(check.state, check.reason) for check in check_all(make_plan(study))} == {("failed", "SystemExit: 3")}
 
 
 @pytest.mark.parametrize(
