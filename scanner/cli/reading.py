@@ -27,7 +27,7 @@ if TYPE_CHECKING:
 def open_store(path: Path) -> Iterator[xr.DataTree]:
     """Open a store; what goes wrong because blocks of it are damaged is said in one line."""
     from scanner.errors import ScannerError, StoreError
-    from scanner.store import open_sweep, verify
+    from scanner.store import open_sweep, sweep_progress, verify
 
     try:
         with open_sweep(path) as tree:
@@ -40,6 +40,8 @@ def open_store(path: Path) -> Iterator[xr.DataTree]:
                 f"{path}: {len(damage)} files are damaged, the first is {damage[0]}; "
                 "list them with `scanner verify`, clear them with --repair and run the sweep again"
             ) from error
+        if not sweep_progress(path).complete:
+            raise StoreError(f"{path}: cannot be read ({error}); it is not finished: run the sweep to its end") from error
         raise
 
 
