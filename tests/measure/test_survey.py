@@ -81,3 +81,20 @@ def test_what_a_survey_refuses() -> None:
         survey_table(table, bounces=10)
     with pytest.raises(TableError, match="convex"):
         survey_table(build_table("limacon", quadratic=0.3))
+
+
+@pytest.mark.parametrize("harmonic", [2, 3])
+def test_islands_of_a_resonance_that_has_just_opened(harmonic: int) -> None:
+    """Pendulum of half-width 2 sin(pi/q) sqrt(amplitude) in p (Ramirez-Ros 2006, from memory): area 2/pi of its box."""
+    amplitude = 4e-3
+    found = survey_table(
+        build_table("radial_harmonic", amplitude=amplitude, harmonic=harmonic), orbits=1024, bounces=8192, replicates=8
+    )
+    area = found["island_area_fraction"].sel(period=harmonic).item()
+    error = found["island_area_fraction_stderr"].sel(period=harmonic).item()
+    # Rotation 1/2 is that of both directions, 1/3 and 2/3 are islands of their own.
+    directions = 1 if harmonic == 2 else 2
+    pendulum = directions * 4.0 / np.pi * np.sin(np.pi / harmonic) * np.sqrt(amplitude)
+    # Higher orders are smaller by sqrt(amplitude), 6 %.
+    assert area == pytest.approx(pendulum, abs=3.0 * error + 0.06 * pendulum)
+    assert error < 0.1 * pendulum
