@@ -8,6 +8,7 @@ from collections.abc import Collection, Iterator
 from pathlib import Path
 
 from scanner.errors import ScannerError
+from scanner.store import enclosing_store
 
 
 def check_target(target: Path, suffixes: Collection[str], *, force: bool = False) -> None:
@@ -16,8 +17,8 @@ def check_target(target: Path, suffixes: Collection[str], *, force: bool = False
     Raises
     ------
     ScannerError
-        Unknown suffix, missing or unwritable folder, a folder in the file's place, or a file that exists already
-        when `force` is not set.
+        Unknown suffix, missing or unwritable folder, a folder in the file's place, a place inside a store, or a file
+        that exists already when `force` is not set.
     """
     if target.is_dir():
         raise ScannerError(f"{target} is a folder: name a file in it, ending in {_listing(suffixes)}")
@@ -26,6 +27,9 @@ def check_target(target: Path, suffixes: Collection[str], *, force: bool = False
     folder = target.parent
     if not folder.is_dir():
         raise ScannerError(f"{target} cannot be written: there is no folder {folder}, make it first")
+    store = enclosing_store(folder)
+    if store is not None:
+        raise ScannerError(f"{target} cannot be written: it lies inside the store {store}, choose a place outside")
     if not os.access(folder, os.W_OK | os.X_OK):
         raise ScannerError(f"{target} cannot be written: no permission to write in the folder {folder}")
     if target.exists() and not force:

@@ -41,7 +41,9 @@ def open_store(path: Path) -> Iterator[xr.DataTree]:
                 "list them with `scanner verify`, clear them with --repair and run the sweep again"
             ) from error
         if not sweep_progress(path).complete:
-            raise StoreError(f"{path}: cannot be read ({error}); it is not finished: run the sweep to its end") from error
+            raise StoreError(
+                f"{path}: cannot be read ({error}); it is not finished: run the sweep to its end"
+            ) from error
         raise
 
 

@@ -72,6 +72,8 @@ def sweep(
 
     if scheduler is not None and scheduler_file is not None:
         raise click.UsageError("--scheduler and --scheduler-file exclude each other: give one of them")
+    if workers is not None and (scheduler or scheduler_file):
+        raise click.UsageError("--workers starts processes here, a scheduler has its own workers: leave one out")
     asked = load_study(study, allow_code)
     if asked.resources.runner in QUEUES and not (scheduler or scheduler_file or yes):
         _confirm(asked, store, workers)

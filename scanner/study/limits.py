@@ -86,11 +86,20 @@ def check_limits(plan: Plan, target: Path | None = None, remaining: float = 1.0)
 
 
 def free_bytes(target: Path) -> int:
-    """Free space on the disk of a path, which need not exist yet."""
+    """Free space on the disk of a path, which need not exist yet.
+
+    Raises
+    ------
+    StudyError
+        There is no disk, as below /proc.
+    """
     place = target.absolute()
     while not place.exists():
         place = place.parent
-    return shutil.disk_usage(place).free
+    usage = shutil.disk_usage(place)
+    if not usage.total:
+        raise StudyError(f"{target}: {place} is no place for files; choose a folder on a disk")
+    return usage.free
 
 
 def megabytes(size: int) -> str:

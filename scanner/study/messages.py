@@ -96,12 +96,13 @@ def _explain(model: type[Section], error: dict[str, Any], path: str) -> StudyErr
         return StudyError(f"{path}.{name} is missing: it must be {field.description}; add {name} = {example}")
     index = "".join(f"[{part}]" for part in rest if isinstance(part, int))
     bound = f": {name} must be {field.description}" if index else f" must be {field.description}"
-    remedy = _remedy(error["type"], value, error.get("ctx", {}))
+    example = f"write for instance {name} = {shown((field.examples or ['...'])[0])}"
+    remedy = _remedy(error["type"], value, error.get("ctx", {})) or example
     return StudyError(f"{path}.{name}{index} = {shown(value)}{bound}; {remedy}")
 
 
 def _remedy(kind: str, value: object, bounds: Mapping[str, object]) -> str:
-    """Say what to write instead."""
+    """Say what to write instead; empty where that does not follow from the value."""
     if kind == "greater_than_equal":
         return f"raise it to {bounds['ge']} or more"
     if kind == "less_than_equal":
@@ -113,4 +114,4 @@ def _remedy(kind: str, value: object, bounds: Mapping[str, object]) -> str:
         return f"write {int(value)}" if abs(value) < 1e15 else "write a smaller number"
     if isinstance(value, str) and kind in {"int_type", "float_type"}:
         return "write it without quotes" if value.strip().isascii() and value.strip().isdigit() else "write a number"
-    return "change it"
+    return ""

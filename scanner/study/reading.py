@@ -11,7 +11,7 @@ from scanner.errors import StudyError
 from scanner.study.messages import nearest, read_section, shown, written
 from scanner.study.model import Heading, Orbits, Resonances, Resources, Study
 from scanner.study.parameters import read_parameters
-from scanner.study.sources import absolute_path, read_sources
+from scanner.study.sources import absolute_path, fault_of_file, read_sources
 
 SECTIONS = {
     "study": (*Heading.model_fields,),
@@ -39,6 +39,8 @@ def load_study(path: str | Path, allow_code: bool = False) -> Study:
         One line: the file, the key, the value, the bound and the remedy.
     """
     path = Path(path)
+    if fault := fault_of_file(path):
+        raise StudyError(f"{path} {fault}; give the path of a study file")
     try:
         text = path.read_bytes().decode("utf-8-sig")
     except OSError as error:

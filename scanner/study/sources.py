@@ -13,6 +13,8 @@ from scanner.study.model import Value
 from scanner.tables.points import parse_points, read_content
 from scanner.tables.user import find_function
 
+LARGEST_FILE = 10_000_000
+
 
 def absolute_path(written_path: str, folder: Path) -> Path:
     """Absolute path of a file named in a study of that folder."""
@@ -42,8 +44,18 @@ def read_sources(family: str, fixed: Mapping[str, Value], folder: Path) -> tuple
     return dict(fixed), {}
 
 
+def fault_of_file(path: Path) -> str:
+    """Say why a file must not even be opened: a device or a pipe may never end; empty where it may."""
+    if path.is_file():
+        size = path.stat().st_size
+        return f"has {size} bytes, must be at most {LARGEST_FILE}" if size > LARGEST_FILE else ""
+    return "is a device or a pipe, must be a file" if path.exists() and not path.is_dir() else ""
+
+
 def _read_outline(path: Path, as_written: Value) -> bytes:
     """Read an outline, and see that it is one."""
+    if fault := fault_of_file(path):
+        raise StudyError(f"table.file = {shown(as_written)}: {path} {fault}; give a text file of points")
     try:
         content = read_content(str(path))
         parse_points(content)

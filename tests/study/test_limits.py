@@ -67,10 +67,10 @@ def test_too_many_orbits_for_memory():
 def test_too_little_space_on_the_disk(monkeypatch, tmp_path):
     plan = plan_of(100, 1024, 8192)
     needed = store_bytes(plan)
-    usage = namedtuple("usage", "free")
-    monkeypatch.setattr(shutil, "disk_usage", lambda place: usage(needed))
+    usage = namedtuple("usage", "total free")
+    monkeypatch.setattr(shutil, "disk_usage", lambda place: usage(2 * needed, needed))
     check_limits(plan, tmp_path / "not" / "there" / "yet.zarr")
-    monkeypatch.setattr(shutil, "disk_usage", lambda place: usage(needed - 1))
+    monkeypatch.setattr(shutil, "disk_usage", lambda place: usage(2 * needed, needed - 1))
     with pytest.raises(StudyError, match=r"^orbits\.per_table = 1024 on 100 tables needs .* free at .* choose another"):
         check_limits(plan, tmp_path / "yet.zarr")
     check_limits(plan, tmp_path / "yet.zarr", remaining=0.5)
