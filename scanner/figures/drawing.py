@@ -20,9 +20,10 @@ from scanner.figures.frequency import GRID, draw_frequency
 from scanner.figures.gaps import draw_gaps
 from scanner.figures.heat_map import draw_map
 from scanner.figures.inside import FEWEST_BOUNCES, choose_starts, draw_inside
+from scanner.figures.letters import families_for
 from scanner.figures.one_table import follow_anew, orbits_of, rebuild_table, require_one_table
 from scanner.figures.portrait import draw_portrait
-from scanner.figures.request import CHORDS, FREQUENCY_BOUNCES, Request
+from scanner.figures.request import CHORDS, FREQUENCY_BOUNCES, Request, refuse_idle_options
 from scanner.figures.style import STYLE, figure_of, write_title
 
 DEFAULT_QUANTITY = "regular_area_fraction"
@@ -53,10 +54,13 @@ def draw_figure(tree: xr.DataTree, request: Request) -> tuple[Figure, str]:
     picked, taken = pick_tables(tree, request.select)
     root = average_tables(picked.to_dataset(), request.average)
     kind = request.kind or _default_kind(root, request)
-    with matplotlib.rc_context(STYLE):  # type: ignore[arg-type]
+    refuse_idle_options(request, kind)
+    title, notes = study_of(tree).title, _notes(tree, kind, describe(taken), request)
+    families = families_for(title + "".join(notes), str(STYLE["font.family"]))
+    with matplotlib.rc_context({**STYLE, "font.family": families}):  # type: ignore[dict-item]
         axes = _draw(kind, picked, root, request)
         figure = figure_of(axes)
-        write_title(figure, study_of(tree).title, _notes(tree, kind, describe(taken), request))
+        write_title(figure, title, notes)
     return figure, describe(taken)
 
 

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, fields
+
+from scanner.errors import ScannerError
 
 KINDS = ("fractions", "curve", "map", "portrait", "table", "exponents", "frequency", "gaps")
 COLOURS = ("verdict", "exponent", "diffusion", "rotation")
@@ -12,6 +14,17 @@ FREQUENCY_BOUNCES = 1024
 CHORDS = 120
 LINE_ORBITS = 1000
 SUFFIXES = (".png", ".pdf", ".svg")
+HEEDED_BY = {
+    "average": ("fractions", "curve", "map"),
+    "quantity": ("curve", "map"),
+    "along": ("fractions", "curve", "gaps"),
+    "colour": ("portrait",),
+    "bounces": ("portrait", "table", "frequency"),
+    "s": ("table", "frequency"),
+    "p": ("table",),
+    "orbits": ("frequency",),
+}
+"""Kinds on which an option has an effect; those that are not here have one on all."""
 
 
 @dataclass(frozen=True)
@@ -68,3 +81,19 @@ class Request:
     orbits: int = LINE_ORBITS
     width: str = "single"
     allow_code: bool = False
+
+
+def refuse_idle_options(request: Request, kind: str) -> None:
+    """Refuse what was asked for and would have no effect on a figure of this kind.
+
+    Raises
+    ------
+    ScannerError
+        One line, with the kinds on which it has one.
+    """
+    for entry in fields(request):
+        kinds = HEEDED_BY.get(entry.name, (kind,))
+        if kind not in kinds and getattr(request, entry.name) != entry.default:
+            raise ScannerError(
+                f"--{entry.name} has no effect on a figure of kind {kind}: leave it out, or draw {' or '.join(kinds)}"
+            )

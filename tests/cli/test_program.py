@@ -75,6 +75,10 @@ def test_no_command_shows_the_help(call):
         (["figure", "{store}", "--to", "{out}/figure.gif"], "it must be .png, .pdf or .svg"),
         (["figure", "{store}", "--to", "{out}/figure.png", "--kind", "portrait"], "give a value of amplitude"),
         (["figure", "{store}", "--to", "{out}/figure.png", "--quantity", "chaos"], "no variable 'chaos'"),
+        (
+            ["figure", "{store}", "--to", "{out}/figure.png", "--kind", "portrait", "--quantity", "area"],
+            "--quantity has no effect on a figure of kind portrait: leave it out, or draw curve or map",
+        ),
         (["figure", "{store}", "--to", "{out}/figure.png", "--kind", "gaps"], "this store has no resonances"),
         (["figure", "{store}", "--to", "{out}/figure.png", "--s", "1.5"], "1.5 is not in the range 0.0<=x<=1.0"),
         (["estimate", "{folder}"], "cannot be read: Is a directory"),
