@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from scanner.analysis.export import export_sweep
 from scanner.analysis.files import check_target, replace_whole
+from scanner.analysis.reasons import why_not_convex
 from scanner.analysis.summary import failures, summarise
 from scanner.analysis.sweep import (
     StudyFacts,
@@ -29,4 +30,5 @@ __all__ = [
     "study_of",
     "summarise",
     "swept_parameters",
+    "why_not_convex",
 ]

@@ -67,7 +67,7 @@ def failures(root: xr.Dataset, reasons: Mapping[tuple[int, ...], str]) -> pd.Dat
     root
         Root variables of a sweep.
     reasons
-        Why a table failed, by its index in the grid.
+        Why a table failed or is not convex, by its index in the grid.
 
     Returns
     -------

@@ -54,7 +54,9 @@ def list_failures(rows: pd.DataFrame) -> None:
     if not any(texts["reason"]):
         del texts["reason"]
     print_lines(align(write_parameters(texts, [name for name in texts if name not in ("status", "reason")])))
-    click.echo("\nwhy a table is not convex: scanner estimate STUDY")
+    unexplained = int((rows["reason"] == "").sum())
+    if unexplained:
+        click.echo(f"\n{unexplained} without a reason: scanner estimate STUDY says why tables are not convex")
 
 
 def write_rows(rows: pd.DataFrame, form: str) -> None:

@@ -69,7 +69,7 @@ def open_store(path: Path) -> Iterator[xr.DataTree]:
 )
 def summary(store: Path, select: dict[str, str], average: tuple[str, ...], failed: bool, rows: int, form: str) -> None:
     """Print the table of results of the sweep in PATH."""
-    from scanner.analysis import average_tables, failures, pick_tables, summarise
+    from scanner.analysis import average_tables, failures, pick_tables, summarise, why_not_convex
     from scanner.analysis.sweep import describe
     from scanner.cli.listing import list_failures, list_tables, write_rows
     from scanner.store import sweep_progress
@@ -79,7 +79,8 @@ def summary(store: Path, select: dict[str, str], average: tuple[str, ...], faile
     with open_store(store) as tree:
         picked, taken = pick_tables(tree, select)
         root = average_tables(picked.to_dataset().load(), average)
-        without_numbers = failures(root, sweep_progress(store).failures) if failed else None
+        reasons = {**why_not_convex(root), **sweep_progress(store).failures} if failed else {}
+        without_numbers = failures(root, reasons) if failed else None
     if taken:
         click.echo(f"tables at {describe(taken)}", err=True)
     if form != "text":

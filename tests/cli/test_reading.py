@@ -63,7 +63,7 @@ def test_summary_lists_what_failed_with_reasons(call, moody_store, store):
     entries = json.loads(call("summary", moody_store, "--failed", "--format", "json")[1])
     assert [entry["size"] for entry in entries] == [2.0]
     _, output, _ = call("summary", store, "--failed")
-    assert output.splitlines()[1].split() == ["0.3", "not", "convex"]
+    assert output.splitlines()[1].split()[:4] == ["0.3", "not", "convex", "curvature"]
 
 
 def test_that_nothing_failed_is_said(capsys):
@@ -168,3 +168,16 @@ def test_a_damaged_store_is_one_line(call, store, tmp_path):
     assert complaint.count("\n") == 1
     assert "1 files are damaged" in complaint
     assert "--repair" in complaint
+
+
+def test_report_is_one_page_with_the_reasons_of_failures(call, moody_store, tmp_path):
+    target = tmp_path / "a report.html"
+    status, _, said = call("report", moody_store, "--to", target, "--select", "size=1.0")
+    assert status == 0
+    assert said == f"wrote {target}, tables at size = 1\n"
+    text = target.read_text(encoding="utf-8")
+    assert "ValueError: not in the mood" in text
+    assert "allow it with --allow-code" in text  # for the figure that follows orbits anew
+    assert text.count("data:image/svg+xml") == 3
+    status, _, said = call("report", moody_store, "--to", target)
+    assert (status, said.count("\n")) == (2, 1)

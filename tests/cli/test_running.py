@@ -2,12 +2,19 @@
 
 from __future__ import annotations
 
+import json
+import os
 import shutil
+import socket
+import subprocess
+import sys
 
 import pytest
+from sweeps import everything
 
 from scanner.cli import running
 from scanner.selfcheck import Check, run_checks
+from scanner.store import Ledger, Pulse, StoreLock, write_pulse
 
 
 def test_estimate_prints_what_will_be_run_and_what_cannot(call, study):
@@ -58,6 +65,37 @@ def test_progress_of_a_finished_store(call, store):
     assert "complete" in output
     assert "3 of 3: 2 done, 1 not convex, 0 failed" in output
     assert "100 %" in output
+    assert "core-hours" in output
+    assert "s a table: amplitude = 0 to 0.3" in output
+
+
+@pytest.fixture
+def begun(store, tmp_path):
+    """A copy of the store of which one task is still to be done."""
+    copy = shutil.copytree(store, tmp_path / "begun.zarr")
+    Ledger(copy).receipt_path(0).unlink()
+    return copy
+
+
+def test_progress_of_a_running_sweep_tells_what_only_the_client_knows(call, begun):
+    with StoreLock(begun):
+        write_pulse(begun, Pulse(workers=3, handed_out=9, losses="1 workers lost"))
+        _, output, _ = call("progress", begun)
+    assert f"running (process {os.getpid()} on {socket.gethostname()}, last sign of life 0 s ago)" in output
+    assert "now     3 workers, 9 tasks handed out to them; 1 workers lost" in output
+    assert "now" not in call("progress", begun)[1]
+
+
+def test_progress_says_that_the_client_is_dead(call, begun):
+    ended = subprocess.Popen([sys.executable, "-c", ""])
+    ended.wait()
+    lock = {"host": socket.gethostname(), "pid": ended.pid, "born": 0.0}
+    (Ledger(begun).folder / "lock").write_text(json.dumps(lock))
+    before = everything(begun)
+    _, output, _ = call("progress", begun)
+    assert f"its client is dead (process {ended.pid} on {socket.gethostname()}" in output
+    assert "`scanner sweep` carries on" in output
+    assert everything(begun) == before
 
 
 def test_verify_lists_damage_and_repair_clears_it(call, store, tmp_path):
