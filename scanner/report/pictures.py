@@ -56,7 +56,7 @@ def draw_pictures(
     """
     pictures: list[Picture] = []
     left_out: dict[str, list[str]] = {}
-    for caption, request in _choose(picked, select, average):
+    for caption, request in choose_figures(picked, select, average):
         try:
             figure, _ = draw_figure(tree, replace(request, allow_code=allow_code))
         except ScannerError as error:
@@ -67,7 +67,8 @@ def draw_pictures(
     return pictures, [f"{'; '.join(captions)}: {reason}" for reason, captions in left_out.items()]
 
 
-def _choose(picked: xr.DataTree, select: Selection, average: tuple[str, ...]) -> Iterator[tuple[str, Request]]:
+def choose_figures(picked: xr.DataTree, select: Selection, average: tuple[str, ...]) -> Iterator[tuple[str, Request]]:
+    """Yield the figures that fit the tables left of a sweep, each with its caption; none where no table is done."""
     root = picked.to_dataset()
     if not (root["table_status"].values == DONE).any():
         return
