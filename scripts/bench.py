@@ -16,6 +16,7 @@ from typing import Any
 import click
 import numpy as np
 from baselines import measure_scalar, measure_vectorised
+from bench_scale import many_tables, many_workers
 from bench_sweep import compare_workers
 
 from scanner.indicators import orbit_numbers
@@ -70,7 +71,7 @@ def rivals_on(table: Table, orbits: int, bounces: int) -> dict[str, Callable[[],
 @click.group(invoke_without_command=True)
 @click.pass_context
 def main(context: click.Context) -> None:
-    """Time the measurement of orbits (``orbits``, the default), its parts (``extras``) or whole sweeps (``sweep``)."""
+    """Time the measurement of orbits (the default), its parts, whole sweeps, many tables or many workers."""
     if context.invoked_subcommand is None:
         context.invoke(orbits)
 
@@ -128,6 +129,22 @@ def extras(per_table: int, bounces: int, repeats: int) -> None:
 def sweep(tables: int, bounces: int) -> None:
     """Time one study with one worker and with two: speed, what comes on top of the bounces, memory."""
     compare_workers(tables, bounces)
+
+
+@main.command()
+@click.option("--tables", default=100_000, show_default=True, help="Tables of 8 orbits of 512 bounces.")
+@click.option("--seconds", default=120.0, show_default=True, help="How long to let the sweep run.")
+def scale(tables: int, seconds: float) -> None:
+    """Time what people wait for in a study of many tables, and watch the memory of its client and scheduler."""
+    many_tables(tables, seconds)
+
+
+@main.command()
+@click.option("--count", "counts", multiple=True, type=int, default=(1, 2, 8, 32), show_default=True)
+@click.option("--tasks", default=300, show_default=True, help="Tasks of some tens of milliseconds.")
+def workers(counts: tuple[int, ...], tasks: int) -> None:
+    """Measure what a task and a worker cost the scheduler and its client, with ever more workers."""
+    many_workers(counts, tasks)
 
 
 if __name__ == "__main__":
