@@ -10,6 +10,7 @@ import click
 
 from scanner import __version__
 from scanner.cli.checking import compact, progress, selfcheck, verify
+from scanner.cli.looking import atlas
 from scanner.cli.reading import export, figure, report, summary
 from scanner.cli.running import estimate, sweep
 from scanner.errors import ScannerError
@@ -47,7 +48,7 @@ def scanner(context: click.Context) -> None:
         click.echo(context.get_help())
 
 
-for command in (estimate, sweep, progress, summary, export, figure, report, verify, compact, selfcheck):
+for command in (estimate, sweep, progress, summary, export, figure, report, atlas, verify, compact, selfcheck):
     command.epilog = STATUSES
     scanner.add_command(command)
 
