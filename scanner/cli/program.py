@@ -12,7 +12,7 @@ from scanner import __version__
 from scanner.cli.checking import compact, progress, selfcheck, verify
 from scanner.cli.looking import atlas
 from scanner.cli.reading import export, figure, report, summary
-from scanner.cli.running import estimate, sweep
+from scanner.cli.running import estimate, jobscript, sweep
 from scanner.errors import ScannerError
 
 INTERRUPTED = 130
@@ -48,7 +48,11 @@ def scanner(context: click.Context) -> None:
         click.echo(context.get_help())
 
 
-for command in (estimate, sweep, progress, summary, export, figure, report, atlas, verify, compact, selfcheck):
+ASKING = (estimate, sweep, jobscript)
+LOOKING = (progress, summary, export, figure, report, atlas)
+KEEPING = (verify, compact, selfcheck)
+
+for command in (*ASKING, *LOOKING, *KEEPING):
     command.epilog = STATUSES
     scanner.add_command(command)
 

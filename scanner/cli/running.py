@@ -91,6 +91,30 @@ def sweep(
     return report.exit_status
 
 
+@click.command(short_help="A batch script for a cluster, to look at and submit.")
+@study_argument
+@click.option("--store", required=True, type=PATH, metavar="PATH", help="Folder of the store, seen by all hosts.")
+@click.option("--for", "system", required=True, type=click.Choice(["slurm", "pbs"]), help="Whose script to write.")
+@click.option("--workers", type=click.IntRange(min=1), metavar="N", help="Jobs of one worker each.")
+@allow_code_option
+def jobscript(study: Path, store: Path, system: str, workers: int | None, allow_code: bool) -> None:
+    """Print a script that sweeps STUDY as an array of jobs, with what its [resources] ask for.
+
+    It needs no package for clusters: one job holds the scheduler, every other one a worker.
+    """
+    from scanner.engine.jobscript import job_script
+    from scanner.study import load_study
+
+    resources = load_study(study, allow_code).resources
+    click.echo(job_script(system, resources, study, store, workers, allow_code), nl=False)
+    if not (resources.interface or resources.host):
+        click.echo(
+            'all elements must run on one host, as nothing else is said: interface = "ib0" in [resources] (the name of '
+            "the cluster's network) lets them run anywhere",
+            err=True,
+        )
+
+
 def _estimate(asked: Study, store: Path | None) -> Estimate:
     from scanner.study import make_plan
     from scanner.study.estimate import estimate_cost

@@ -3,19 +3,52 @@
 from __future__ import annotations
 
 import importlib
+import os
+import shlex
+import time
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
+import dask
+from distributed import Status
+from distributed.deploy.adaptive import Adaptive
+
+from scanner.engine.encryption import security
 from scanner.errors import EngineError
 from scanner.study import Resources
 
 CLUSTERS = {"slurm": "SLURMCluster", "pbs": "PBSCluster", "lsf": "LSFCluster", "sge": "SGECluster"}
 ACCOUNT_KEYS = {"slurm": "account", "pbs": "account", "lsf": "project", "sge": "project"}
-USUAL_MEMORY = "1GB"
+USUAL_MEMORY = 1_000_000_000
+"""Bytes a worker gets where the study does not say."""
 WAIT_FOR_SCHEDULER = 60
+LOOPBACK = "lo"
+REFUSALS = (OSError, RuntimeError, ValueError)
+"""What dask-jobqueue raises where a command is missing, fails or says nothing that can be read."""
+REFUSED_SECONDS = 60.0
+"""Time between two attempts to submit a job in place of one that was lost."""
+LONGEST_FAREWELL = 180.0
 
 
-def batch_cluster(resources: Resources, workers: int | None, store: Path) -> Any:
+class Keeper(Adaptive):  # type: ignore[misc]
+    """Keep the number of jobs: submit a new one for each that is lost or at the end of its time."""
+
+    next_try = 0.0
+
+    async def target(self) -> int:
+        """Say how many jobs there should be."""
+        return int(self.minimum)
+
+    async def recommendations(self, target: int) -> dict[str, Any]:
+        """Forget from time to time what the queue, out of order for a while, refused, so that it is submitted again."""
+        if time.monotonic() >= self.next_try and forget_refused(self.cluster):
+            self.next_try = time.monotonic() + REFUSED_SECONDS
+        found: dict[str, Any] = await super().recommendations(target)
+        return found
+
+
+def batch_cluster(resources: Resources, workers: int | None, store: Path, say: Callable[[str], None]) -> Any:
     """Submit jobs and keep their number, whatever is lost on the way.
 
     Parameters
@@ -26,6 +59,8 @@ def batch_cluster(resources: Resources, workers: int | None, store: Path) -> Any
         Number of jobs, instead of that in ``resources``.
     store
         What they are to fill; a folder beside it gets what the jobs print.
+    say
+        Called with one line on what people should know.
 
     Returns
     -------
@@ -34,7 +69,7 @@ def batch_cluster(resources: Resources, workers: int | None, store: Path) -> Any
     Raises
     ------
     EngineError
-        dask-jobqueue is missing, the number of workers is not given, or the batch system is not to be had.
+        dask-jobqueue is missing, the number of workers is not given, or the batch system takes no job.
     """
     jobs = workers or resources.workers
     if jobs is None:
@@ -44,42 +79,108 @@ def batch_cluster(resources: Resources, workers: int | None, store: Path) -> Any
     except ModuleNotFoundError:
         raise EngineError(
             f'runner = "{resources.runner}" needs dask-jobqueue, which is not installed; '
-            'install it with pip install "scanner[cluster]", or start workers yourself and give --scheduler-file'
+            'install it with pip install "scanner[cluster]", or submit the script that `scanner jobscript` prints'
         ) from None
+    options = job_options(resources, store.with_suffix(".jobs"))
+    if options.get("interface") == LOOPBACK != resources.interface:
+        say(
+            "the scheduler listens on the loopback address, so that jobs on other hosts cannot reach it; "
+            'give interface = "ib0" (the name of the cluster\'s network) in [resources]'
+        )
     try:
-        cluster = getattr(jobqueue, CLUSTERS[resources.runner])(**job_options(resources, store.with_suffix(".jobs")))
-    except (OSError, RuntimeError, ValueError) as error:
-        raise EngineError(f"no jobs can be submitted to {resources.runner} ({error}); check [resources]") from None
-    # Adapting between equal bounds is what submits a new job for a lost one.
-    cluster.adapt(minimum_jobs=jobs, maximum_jobs=jobs)
+        cluster = getattr(jobqueue, CLUSTERS[resources.runner])(**options)
+    except REFUSALS as error:
+        raise _refusal(resources, error) from None
+    accepted = _submit(cluster, jobs, resources)
+    if accepted < jobs:
+        say(f"{resources.runner} took {accepted} of {jobs} jobs; going on with these")
+    cluster.adapt(Adaptive=Keeper, minimum_jobs=accepted, maximum_jobs=accepted)
     return cluster
 
 
 def job_options(resources: Resources, job_logs: Path) -> dict[str, Any]:
     """Say what dask-jobqueue must know about one job."""
+    runner = resources.runner
+    interface = resources.interface or dask.config.get(f"jobqueue.{runner}.interface", None)
+    scheduler = {"dashboard_address": "127.0.0.1:0"}
+    if resources.host:
+        scheduler["host"] = resources.host
     options: dict[str, Any] = {
         "cores": 1,
         "processes": 1,
-        "memory": resources.memory or USUAL_MEMORY,
+        "memory": resources.memory or f"{USUAL_MEMORY}B",
         "death_timeout": WAIT_FOR_SCHEDULER,
         "log_directory": str(job_logs),
-        "scheduler_options": {"dashboard_address": ":0"},
+        "interface": interface or (None if resources.host else LOOPBACK),
+        "security": security(),
+        "scheduler_options": scheduler,
+        "worker_extra_args": ["--no-dashboard", *lifetime_options(resources)],
         "job_extra_directives": list(resources.directives),
-        "job_script_prologue": list(resources.setup),
+        "job_script_prologue": [f"cd {shlex.quote(os.getcwd())}", *resources.setup],
         "queue": resources.queue,
-        ACCOUNT_KEYS[resources.runner]: resources.account,
-        "walltime": resources.walltime and walltime_for(resources.runner, resources.walltime),
+        ACCOUNT_KEYS[runner]: resources.account,
+        "walltime": walltime_for(resources),
     }
     return {name: value for name, value in options.items() if value not in (None, [])}
 
 
-def walltime_for(runner: str, walltime: str) -> str:
-    """Write a walltime days-hours:minutes:seconds as a batch system wants it; only Slurm knows days, LSF no seconds."""
-    if runner == "slurm":
-        return walltime
-    days, _, clock = walltime.rpartition("-")
-    hours, minutes, seconds = map(int, clock.split(":"))
-    hours += 24 * int(days or 0)
-    if runner == "lsf":
-        return f"{hours}:{min(minutes + (seconds > 0), 59):02d}"
-    return f"{hours}:{minutes:02d}:{seconds:02d}"
+def farewell_seconds(resources: Resources) -> float:
+    """Time before the end of a job at which what runs in it begins to take its leave."""
+    return min(LONGEST_FAREWELL, (resources.walltime_seconds or 0) / 4)
+
+
+def lifetime_options(resources: Resources) -> list[str]:
+    """Have a worker leave in good order before its job is ended, not all at the same moment."""
+    if resources.walltime_seconds is None:
+        return []
+    farewell = farewell_seconds(resources)
+    lifetime = resources.walltime_seconds - farewell
+    return ["--lifetime", f"{lifetime:.0f}s", "--lifetime-stagger", f"{farewell / 3:.0f}s"]
+
+
+def walltime_for(resources: Resources) -> str | None:
+    """Write a walltime as the batch system wants it; only Slurm knows days, LSF no seconds."""
+    if resources.runner == "slurm" or resources.walltime_seconds is None:
+        return resources.walltime
+    hours, rest = divmod(resources.walltime_seconds, 3600)
+    if resources.runner == "lsf":
+        return f"{hours}:{min(-(-rest // 60), 59):02d}"
+    return f"{hours}:{rest // 60:02d}:{rest % 60:02d}"
+
+
+def forget_refused(cluster: Any) -> list[Any]:
+    """Take the jobs that were not taken by the queue out of a cluster, which would wait for them for ever."""
+    refused = [name for name, job in cluster.workers.items() if job.job_id is None]
+    for name in refused:
+        cluster.workers.pop(name).status = Status.failed
+    return refused
+
+
+def _submit(cluster: Any, jobs: int, resources: Resources) -> int:
+    """Submit jobs and count those that are taken.
+
+    Raises
+    ------
+    EngineError
+        None is.
+    """
+    for _ in range(jobs):
+        cluster.worker_spec.update(cluster.new_worker_spec())
+    reason = "for no known reason"
+    try:
+        cluster.sync(lambda: cluster)
+    except REFUSALS as error:
+        reason = str(error).rpartition("stderr:")[2]
+    refused = forget_refused(cluster)
+    for name in refused:
+        del cluster.worker_spec[name]
+    if len(refused) == jobs:
+        cluster.close()
+        raise _refusal(resources, reason)
+    return jobs - len(refused)
+
+
+def _refusal(resources: Resources, reason: object) -> EngineError:
+    return EngineError(
+        f"no jobs can be submitted to {resources.runner} ({' '.join(str(reason).split())}); check [resources]"
+    )

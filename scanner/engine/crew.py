@@ -14,6 +14,7 @@ from distributed import Client, LocalCluster
 
 from scanner.engine import interrupts
 from scanner.engine.batch import CLUSTERS, batch_cluster
+from scanner.engine.encryption import certificates, protocol
 from scanner.engine.warmth import kernels_are_warm, warm_kernels
 from scanner.errors import EngineError
 from scanner.study import Resources, Study
@@ -21,6 +22,10 @@ from scanner.study import Resources, Study
 CONNECT_SECONDS = 20
 PATIENCE = {"distributed.scheduler.allowed-failures": 10}
 """Workers a task may lose before the scheduler gives it up; any death counts for all tasks waiting there."""
+
+KEPT_FOR_GOOD = {"distributed.deploy.lost-worker-timeout": "100 days"}
+"""A worker on this machine is started again by the process that watches it, which the cluster would otherwise end if
+that took longer than some seconds, for good."""
 
 
 @contextmanager
@@ -56,19 +61,24 @@ def hire(
     EngineError
         No scheduler answers, or the workers do not start.
     """
+    if client is not None:
+        yield client
+        return
     resources = study.resources
     named = _named_scheduler(resources, scheduler, scheduler_file)
     with ExitStack() as stack:
-        if client is not None:
-            yield client
-        elif named is not None:
+        stack.enter_context(certificates(resources))
+        stack.enter_context(dask.config.set(PATIENCE))
+        if named is not None:
             yield _remote_client(stack, *named)
         elif resources.runner in CLUSTERS:
-            stack.enter_context(dask.config.set(PATIENCE))
-            yield stack.enter_context(Client(stack.enter_context(batch_cluster(resources, workers, store))))
+            with interrupts.interrupts_withheld():
+                cluster = stack.enter_context(batch_cluster(resources, workers, store, say))
+            yield stack.enter_context(Client(cluster))
         else:
             _warm_this_machine(bool(study.rotations), say)
-            yield _local_client(stack, workers or resources.workers or CPU_COUNT)
+            stack.enter_context(dask.config.set(KEPT_FOR_GOOD))
+            yield _local_client(stack, resources, workers or resources.workers or CPU_COUNT)
 
 
 def call_on_scheduler(resources: Resources, scheduler: str | None = None, scheduler_file: str | None = None) -> None:
@@ -82,6 +92,7 @@ def call_on_scheduler(resources: Resources, scheduler: str | None = None, schedu
     named = _named_scheduler(resources, scheduler, scheduler_file)
     if named is not None:
         with ExitStack() as stack:
+            stack.enter_context(certificates(resources))
             _remote_client(stack, *named)
 
 
@@ -100,15 +111,16 @@ def _warm_this_machine(resonances: bool, say: Callable[[str], None]) -> None:
         warm_kernels(resonances=resonances)
 
 
-def _local_client(stack: ExitStack, workers: int) -> Client:
-    stack.enter_context(dask.config.set(PATIENCE))
-    with interrupts.interrupts_ignored():
+def _local_client(stack: ExitStack, resources: Resources, workers: int) -> Client:
+    with interrupts.interrupts_withheld():
         try:
             cluster = LocalCluster(
                 n_workers=workers,
                 threads_per_worker=1,
                 processes=True,
+                memory_limit=resources.memory or "auto",
                 host="127.0.0.1",
+                protocol=protocol(),
                 dashboard_address="127.0.0.1:0",
                 worker_dashboard_address="127.0.0.1:0",
                 silence_logs=logging.CRITICAL,
@@ -124,7 +136,7 @@ def _remote_client(stack: ExitStack, scheduler: str | None, scheduler_file: str 
         raise EngineError('runner = "scheduler" needs scheduler or scheduler_file in [resources], or as an option')
     try:
         client = Client(scheduler or _address_in(str(scheduler_file)), timeout=CONNECT_SECONDS)
-    except (OSError, ValueError) as error:
+    except (OSError, ValueError, TypeError, RuntimeError) as error:  # the last two where certificates are amiss
         where = scheduler or scheduler_file
         raise EngineError(f"{where}: no scheduler answers there ({error}); start `dask scheduler` first") from None
     return stack.enter_context(client)

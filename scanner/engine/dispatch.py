@@ -9,6 +9,7 @@ from collections import Counter, deque
 from collections.abc import Callable
 from concurrent.futures import CancelledError
 from dataclasses import dataclass
+from typing import Any
 from uuid import uuid4
 
 from distributed import Client, Future, KilledWorker
@@ -159,7 +160,7 @@ class Dispatcher:
     def _note_departure(self, address: str) -> None:
         """Tell whether a worker left in good order, at the end of its job's time say, or was lost."""
         events = (event for _, event in self._client.get_events(address))
-        farewell = next((event for event in events if event.get("action") == "remove-worker"), {})
+        farewell: dict[str, Any] = next((event for event in events if event.get("action") == "remove-worker"), {})
         unfinished = sum(key.startswith(f"scanner-{self._run}-") for key in farewell.get("processing-tasks", ()))
         self.losses.repeated += unfinished
         if farewell.get("expected"):

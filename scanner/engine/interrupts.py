@@ -1,4 +1,4 @@
-"""Ctrl-C: the first asks to stop in good order, the second stops at once."""
+"""Ctrl-C: the first asks to stop in good order, the second stops at once, and so does a request to terminate."""
 
 from __future__ import annotations
 
@@ -10,7 +10,7 @@ from types import FrameType, TracebackType
 
 
 class Interrupts:
-    """Note the first Ctrl-C while active; the next one raises KeyboardInterrupt.
+    """Note the first Ctrl-C while active; the next one, or SIGTERM, raises KeyboardInterrupt.
 
     Outside the main thread, where no signal arrives, it does nothing.
     """
@@ -22,7 +22,7 @@ class Interrupts:
         """Take over Ctrl-C."""
         self._active = threading.current_thread() is threading.main_thread()
         if self._active:
-            self._previous = signal.signal(signal.SIGINT, self._handle)
+            self._previous = {number: signal.signal(number, self._handle) for number in (signal.SIGINT, signal.SIGTERM)}
         return self
 
     def __exit__(
@@ -30,28 +30,26 @@ class Interrupts:
     ) -> None:
         """Give it back."""
         if self._active:
-            signal.signal(signal.SIGINT, self._previous)
+            for number, handler in self._previous.items():
+                signal.signal(number, handler)
 
     def _handle(self, number: int, frame: FrameType | None) -> None:
-        if self.requested:
+        if self.requested or number == signal.SIGTERM:
             raise KeyboardInterrupt
         self.requested = True
 
 
 @contextmanager
-def interrupts_ignored() -> Iterator[None]:
-    """Ignore Ctrl-C here, and for good in every process that is started meanwhile.
+def interrupts_withheld() -> Iterator[None]:
+    """Let Ctrl-C wait until the end here, and keep it away for good from every process that is started meanwhile.
 
     A terminal sends it to all processes of a command, and workers must not stop by it.
     """
-    if threading.current_thread() is not threading.main_thread():
-        yield
-        return
-    before = signal.signal(signal.SIGINT, signal.SIG_IGN)
+    before = signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGINT})
     try:
         yield
     finally:
-        signal.signal(signal.SIGINT, before)
+        signal.pthread_sigmask(signal.SIG_SETMASK, before)
 
 
 def dask_setup(worker: object) -> None:

@@ -26,6 +26,10 @@ SMALLEST_MEMORY = 500_000_000
 
 UNITS = {"MB": 10**6, "MiB": 2**20, "GB": 10**9, "GiB": 2**30, "TB": 10**12, "TiB": 2**40}
 
+TLS_KEYS = ("tls_ca", "tls_cert", "tls_key")
+PATH_KEYS = ("scheduler_file", *TLS_KEYS)
+"""Keys of [resources] that hold the path of a file."""
+
 Number = int | float
 Value = int | float | str
 Lines = Annotated[tuple[str, ...], Field(strict=False)]
@@ -97,6 +101,12 @@ class Resources(Section):
         Number of worker processes; None for one per core, or as many as the scheduler has.
     scheduler, scheduler_file
         Address of the running scheduler, or the file that holds it; at most one of them.
+    interface, host
+        Network interface that scheduler and workers use, and the address of the scheduler where it is not that of the
+        interface.  Without them everything stays on the loopback address, where other hosts cannot reach it.
+    tls_ca, tls_cert, tls_key
+        Paths of a certificate authority, a certificate and its key; with them all connections are encrypted, and
+        whoever has no certificate of that authority is turned away.
     account, queue, walltime, memory, directives
         What a job of the batch system asks for; ``memory`` is that of one worker.
     setup
@@ -118,6 +128,15 @@ class Resources(Section):
     scheduler_file: str | None = Field(
         None, description="the path of a scheduler file, as one line of text", examples=["scheduler.json"]
     )
+    interface: str | None = Field(
+        None, pattern=r"^[A-Za-z0-9_.:@-]{1,32}$", description="the name of a network interface", examples=["ib0"]
+    )
+    host: str | None = Field(
+        None, pattern=r"^[A-Za-z0-9_.:-]{1,255}$", description="the name or address of a host", examples=["login1"]
+    )
+    tls_ca: str | None = Field(None, description="the path of a file, as one line of text", examples=["ca.pem"])
+    tls_cert: str | None = Field(None, description="the path of a file, as one line of text", examples=["cert.pem"])
+    tls_key: str | None = Field(None, description="the path of a file, as one line of text", examples=["key.pem"])
     account: str | None = Field(None, pattern=r"^\S+$", description="a name without spaces", examples=["physics"])
     queue: str | None = Field(None, pattern=r"^\S+$", description="a name without spaces", examples=["normal"])
     walltime: str | None = Field(
@@ -135,7 +154,7 @@ class Resources(Section):
     directives: Lines = Field((), description="a list of lines of text", examples=[["--constraint=avx2"]])
     setup: Lines = Field((), description="a list of shell lines", examples=[["module load python"]])
 
-    @field_validator("scheduler_file")
+    @field_validator(*PATH_KEYS)
     @classmethod
     def _check_line(cls, text: str | None) -> str | None:
         if text is not None and not _plain(text):
@@ -164,7 +183,10 @@ class Resources(Section):
                 f"scheduler = {shown(self.scheduler)} and scheduler_file = {shown(self.scheduler_file)} "
                 "must not both be given; keep one of them"
             )
-        unused = sorted(given - {"runner", "workers"})
+        missing = sorted(set(TLS_KEYS) - given)
+        if 0 < len(missing) < len(TLS_KEYS):
+            raise ValueError(f"{missing[0]} must be given beside the other tls keys; add it, or remove them all")
+        unused = sorted(given - {"runner", "workers", *TLS_KEYS})
         if unused and "runner" not in given:
             wanted = "scheduler" if unused[-1].startswith("scheduler") else "slurm"
             raise ValueError(f'runner must be given beside {unused[-1]}; add for instance runner = "{wanted}"')
@@ -174,6 +196,15 @@ class Resources(Section):
     def memory_bytes(self) -> int | None:
         """Memory of one worker in bytes, None where it was left to the batch system."""
         return None if self.memory is None else _bytes_of(self.memory)
+
+    @property
+    def walltime_seconds(self) -> int | None:
+        """Longest duration of a job in seconds, None where it was left to the batch system."""
+        if self.walltime is None:
+            return None
+        days, _, clock = self.walltime.rpartition("-")
+        hours, minutes, seconds = map(int, clock.split(":"))
+        return 86400 * int(days or 0) + 3600 * hours + 60 * minutes + seconds
 
 
 def _bytes_of(memory: str) -> int:

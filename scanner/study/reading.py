@@ -9,7 +9,7 @@ from pathlib import Path
 
 from scanner.errors import StudyError
 from scanner.study.messages import nearest, read_section, shown, written
-from scanner.study.model import Heading, Orbits, Resonances, Resources, Study
+from scanner.study.model import PATH_KEYS, Heading, Orbits, Resonances, Resources, Study
 from scanner.study.parameters import read_parameters
 from scanner.study.sources import absolute_path, fault_of_file, read_sources
 
@@ -115,10 +115,8 @@ def _build(document: Mapping[str, object], text: str, allow_code: bool, folder: 
     asked = document.get("resonances")
     resonances = None if asked is None else read_section(Resonances, asked, "resonances")
     resources = read_section(Resources, document.get("resources", {}), "resources")
-    if resources.scheduler_file:
-        resources = resources.model_copy(
-            update={"scheduler_file": str(absolute_path(resources.scheduler_file, folder))}
-        )
+    paths = resources.model_dump(include=set(PATH_KEYS), exclude_none=True)
+    resources = resources.model_copy(update={key: str(absolute_path(path, folder)) for key, path in paths.items()})
     fixed, sources = read_sources(family, parameters.fixed, folder)
     return Study(
         title=heading.title,

@@ -85,10 +85,12 @@ setup = ["module load python", "export A='b'"]
 
 
 def test_paths_are_relative_to_the_study(tmp_path):
-    text = changed('"local"', '"scheduler"\nscheduler_file = "cluster/scheduler.json"')
-    (tmp_path / "mine.toml").write_text(text)
+    keys = 'scheduler_file = "cluster/scheduler.json"\ntls_ca = "ca.pem"\ntls_cert = "a.pem"\ntls_key = "/b.pem"'
+    (tmp_path / "mine.toml").write_text(changed('"local"', f'"scheduler"\n{keys}'))
     resources = load_study(tmp_path / "mine.toml").resources
     assert resources.scheduler_file == str(tmp_path / "cluster" / "scheduler.json")
+    assert (resources.tls_ca, resources.tls_cert) == (str(tmp_path / "ca.pem"), str(tmp_path / "a.pem"))
+    assert resources.tls_key == "/b.pem"
     assert load_study(tmp_path / "mine.toml").folder == str(tmp_path)
 
 
@@ -204,6 +206,9 @@ BAD = [
     ('"local"', '"local"\ndirectives = "a"', r'resources\.directives = "a" must be a list of lines'),
     ('"local"', '"local"\ndirectives = ["a", 1]', r"resources\.directives\[1\] = 1: directives must be a list"),
     ('"local"', '"local"\nsetup = ["a\\nb"]', r'resources\.setup = \["a\\nb"\] must be a list of shell lines'),
+    ('"local"', '"slurm"\ninterface = "a b"', r'resources\.interface = "a b" must be the name of a network interface'),
+    ('"local"', '"slurm"\nhost = "a/b"', r'resources\.host = "a/b" must be the name or address of a host'),
+    ('"local"', '"local"\ntls_ca = "a.pem"', r"resources\.tls_cert must be given beside the other tls keys"),
     ('"local"', '"scheduler"\nscheduler = "here"', r'resources\.scheduler = "here" must be an address like'),
     ('"local"', '"local"\nscheduler = "a:1"\nscheduler_file = "f"', r"resources\.scheduler = .* keep one of them"),
     ('runner = "local"', 'queue = "long"', r'resources\.runner must be given beside queue; add .* runner = "slurm"'),
