@@ -4,17 +4,29 @@ from __future__ import annotations
 
 import logging
 from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from logging.handlers import MemoryHandler
 from pathlib import Path
 
 from scanner.errors import ScannerError
 
 
+class LogFile(logging.FileHandler):
+    """A file whose disk may be full: what cannot be written is left out, and stops nothing."""
+
+    def handleError(self, record: logging.LogRecord) -> None:
+        """Leave it out."""
+
+    def close(self) -> None:
+        """Give up what is still to be written if it cannot be."""
+        with suppress(OSError):
+            super().close()
+
+
 @contextmanager
 def log_beside(store: Path) -> Iterator[None]:
     """Write all that this package logs, and the warnings of the task queue, to a file beside the store."""
-    to_file = logging.FileHandler(store.with_suffix(".log"))
+    to_file = LogFile(store.with_suffix(".log"))
     to_file.setFormatter(logging.Formatter("%(asctime)s %(levelname)s %(message)s"))
     # Passed on, as a local cluster silences every handler of its own loggers that writes to a stream.
     passed_on = MemoryHandler(1, target=to_file)

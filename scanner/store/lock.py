@@ -17,11 +17,16 @@ from scanner.store.ledger import Ledger
 
 BEAT_SECONDS = 15.0
 SILENCE_SECONDS = 120.0
+SAME_MOMENT_SECONDS = 2.0
+"""The start of the machine is known to a second."""
 
 
 @dataclass(frozen=True)
 class Holder:
-    """The process that holds a store; ``born`` tells it from a later one with the same number."""
+    """The process that holds a store; ``born`` tells it from a later one with the same number.
+
+    It is counted in seconds from the start of the machine, as the time of day may be set meanwhile.
+    """
 
     host: str
     pid: int
@@ -30,7 +35,7 @@ class Holder:
     @classmethod
     def here(cls) -> Holder:
         """Describe this process."""
-        return cls(socket.gethostname(), os.getpid(), psutil.Process().create_time())
+        return cls(socket.gethostname(), os.getpid(), born_at(os.getpid()))
 
 
 NOBODY = Holder("an unknown host", 0, 0.0)
@@ -48,6 +53,7 @@ class StoreLock:
         self._path = Ledger(store).folder / "lock"
         self._own = Holder.here()
         self._last_beat = 0.0
+        self._now: float | None = None
 
     def __enter__(self) -> StoreLock:
         """Take the store.
@@ -101,7 +107,13 @@ class StoreLock:
     def _take(self) -> bool:
         """Put the lock in place whole, or find that there is one."""
         offer = self._path.with_name(f".lock.{self._own.host}.{self._own.pid}")
-        offer.write_text(json.dumps(asdict(self._own)))
+        try:
+            offer.write_text(json.dumps(asdict(self._own)))
+            self._now = offer.stat().st_mtime
+        except OSError as error:
+            raise StoreError(
+                f"{self.store}: cannot be written ({error.strerror}); mend that and run the same again"
+            ) from None
         try:
             os.link(offer, self._path)
         except FileExistsError:
@@ -112,7 +124,7 @@ class StoreLock:
         return True
 
     def _look(self) -> tuple[Holder | None, float]:
-        return look(self.store)
+        return look(self.store, self._now)
 
     def _evict(self, dead: Holder) -> None:
         """Remove the lock of a dead holder; if another was quicker and took the store meanwhile, give it back."""
@@ -126,11 +138,14 @@ class StoreLock:
         aside.unlink()
 
 
-def look(store: Path) -> tuple[Holder | None, float]:
-    """Who holds a store, if anyone, and for how many seconds it has been silent."""
+def look(store: Path, now: float | None = None) -> tuple[Holder | None, float]:
+    """Who holds a store, if anyone, and for how many seconds it has been silent.
+
+    ``now`` is the time by the clock of the disk, which may be that of another host; by default that of this one.
+    """
     path = Ledger(store).folder / "lock"
     try:
-        return _read(path), max(0.0, time.time() - path.stat().st_mtime)
+        return _read(path), max(0.0, (time.time() if now is None else now) - path.stat().st_mtime)
     except FileNotFoundError:
         return None, 0.0
 
@@ -154,7 +169,12 @@ def lives(holder: Holder, silent: float) -> bool:
     if holder.host != socket.gethostname():
         return silent < SILENCE_SECONDS
     try:
-        born: float = psutil.Process(holder.pid).create_time()
+        return abs(born_at(holder.pid) - holder.born) < SAME_MOMENT_SECONDS
     except psutil.NoSuchProcess:
         return False
-    return abs(born - holder.born) < 1.0
+
+
+def born_at(pid: int) -> float:
+    """Seconds from the start of the machine to that of a process, however the clock has been set since."""
+    started: float = psutil.boot_time()
+    return float(psutil.Process(pid).create_time()) - started

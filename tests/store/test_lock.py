@@ -4,7 +4,9 @@ import socket
 import subprocess
 import sys
 import time
+from pathlib import Path
 
+import psutil
 import pytest
 
 from scanner.errors import StoreError
@@ -62,6 +64,27 @@ def test_another_host_is_believed_until_it_has_been_silent_for_long(store):
     put_lock(store, "elsewhere", 7, silent=SILENCE_SECONDS + 1)
     with StoreLock(store):
         pass
+
+
+def test_a_clock_that_is_ahead_of_the_disk_takes_no_store_away(store, monkeypatch):
+    put_lock(store, "elsewhere", 7)
+    ahead = time.time() + 3600
+    monkeypatch.setattr(time, "time", lambda: ahead)
+    with pytest.raises(StoreError, match="process 7 on elsewhere"), StoreLock(store):
+        pass
+
+
+def test_a_holder_is_known_again_when_the_clock_was_set_back(store, tmp_path_factory, monkeypatch):
+    """Setting the clock moves the time at which the machine is said to have started, and with it all its processes."""
+    with StoreLock(store):
+        processes = tmp_path_factory.mktemp("proc")
+        (processes / str(os.getpid())).symlink_to(f"/proc/{os.getpid()}")
+        told = [line.split() for line in Path("/proc/stat").read_text().splitlines()]
+        moved = [[key, str(int(values[0]) - 7200)] if key == "btime" else [key, *values] for key, *values in told]
+        (processes / "stat").write_text("\n".join(map(" ".join, moved)) + "\n")
+        monkeypatch.setattr(psutil, "PROCFS_PATH", str(processes))
+        assert time.time() - psutil.boot_time() > 7200
+        assert is_running(store)
 
 
 def test_a_holder_that_lost_the_store_is_told_and_leaves_the_lock_alone(store, monkeypatch):
