@@ -1,73 +1,43 @@
 """Whatever happens to a sweep, the store ends up as if nothing had happened."""
 
-import contextlib
 import os
 import signal
-import subprocess
-import sys
+import socket
 import time
 
 import pytest
-from distributed import Client, LocalCluster
-from slow_sweep import TASKS, Sweep, wait_until, write_study
-from sweeps import everything, fill, results
+from hosts import FAR, NEAR, two_hosts, why_no_hosts
+from own_cluster import IMPATIENT, LOOPBACK, own_cluster
+from slow_sweep import TASKS, Sweep, wait_until
+from sweeps import everything, results
 
-from scanner.engine import run_study
 from scanner.quantities import DONE
 from scanner.store import Ledger, open_sweep, sweep_progress
-from scanner.study import load_study
 
 
-@pytest.fixture(scope="module")
-def study(tmp_path_factory):
-    return write_study(tmp_path_factory.mktemp("study"))
-
-
-@pytest.fixture
-def carry_on(study, monkeypatch):
-    """Run the study again on the same store, with a worker in this process."""
-    monkeypatch.chdir(study.parent)
-
-    def run(store):
-        with (
-            LocalCluster(n_workers=1, threads_per_worker=1, processes=False, dashboard_address=":0") as cluster,
-            Client(cluster) as client,
-        ):
-            assert run_study(study, store, client, allow_code=True, progress=False).exit_status == 0
-
-    yield run
-    sys.modules.pop("slow_shapes", None)
-
-
-@pytest.fixture(scope="module")
-def undisturbed(study, tmp_path_factory):
-    """The same study, computed here one task after the other."""
-    path = tmp_path_factory.mktemp("undisturbed") / "slow.zarr"
-    here = os.getcwd()
-    os.chdir(study.parent)
-    try:
-        fill(path, load_study(study, allow_code=True))
-    finally:
-        os.chdir(here)
-        sys.modules.pop("slow_shapes", None)
-    return results(path)
-
-
-def test_a_killed_worker_costs_its_task_only(study, undisturbed, tmp_path):
-    sweep = Sweep(study, tmp_path / "slow.zarr", "--workers", "2")
-    sweep.await_receipts(1)
-    sweep.workers()[0].kill()
+def test_ten_killed_workers_cost_their_tasks_only(study, undisturbed, tmp_path):
+    sweep = Sweep(study, tmp_path / "slow.zarr", "--workers", "2", seconds_a_table=0.06)
+    for killed in range(0, 10, 2):
+        wait_until(lambda killed=killed: sweep.log().count("has joined") == killed + 2)
+        for worker in sweep.workers():
+            worker.kill()  # A task takes more than a second: it is in the middle of one.
     status, printed = sweep.wait()
     assert status == 0, printed
+    assert ", 10 workers lost, " in printed
+    assert " tasks repeated" in printed
+    assert sweep.log().count("is gone") == 10
     assert results(sweep.store) == undisturbed
-    assert "is gone" in (tmp_path / "slow.log").read_text()
 
 
-def test_a_killed_client_is_carried_on(study, undisturbed, carry_on, tmp_path):
+@pytest.mark.parametrize("everybody", [False, True])
+def test_a_killed_client_is_carried_on(everybody, study, undisturbed, carry_on, tmp_path):
     first = Sweep(study, tmp_path / "slow.zarr", "--workers", "2")
     first.await_receipts(2)
     workers = first.workers()
-    first.process.kill()
+    if everybody:
+        os.killpg(first.process.pid, signal.SIGKILL)
+    else:
+        first.process.kill()
     first.wait()
     wait_until(lambda: not any(worker.is_running() for worker in workers))
     kept = first.receipts()
@@ -81,7 +51,43 @@ def test_a_killed_client_is_carried_on(study, undisturbed, carry_on, tmp_path):
     assert results(first.store) == undisturbed
     after = everything(Ledger(first.store).folder / "receipts")
     assert {name: after[name] for name in before} == before
-    assert f"{len(kept)} of {TASKS} tasks are finished" in (tmp_path / "slow.log").read_text()
+    assert f"{len(kept)} of {TASKS} tasks are finished" in first.log()
+
+
+def test_a_second_client_is_told_who_holds_the_store(study, undisturbed, carry_on, tmp_path):
+    first = Sweep(study, tmp_path / "slow.zarr", "--workers", "1", seconds_a_table=0.2)
+    first.await_receipts(1)
+    status, printed = Sweep(study, first.store, "--workers", "1").wait()
+    assert status == 2
+    assert f"in use by process {first.process.pid} on {socket.gethostname()}" in printed
+    assert len(first.receipts()) < TASKS
+    first.end()  # A killed holder has left its lock behind, which stops nobody.
+    carry_on(first.store)
+    assert results(first.store) == undisturbed
+
+
+def test_an_interrupt_while_workers_start_is_honoured(study, tmp_path):
+    sweep = Sweep(study, tmp_path / "slow.zarr", "--workers", "2", seconds_a_table=5)
+    wait_until(lambda: f"0 of {TASKS} tasks are finished" in sweep.log())
+    os.killpg(sweep.process.pid, signal.SIGINT)
+    status, printed = sweep.wait()
+    assert status == 130, printed
+    assert "Traceback" not in printed
+    assert "has joined" not in sweep.log()
+    assert sweep.receipts() == []
+
+
+def test_a_request_to_terminate_stops_at_once(study, undisturbed, carry_on, tmp_path):
+    sweep = Sweep(study, tmp_path / "slow.zarr", "--workers", "2", seconds_a_table=0.1)
+    sweep.await_receipts(1)
+    workers = sweep.workers()
+    sweep.process.terminate()
+    status, printed = sweep.wait()
+    assert status == 130, printed
+    assert "to carry on" in printed
+    assert not any(worker.is_running() for worker in workers)
+    carry_on(sweep.store)
+    assert results(sweep.store) == undisturbed
 
 
 def test_the_first_interrupt_lets_tasks_finish(study, undisturbed, carry_on, tmp_path):
@@ -114,32 +120,11 @@ def test_the_second_interrupt_stops_at_once(study, tmp_path):
     assert not sweep_progress(sweep.store).running
 
 
-@contextlib.contextmanager
-def cluster(folder, study):
-    """A scheduler and a worker of their own."""
-    file = folder / "scheduler.json"
-    tool = [sys.executable, "-m"]
-    place = {"cwd": study.parent, "stderr": subprocess.DEVNULL, "stdout": subprocess.DEVNULL}
-    environment = {**os.environ, "SECONDS_A_TABLE": "0.02"}
-    options = ["--host", "127.0.0.1", "--port", "0", "--no-dashboard", "--scheduler-file", str(file)]
-    scheduler = subprocess.Popen([*tool, "distributed.cli.dask_scheduler", *options], **place)
-    wait_until(file.exists)
-    options = ["--scheduler-file", str(file), "--nthreads", "1", "--no-dashboard", "--local-directory", str(folder)]
-    worker = subprocess.Popen([*tool, "distributed.cli.dask_worker", *options], **place, env=environment)
-    try:
-        yield scheduler, file
-    finally:
-        for process in (worker, scheduler):
-            process.terminate()
-            process.wait(20)
-        file.unlink(missing_ok=True)
-
-
 def test_a_killed_scheduler_is_reported_and_carried_on(study, undisturbed, carry_on, tmp_path):
-    with cluster(tmp_path, study) as (scheduler, file):
-        first = Sweep(study, tmp_path / "slow.zarr", "--scheduler-file", str(file))
+    with own_cluster(tmp_path, study) as cluster:
+        first = Sweep(study, tmp_path / "slow.zarr", "--scheduler-file", str(cluster.file))
         first.await_receipts(1)
-        scheduler.kill()
+        cluster.scheduler.kill()
         status, printed = first.wait()
     assert status == 2, printed
     assert "is gone" in printed
@@ -148,3 +133,49 @@ def test_a_killed_scheduler_is_reported_and_carried_on(study, undisturbed, carry
     assert 1 <= len(first.receipts()) < TASKS
     carry_on(first.store)
     assert results(first.store) == undisturbed
+
+
+def test_a_worker_that_is_stopped_is_given_up(study, undisturbed, tmp_path):
+    slow = {"SECONDS_A_TABLE": "0.1", **IMPATIENT}
+    with own_cluster(tmp_path, study, [LOOPBACK] * 2, **slow) as cluster:
+        sweep = Sweep(study, tmp_path / "slow.zarr", "--scheduler-file", str(cluster.file))
+        wait_until(lambda: sweep.log().count("has joined") == 2)
+        cluster.worker(1).suspend()  # It still answers on the network, as the system does that for it.
+        status, printed = sweep.wait()
+    assert status == 0, printed
+    assert ", 1 workers lost, " in printed
+    assert results(sweep.store) == undisturbed
+
+
+@pytest.mark.skipif(why_no_hosts() is not None, reason=f"no host to cut off: {why_no_hosts()}")
+def test_a_host_that_is_cut_off_is_given_up(study, undisturbed, tmp_path):
+    slow = {"SECONDS_A_TABLE": "0.1", **IMPATIENT}
+    with two_hosts() as hosts:
+        near, far = (hosts.on(hosts.near), NEAR), (hosts.on(hosts.far), FAR)
+        with own_cluster(tmp_path, study, [near, far], **slow) as cluster:
+            sweep = Sweep(
+                study, tmp_path / "slow.zarr", "--scheduler-file", str(cluster.file), before=hosts.on(hosts.near)
+            )
+            wait_until(lambda: sweep.log().count("has joined") == 2)
+            hosts.pull_the_cable()
+            status, printed = sweep.wait()
+    assert status == 0, printed
+    assert f"{FAR}:" in sweep.log().partition("is gone")[0].splitlines()[-1]
+    assert ", 1 workers lost, " in printed
+    assert results(sweep.store) == undisturbed
+
+
+def test_a_table_for_which_memory_never_suffices_is_abandoned(study, undisturbed, carry_on, tmp_path):
+    greedy = tmp_path / "greedy"
+    greedy.touch()
+    soon = {"DASK_DISTRIBUTED__SCHEDULER__ALLOWED_FAILURES": "0", "GREEDY": str(greedy)}
+    with own_cluster(tmp_path, study, worker_options=["--memory-limit", "800MB"], **soon) as cluster:
+        sweep = Sweep(study, tmp_path / "slow.zarr", "--scheduler-file", str(cluster.file))
+        status, printed = sweep.wait()
+    assert status == 1, printed
+    assert "number = 30: not computed, its workers died again and again while computing it" in printed
+    assert ", 3 workers lost, " in printed
+    assert len(sweep.receipts()) == TASKS - 1
+    greedy.unlink()
+    carry_on(sweep.store)
+    assert results(sweep.store) == undisturbed
