@@ -147,6 +147,7 @@ _QUANTITIES = (
     _root("boundary_error", "distance of the stored boundary from the family's curve, over its size"),
     _orbit("s0", "arc length at the start as a fraction of the perimeter"),
     _orbit("p0", "sine of the angle from the inward normal at the start"),
+    Quantity("bounces_used", ORBITS, ("orbit",), "int64", "1", "bounces after which it was clear what the orbit is"),
     _orbit("lyapunov_per_bounce", "finite-time Lyapunov exponent per bounce"),
     _orbit("rotation_number", "mean advance along the boundary per bounce, in perimeters", reference=_WEIGHTED),
     _orbit(

@@ -123,7 +123,7 @@ def _cat_map() -> Iterator[Check]:
     schedule = make_schedule(steps)
     buffer = np.zeros((BUFFER_ROWS, BUFFER, LANES))
     buffer[[D_SS, D_SP, D_PS, D_PP]] = np.array([2.0, 1.0, 1.0, 1.0])[:, None, None]
-    averages = np.zeros((schedule.windows.shape[0], OBSERVABLES, LANES))
+    averages = np.zeros((OBSERVABLES * schedule.windows.shape[0], LANES))
     running = np.empty((RUNNING_ROWS, LANES))
     start_running(running)
     for first in range(0, steps, BUFFER):

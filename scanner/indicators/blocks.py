@@ -1,4 +1,7 @@
-"""The indicators of many orbits of one table, a block of them at a time."""
+"""Many orbits of one table on their way from horizon to horizon, a block of them at a time.
+
+Orbits that need not go on are taken out at a horizon and the others close up, so that blocks stay full.
+"""
 
 from __future__ import annotations
 
@@ -7,28 +10,41 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from scanner.bounce.lanes import BUFFER, BUFFER_ROWS, FAILED, LANES, OBSERVABLES, STATE_ROWS, fill_up
+from scanner.bounce.lanes import (
+    ADVANCE,
+    BUFFER,
+    BUFFER_ROWS,
+    FAILED,
+    LANES,
+    OBSERVABLES,
+    P_AFTER,
+    STATE_ROWS,
+    fill_up,
+)
 from scanner.bounce.orbits import bounce_lanes, start_block
 from scanner.compiled import kernel
+from scanner.elementary import angle_array
 from scanner.indicators.schedule import Schedule
 from scanner.indicators.streams import GROWTH, PATH, RUNNING_ROWS, absorb, start_running
 
 Floats = npt.NDArray[np.float64]
-Integers = npt.NDArray[np.int64]
+Whole = npt.NDArray[np.int64]
+Mask = npt.NDArray[np.bool_]
+
+RECORDED = 2048
+"""Last bounces of an orbit whose advance and p are kept, for the motion inside islands."""
 
 
 @dataclass(frozen=True)
 class Streams:
-    """What the streaming indicators hold at the end, for n orbits.
+    """What the streaming indicators of n orbits hold at a horizon.
 
     Attributes
     ----------
     averages
         Shape (windows, 3, n): weighted averages of advance (perimeters), p and chord (length).
-    growth
-        Shape (marks, n): logarithm of the growth of a tangent vector up to each mark.
-    path
-        Shape (n,): length travelled.
+    growth, path
+        Shape (marks, n): logarithm of the growth of a tangent vector and length travelled up to each mark.
     failed
         Shape (n,): true where a chord could not be found; the orbit's other numbers mean nothing then.
     """
@@ -36,72 +52,199 @@ class Streams:
     averages: Floats
     growth: Floats
     path: Floats
-    failed: npt.NDArray[np.bool_]
+    failed: Mask
+
+
+@dataclass(frozen=True)
+class Recording:
+    """Advance (turns) and p of every bounce of a stage from number ``first`` on, shape (bounces, 2, columns).
+
+    ``columns`` has the column of each orbit; it means nothing for those that had been left before.
+    """
+
+    first: int
+    rows: Floats
+    columns: Whole
 
 
 @kernel
-def measure_block(
+def start_blocks(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats, powers: Floats) -> None:
+    """Set up all blocks; the last two arrays have a column an orbit."""
+    here = np.empty((state.shape[0], LANES))
+    turning = np.empty((powers.shape[0], LANES))
+    for first in range(0, turns.size, LANES):
+        start_block(harmonics, turns[first : first + LANES], momenta[first : first + LANES], here, turning)
+        put_columns(here, state, first)
+        put_columns(turning, powers, first)
+
+
+@kernel
+def take_columns(source: Floats, first: int, target: Floats) -> None:
+    """Copy a block of columns out of a table of all orbits."""
+    for row in range(target.shape[0]):
+        for j in range(LANES):
+            target[row, j] = source[row, first + j]
+
+
+@kernel
+def put_columns(source: Floats, target: Floats, first: int) -> None:
+    """Copy a block of columns back into a table of all orbits."""
+    for row in range(source.shape[0]):
+        for j in range(LANES):
+            target[row, first + j] = source[row, j]
+
+
+@kernel
+def follow_blocks(
     harmonics: Floats,
-    turns: Floats,
-    momenta: Floats,
-    windows: Integers,
+    windows: Whole,
     weights: Floats,
-    marks: Integers,
+    marks: Whole,
+    start: int,
+    record_from: int,
+    state: Floats,
+    powers: Floats,
+    running: Floats,
     averages: Floats,
     growth: Floats,
     path: Floats,
-    failed: Floats,
+    record: Floats,
 ) -> None:
-    """Follow one block of LANES orbits to the last mark and leave its streams in the last four arrays."""
-    state = np.empty((STATE_ROWS, LANES))
-    powers = np.empty((2 * harmonics.shape[1], LANES))
+    """Follow every block from bounce ``start`` to the last of ``marks``.
+
+    The arrays from ``state`` on have a column an orbit and are updated; ``growth`` and ``path`` get a row a mark,
+    ``record`` (bounces, 2, orbits) the advance and p of the bounces from ``record_from`` on.
+    """
+    here = np.empty((STATE_ROWS, LANES))
+    turning = np.empty((2 * harmonics.shape[1], LANES))
     quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
     buffer = np.zeros((BUFFER_ROWS, BUFFER, LANES))
-    running = np.empty((RUNNING_ROWS, LANES))
-    start_block(harmonics, turns, momenta, state, powers)
-    start_running(running)
-    averages[:] = 0.0
-    first = 0
-    for mark in range(marks.shape[0]):
-        while first < marks[mark]:
-            count = min(BUFFER, marks[mark] - first)
-            bounce_lanes(harmonics, state, powers, quotient, buffer, count)
-            absorb(buffer, count, first, windows, weights, averages, running)
-            first += count
-        for j in range(LANES):
-            growth[mark, j] = running[GROWTH, j]
-    for j in range(LANES):
-        path[j] = running[PATH, j]
-        failed[j] = state[FAILED, j]
+    tangent = np.empty((RUNNING_ROWS, LANES))
+    sums = np.empty((averages.shape[0], LANES))
+    for block in range(0, state.shape[1], LANES):
+        take_columns(state, block, here)
+        take_columns(powers, block, turning)
+        take_columns(running, block, tangent)
+        take_columns(averages, block, sums)
+        first = start
+        for mark in range(marks.shape[0]):
+            while first < marks[mark]:
+                count = min(BUFFER, marks[mark] - first)
+                bounce_lanes(harmonics, here, turning, quotient, buffer, count)
+                absorb(buffer, count, first, windows, weights, sums, tangent)
+                for row in range(max(record_from - first, 0), count):
+                    for j in range(LANES):
+                        record[first + row - record_from, 0, block + j] = buffer[ADVANCE, row, j]
+                        record[first + row - record_from, 1, block + j] = buffer[P_AFTER, row, j]
+                first += count
+            for j in range(LANES):
+                growth[mark, block + j] = tangent[GROWTH, j]
+                path[mark, block + j] = tangent[PATH, j]
+        put_columns(here, state, block)
+        put_columns(turning, powers, block)
+        put_columns(tangent, running, block)
+        put_columns(sums, averages, block)
 
 
-def stream_orbits(harmonics: Floats, turns: Floats, momenta: Floats, schedule: Schedule) -> Streams:
-    """Follow orbits from boundary parameters ``turns`` and momenta ``momenta``, both of shape (n,), n > 0."""
-    size = turns.size
-    turns, momenta = fill_up(turns), fill_up(momenta)
-    blocks = turns.size // LANES
-    averages = np.empty((blocks, schedule.windows.shape[0], OBSERVABLES, LANES))
-    growth = np.empty((blocks, schedule.marks.size, LANES))
-    path = np.empty((blocks, LANES))
-    failed = np.empty((blocks, LANES))
-    for number in range(blocks):
-        lanes = slice(number * LANES, (number + 1) * LANES)
-        measure_block(
-            harmonics,
-            turns[lanes],
-            momenta[lanes],
+class Batch:
+    """Orbits of one table that are followed together.
+
+    Parameters
+    ----------
+    harmonics
+        Boundary, shape (4, K + 1).
+    turns, momenta
+        Start of each orbit, shape (n,): boundary parameter and p.
+    schedule
+        Where the horizons lie.
+
+    Attributes
+    ----------
+    harmonics
+        The boundary.
+    orbits
+        Numbers of the orbits that are still on their way, in order.
+    """
+
+    def __init__(self, harmonics: Floats, turns: Floats, momenta: Floats, schedule: Schedule) -> None:
+        self.orbits = np.arange(turns.size)
+        self.harmonics = harmonics
+        self._schedule = schedule
+        turns, momenta = fill_up(turns), fill_up(momenta)
+        self._state = np.empty((STATE_ROWS, turns.size))
+        self._powers = np.empty((2 * harmonics.shape[1], turns.size))
+        start_blocks(harmonics, turns, momenta, self._state, self._powers)
+        self._running = np.empty((RUNNING_ROWS, turns.size))
+        start_running(self._running)
+        self._averages = np.zeros((OBSERVABLES * schedule.windows.shape[0], turns.size))
+        self._growth = np.zeros((schedule.marks.size, turns.size))
+        self._path = np.zeros((schedule.marks.size, turns.size))
+        self._recordings: list[Recording] = []
+
+    def advance(self, number: int) -> Streams:
+        """Follow all orbits from the horizon before to horizon ``number``."""
+        schedule = self._schedule
+        start = schedule.horizons[number - 1] if number else 0
+        end = schedule.horizons[number]
+        stage = np.flatnonzero((schedule.marks > start) & (schedule.marks <= end))
+        among = slice(stage[0], stage[-1] + 1)
+        record_from = max(start, end - RECORDED)
+        record = np.empty((end - record_from, 2, self._state.shape[1]))
+        follow_blocks(
+            self.harmonics,
             schedule.windows,
             schedule.weights,
-            schedule.marks,
-            averages[number],
-            growth[number],
-            path[number],
-            failed[number],
+            schedule.marks[among],
+            start,
+            record_from,
+            self._state,
+            self._powers,
+            self._running,
+            self._averages,
+            self._growth[among],
+            self._path[among],
+            record,
+        )
+        columns = np.zeros(self.orbits[-1] + 1, dtype=np.int64)
+        columns[self.orbits] = np.arange(self.orbits.size)
+        earlier = [part for part in self._recordings if part.first + len(part.rows) > end - RECORDED]
+        self._recordings = [*earlier, Recording(record_from, record, columns)]
+        size = self.orbits.size
+        return Streams(
+            averages=self._averages.reshape(-1, OBSERVABLES, self._averages.shape[1])[..., :size],
+            growth=self._growth[:, :size],
+            path=self._path[:, :size],
+            failed=self._state[FAILED, :size] > 0.0,
         )
 
-    return Streams(
-        averages=np.moveaxis(averages, 0, 2).reshape(*averages.shape[1:3], -1)[..., :size],
-        growth=np.moveaxis(growth, 0, 1).reshape(growth.shape[1], -1)[:, :size],
-        path=path.reshape(-1)[:size],
-        failed=failed.reshape(-1)[:size] > 0.0,
-    )
+    def recall(self, chosen: Whole) -> tuple[list[Recording], Floats]:
+        """What is kept of the last bounces of some of the orbits on their way.
+
+        Parameters
+        ----------
+        chosen
+            Shape (m,): places in ``orbits``.
+
+        Returns
+        -------
+        recordings
+            One stage after the other up to the present horizon, with columns for the chosen orbits.
+        turns
+            Shape (m,): boundary parameter at the horizon, in (-1/2, 1/2].
+        """
+        orbits = self.orbits[chosen]
+        kept = [Recording(part.first, part.rows, part.columns[orbits]) for part in self._recordings]
+        return kept, angle_array(self._powers[3, chosen], self._powers[2, chosen])
+
+    def keep(self, going: Mask) -> None:
+        """Leave out the orbits that need not go on; the others close up."""
+        self.orbits = self.orbits[going]
+        if not self.orbits.size:
+            return
+        columns = fill_up(np.flatnonzero(going))
+        self._state = self._state[:, columns]
+        self._powers = self._powers[:, columns]
+        self._running = self._running[:, columns]
+        self._averages = self._averages[:, columns]
+        self._growth = self._growth[:, columns]
+        self._path = self._path[:, columns]

@@ -1,7 +1,7 @@
-"""A second, shorter pass over orbits inside islands: the island's centre, and the winding about it.
+"""Orbits inside islands: the island's centre, and the winding about it.
 
 The leading frequency of an island orbit is not its rotation number, which is the island's p/q to all digits, but the
-winding of the q-fold map about the island's centre.
+winding of the q-fold map about the island's centre.  Both are had from the orbit's own last bounces.
 """
 
 from __future__ import annotations
@@ -12,35 +12,21 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from scanner.bounce.lanes import (
-    ADVANCE,
-    BUFFER,
-    BUFFER_ROWS,
-    LANES,
-    P_AFTER,
-    STATE_ROWS,
-    fill_up,
-)
-from scanner.bounce.orbits import bounce_lanes, start_block
 from scanner.bounce.return_map import ReturnMap, find_fixed_points
 from scanner.compiled import kernel
 from scanner.elementary import angle_turns
-from scanner.indicators.schedule import window_weights
+from scanner.indicators.blocks import Recording
+from scanner.indicators.schedule import quick_weights
 
 Floats = npt.NDArray[np.float64]
 Whole = npt.NDArray[np.int64]
-
-SHARE = 4
-"""The second pass takes this part of an orbit's bounces, so that it adds at most a quarter."""
-FEWEST_RETURNS = 64
-"""Returns to the island's part that the winding needs, if the orbit has as many bounces."""
-MOST_BOUNCES = 8192
-"""Longest second pass: the returns of a block are kept until they are averaged."""
 
 PARABOLIC = 1e-9
 """A trace this close to 2 is that of a shear: rounding moves it by 1e-11, and no island met has one as close."""
 AT_REST = 1e-7
 """A return as close as this to the start, in turns and in p, has not moved; rounding adds up to 1e-9."""
+FEWEST_RETURNS = 8
+"""Returns to the island's part without which nothing is said of the motion in it."""
 ARCS = 128
 """Arcs of the circle in which the steps of the angle are looked for."""
 
@@ -54,7 +40,7 @@ class Windings:
     winding
         Shape (n,): turns of the q-fold map about the centre, folded to [0, 1/2].
     change
-        Shape (n,): its change between the two halves of the second pass.
+        Shape (n,): its change between the two halves of the bounces.
     centre_turns, centre_p
         Shape (n,): the centre in the part of the island where the orbit starts.
     trace
@@ -81,53 +67,36 @@ class Windings:
 
 
 @kernel
-def collect_returns(
-    harmonics: Floats,
-    turns: Floats,
-    momenta: Floats,
+def pick_returns(
+    rows: Floats,
+    columns: Whole,
     periods: Whole,
     rotations: Whole,
-    counts: Whole,
+    waits: Whole,
+    places: Whole,
+    travelled: Floats,
     shifts: Floats,
     returned_p: Floats,
 ) -> None:
-    """Fill the last two arrays, of shape (LANES, returns + 1), with every q-th bounce of a block, as often as asked.
+    """Go through the bounces of a recording and add every q-th one of each orbit to its returns.
 
-    ``shifts`` is the boundary parameter less that of the start and less the island's whole turns.
+    ``waits`` counts down to the next return, ``places`` is where it goes, -1 before the first; ``travelled`` is the
+    advance since the first return.  All the arrays but the first four are updated.
     """
-    state = np.empty((STATE_ROWS, LANES))
-    powers = np.empty((2 * harmonics.shape[1], LANES))
-    quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
-    buffer = np.empty((BUFFER_ROWS, BUFFER, LANES))
-    start_block(harmonics, turns, momenta, state, powers)
-    shift = np.zeros(LANES)
-    waited = np.zeros(LANES, dtype=np.int64)
-    place = np.zeros(LANES, dtype=np.int64)
-    for j in range(LANES):
-        shifts[j, 0] = 0.0
-        returned_p[j, 0] = momenta[j]
-    for first in range(0, (counts * periods).max(), BUFFER):
-        bounce_lanes(harmonics, state, powers, quotient, buffer, BUFFER)
-        for j in range(LANES):
-            for row in range(min(BUFFER, counts[j] * periods[j] - first)):
-                shift[j] += buffer[ADVANCE, row, j]
-                waited[j] += 1
-                if waited[j] == periods[j]:
-                    waited[j] = 0
-                    shift[j] -= rotations[j]
-                    place[j] += 1
-                    shifts[j, place[j]] = shift[j]
-                    returned_p[j, place[j]] = buffer[P_AFTER, row, j]
-
-
-def second_pass_bounces(bounces: int, period: int) -> int:
-    """How many bounces the second pass of an orbit takes, of the ``bounces`` of its first."""
-    wanted = max(bounces // SHARE, FEWEST_RETURNS * period)
-    return min(wanted, bounces, MOST_BOUNCES)
+    for row in range(rows.shape[0]):
+        for j in range(columns.size):
+            if places[j] >= 0:
+                travelled[j] += rows[row, 0, columns[j]]
+            waits[j] -= 1
+            if waits[j] == 0:
+                waits[j] = periods[j]
+                places[j] += 1
+                shifts[j, places[j]] = travelled[j] - rotations[j] * places[j]
+                returned_p[j, places[j]] = rows[row, 1, columns[j]]
 
 
 def wind_orbits(
-    harmonics: Floats, turns: Floats, momenta: Floats, periods: Whole, rotations: Whole, bounces: int
+    harmonics: Floats, recordings: list[Recording], turns: Floats, periods: Whole, rotations: Whole
 ) -> Windings:
     """Find the centres and the windings of island orbits.
 
@@ -135,41 +104,47 @@ def wind_orbits(
     ----------
     harmonics
         Boundary, shape (4, K + 1).
-    turns, momenta
-        Start of each orbit, shape (n,): boundary parameter and p.
+    recordings
+        Their last bounces, with columns of shape (n,).
+    turns
+        Shape (n,): boundary parameter after the last of them.
     periods, rotations
-        q and p of its island, shape (n,).
-    bounces
-        Bounces of the first pass.
+        q and p of each orbit's island, shape (n,).
     """
+    length = sum(len(part.rows) for part in recordings)
+    shifts = np.empty((turns.size, length // 2 + 1))
+    returned_p = np.empty((turns.size, length // 2 + 1))
+    # A whole number of q-fold maps from the start of the orbit, so that the centre is that of the start's part.
+    waits = periods - recordings[0].first % periods
+    places = np.full(turns.size, -1)
+    travelled = np.zeros(turns.size)
+    for part in recordings:
+        pick_returns(part.rows, part.columns, periods, rotations, waits, places, travelled, shifts, returned_p)
     found = np.full((6, turns.size), np.nan)
-    order = np.argsort(periods, kind="stable")
-    for first in range(0, order.size, LANES):
-        block = order[first : first + LANES]
-        found[:, block] = _wind_block(
-            harmonics, turns[block], momenta[block], periods[block], rotations[block], bounces
+    enough = np.flatnonzero(places >= FEWEST_RETURNS)
+    if enough.size:
+        found[:, enough] = _wind(
+            harmonics,
+            (turns - travelled)[enough],
+            shifts[enough],
+            returned_p[enough],
+            places[enough],
+            periods[enough],
+            rotations[enough],
         )
     return Windings(*found)
 
 
-def _wind_block(
-    harmonics: Floats, turns: Floats, momenta: Floats, periods: Whole, rotations: Whole, bounces: int
+def _wind(
+    harmonics: Floats,
+    turns: Floats,
+    shifts: Floats,
+    returned_p: Floats,
+    counts: Whole,
+    periods: Whole,
+    rotations: Whole,
 ) -> Floats:
-    """The rows of ``Windings`` for one block of at most LANES orbits."""
-    counts = np.array([second_pass_bounces(bounces, int(q)) // q for q in periods], dtype=np.int64)
-    most = int(counts.max())
-    shifts = np.empty((LANES, most + 1))
-    returned_p = np.empty((LANES, most + 1))
-    collect_returns(
-        harmonics,
-        fill_up(turns),
-        fill_up(momenta),
-        fill_up(periods),
-        fill_up(rotations),
-        fill_up(counts),
-        shifts,
-        returned_p,
-    )
+    """The rows of ``Windings`` for orbits with enough returns, ``counts`` after the first, which is at ``turns``."""
     weights, places = _weights_of(counts)
     mean_shift, mean_p = average_points(shifts, returned_p, counts, weights, places)
     centre_turns, centre_p, at = find_fixed_points(harmonics, turns + mean_shift, mean_p, periods, rotations)
@@ -186,7 +161,7 @@ def _weights_of(counts: Whole) -> tuple[Floats, Whole]:
     lengths = sorted({int(length) for length in (*counts, *(counts // 2))})
     starts = dict(zip(lengths, np.cumsum([0, *lengths[:-1]]), strict=True))
     places = np.array([[starts[int(n)] for n in counts], [starts[int(n) // 2] for n in counts]], dtype=np.int64)
-    return np.concatenate([window_weights(length) for length in lengths]), places
+    return np.concatenate([quick_weights(length) for length in lengths]), places
 
 
 def _normal_form(at: ReturnMap) -> tuple[Floats, Floats]:
@@ -197,7 +172,7 @@ def _normal_form(at: ReturnMap) -> tuple[Floats, Floats]:
     """
     m12 = at.matrix[0, 1] / at.speed
     inside = 4.0 - at.trace * at.trace
-    stretch = np.sqrt(np.where(inside > 0.0, inside, np.nan)) / (2.0 * np.abs(m12))
+    stretch = np.sqrt(np.where(inside > 4.0 * PARABOLIC, inside, np.nan)) / (2.0 * np.abs(m12))
     return (at.matrix[0, 0] - at.matrix[1, 1]) / (2.0 * m12), stretch
 
 

@@ -23,7 +23,7 @@ RUNNING_ROWS = 4
 @kernel
 def start_running(running: Floats) -> None:
     """Begin with the tangent vector (1, 1) / 2, of unit size in the sum of absolute values."""
-    for j in range(LANES):
+    for j in range(running.shape[1]):
         running[VECTOR_S, j] = 0.5
         running[VECTOR_P, j] = 0.5
         running[GROWTH, j] = 0.0
@@ -36,19 +36,36 @@ def add_to_averages(
 ) -> None:
     """Add bounces ``first`` to ``first + count`` to the weighted averages of every window they fall in.
 
-    ``averages`` has shape (windows, OBSERVABLES, LANES).
+    ``averages`` has shape (windows * OBSERVABLES, LANES).  Four bounces at a time: each average is loaded and stored
+    once for them, and summed in the order of the bounces all the same.
     """
     for w in range(windows.shape[0]):
         start = windows[w, 0]
         shift = windows[w, 2] - start
         low = max(start, first)
         high = min(start + windows[w, 1], first + count)
-        for number in range(low, high):
-            weight = weights[shift + number]
+        number = low
+        while number + 4 <= high:
+            w0 = weights[shift + number]
+            w1 = weights[shift + number + 1]
+            w2 = weights[shift + number + 2]
+            w3 = weights[shift + number + 3]
             row = number - first
             for q in range(OBSERVABLES):
                 for j in range(LANES):
-                    averages[w, q, j] += weight * buffer[q, row, j]
+                    total = averages[w * OBSERVABLES + q, j]
+                    total += w0 * buffer[q, row, j]
+                    total += w1 * buffer[q, row + 1, j]
+                    total += w2 * buffer[q, row + 2, j]
+                    total += w3 * buffer[q, row + 3, j]
+                    averages[w * OBSERVABLES + q, j] = total
+            number += 4
+        while number < high:
+            weight = weights[shift + number]
+            for q in range(OBSERVABLES):
+                for j in range(LANES):
+                    averages[w * OBSERVABLES + q, j] += weight * buffer[q, number - first, j]
+            number += 1
 
 
 @kernel

@@ -71,13 +71,13 @@ def cat_map(x: np.ndarray, p: np.ndarray, buffer: np.ndarray, count: int) -> Non
 def run_map(fill: Step, x: np.ndarray, p: np.ndarray, steps: int) -> tuple[list[Readings], list[Verdicts]]:
     """Readings and verdicts at every horizon for orbits of a map, a multiple of LANES of them."""
     schedule = make_schedule(steps)
-    averages = np.zeros((schedule.windows.shape[0], OBSERVABLES, x.size))
+    averages = np.zeros((OBSERVABLES * schedule.windows.shape[0], x.size))
     growth = np.empty((schedule.marks.size, x.size))
-    path = np.empty(x.size)
+    path = np.empty((schedule.marks.size, x.size))
     for first_orbit in range(0, x.size, LANES):
         lanes = slice(first_orbit, first_orbit + LANES)
         xs, ps = x[lanes].copy(), p[lanes].copy()
-        block = np.zeros((schedule.windows.shape[0], OBSERVABLES, LANES))
+        block = np.zeros((OBSERVABLES * schedule.windows.shape[0], LANES))
         buffer = np.zeros((BUFFER_ROWS, BUFFER, LANES))
         running = np.empty((RUNNING_ROWS, LANES))
         start_running(running)
@@ -89,8 +89,8 @@ def run_map(fill: Step, x: np.ndarray, p: np.ndarray, steps: int) -> tuple[list[
                 absorb(buffer, count, first, schedule.windows, schedule.weights, block, running)
                 first += count
             growth[number, lanes] = running[GROWTH]
-        averages[:, :, lanes] = block
-        path[lanes] = running[PATH]
-    streams = Streams(averages, growth, path, np.zeros(x.size, dtype=bool))
+            path[number, lanes] = running[PATH]
+        averages[:, lanes] = block
+    streams = Streams(averages.reshape(-1, OBSERVABLES, x.size), growth, path, np.zeros(x.size, dtype=bool))
     readings = [read_streams(streams, schedule, number, 1.0) for number in range(len(schedule.horizons))]
     return readings, [judge(reading, streams.failed) for reading in readings]

@@ -45,11 +45,11 @@ def test_windings_over_a_whole_ellipse() -> None:
     )
     error = np.abs(found.island_winding.values[island] - np.abs(2 * rho - np.rint(2 * rho)))
     assert np.isfinite(error).mean() > 0.99
-    # Where the two halves agree on eight digits the whole is as good; next to the separatrix they do not.
-    settled = found.frequency_diffusion.values[island] < -8
+    # Where the two halves agree on seven digits the whole is better; next to the separatrix they do not.
+    settled = found.frequency_diffusion.values[island] < -7
     assert settled.mean() > 0.8
     assert error[settled].max() < 1e-7
-    assert np.nanmedian(error) < 1e-13
+    assert np.nanmedian(error) < 1e-9
 
 
 def test_winding_tends_to_the_angle_of_the_centre() -> None:
