@@ -31,41 +31,55 @@ MOST_DIGITS = 16.0
 
 @dataclass(frozen=True)
 class Windows:
-    """When the averages of H horizons are taken: over all bounces, and over the two halves that end there.
+    """When the averages of H horizons are taken, all the package takes.
 
     ``spans`` has a row (first bounce, length, place of its weights) for each of the W windows; ``weights`` one
-    row of weights, filled up with zeros, for each distinct length; ``marks`` the bounces at which the growth of
-    the tangent vector is noted; ``of_horizon`` three windows for each horizon.
+    row of weights, filled up with zeros, for each distinct length and kind; ``marks`` the bounces at which the growth
+    of the tangent vector is noted; ``of_horizon`` the places of seven windows for each horizon: its two halves; then
+    with quick weights the whole, the two halves, the first and the last three quarters.
     """
 
     horizons: tuple[int, ...]
     spans: Integers
     weights: Floats
     marks: Integers
-    of_horizon: tuple[tuple[int, int, int], ...]
+    of_horizon: tuple[tuple[int, ...], ...]
 
 
-def weights_of(length: int) -> Floats:
+def smooth_weights(length: int) -> Floats:
     """Weights exp(-1 / (t (1 - t))) at midpoints, with sum 1 (Das, Saiki, Sander and Yorke, arXiv:1601.06051)."""
     t = (np.arange(length) + 0.5) / length
     weights = np.exp(-1.0 / (t * (1.0 - t)))
     return weights / weights.sum()
 
 
+def quick_weights(length: int) -> Floats:
+    """Weights sin^8(pi t) at midpoints, with sum 1: the Hann window of fourth order (Laskar 2003)."""
+    weights = np.sin(math.pi * (np.arange(length) + 0.5) / length) ** 8
+    return weights / weights.sum()
+
+
 def lay_out_windows(horizons: Sequence[int]) -> Windows:
     """Windows of increasing horizons; one that serves two horizons is kept once."""
-    wanted = [[(0, end), (end - end // 2 * 2, end // 2), (end - end // 2, end // 2)] for end in horizons]
-    spans = list(dict.fromkeys(span for three in wanted for span in three))
-    lengths = sorted({length for _, length in spans})
-    weights = np.zeros((len(lengths), max(lengths)))
-    for row, length in enumerate(lengths):
-        weights[row, :length] = weights_of(length)
+    wanted = []
+    for end in horizons:
+        half, most = end // 2, end - end // 4
+        halves = ((0, half), (end - half, half))
+        wanted.append(
+            [(*span, smooth_weights) for span in halves]
+            + [(*span, quick_weights) for span in ((0, end), *halves, (0, most), (end - most, most))]
+        )
+    spans = list(dict.fromkeys(span for seven in wanted for span in seven))
+    kinds = list(dict.fromkeys((length, weigh) for _, length, weigh in spans))
+    weights = np.zeros((len(kinds), max(length for length, _ in kinds)))
+    for row, (length, weigh) in enumerate(kinds):
+        weights[row, :length] = weigh(length)
     return Windows(
         horizons=tuple(horizons),
-        spans=np.array([(first, length, lengths.index(length)) for first, length in spans]),
+        spans=np.array([(first, length, kinds.index((length, weigh))) for first, length, weigh in spans]),
         weights=weights,
         marks=np.array(sorted({mark for end in horizons for mark in (end // TRANSIENT, end)})),
-        of_horizon=tuple((spans.index(a), spans.index(b), spans.index(c)) for a, b, c in wanted),
+        of_horizon=tuple(tuple(map(spans.index, seven)) for seven in wanted),
     )
 
 
@@ -109,13 +123,16 @@ def _read(windows: Windows, averages: Floats, growth: Floats, path: Floats) -> d
     found: dict[str, list[Floats]] = {
         name: [] for name in ("rotation_number", "frequency_diffusion", "agreement_digits", "lyapunov_per_bounce")
     }
-    for end, (whole, first, second) in zip(windows.horizons, windows.of_horizon, strict=True):
+    for end, (first, second, whole, quick_first, quick_second, *_) in zip(
+        windows.horizons, windows.of_horizon, strict=True
+    ):
         change = np.abs(averages[second] - averages[first])
         change[2] /= scale
         change = np.log10(np.maximum(change, 10.0**-MOST_DIGITS))
+        drift = np.abs(averages[quick_second, 0] - averages[quick_first, 0])
         settled = end // TRANSIENT
         found["rotation_number"].append(averages[whole, 0])
-        found["frequency_diffusion"].append(change[0])
+        found["frequency_diffusion"].append(np.log10(np.maximum(drift, 10.0**-MOST_DIGITS)))
         found["agreement_digits"].append(-change.max(axis=0))
         found["lyapunov_per_bounce"].append((growth[place[end]] - growth[place[settled]]) / (end - settled))
     return {name: np.array(rows) for name, rows in found.items()} | {"mean_chord": path / windows.horizons[-1]}
