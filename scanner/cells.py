@@ -75,7 +75,7 @@ def compute(plan: Plan, task: Task) -> CellResult:
         result.fill(ORBITS, place, numbers)
         if task.kind == "survey":
             result.fill(ROOT, place, table_numbers(table, numbers, asked.replicates))
-        result.bounces += s.size * asked.bounces
+        result.bounces += int(numbers["bounces_used"].sum())
 
     return _settle_tables(plan, task, follow, {})
 

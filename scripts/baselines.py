@@ -99,8 +99,8 @@ def measure_scalar(harmonics: Floats, turns: Floats, p: Floats, horizons: Sequen
     Returns
     -------
     dict
-        ``rotation_number`` (turns per bounce), ``frequency_diffusion`` (log10), ``agreement_digits`` and
-        ``lyapunov_per_bounce``, of shape (H, n), and ``mean_chord`` of shape (n,).
+        ``rotation_number`` (turns per bounce), ``weighted_chord`` (length), ``frequency_diffusion`` (log10),
+        ``agreement_digits`` and ``lyapunov_per_bounce``, of shape (H, n), and ``mean_chord`` of shape (n,).
     """
     windows = lay_out_windows(horizons)
     averages = np.zeros((len(windows.spans), 3, turns.size))
@@ -121,7 +121,14 @@ def _read(windows: Windows, averages: Floats, growth: Floats, path: Floats) -> d
     place = {int(mark): number for number, mark in enumerate(windows.marks)}
     scale = (path.mean() / windows.horizons[-1]) if path.size else 1.0
     found: dict[str, list[Floats]] = {
-        name: [] for name in ("rotation_number", "frequency_diffusion", "agreement_digits", "lyapunov_per_bounce")
+        name: []
+        for name in (
+            "rotation_number",
+            "weighted_chord",
+            "frequency_diffusion",
+            "agreement_digits",
+            "lyapunov_per_bounce",
+        )
     }
     for end, (first, second, whole, quick_first, quick_second, *_) in zip(
         windows.horizons, windows.of_horizon, strict=True
@@ -132,6 +139,7 @@ def _read(windows: Windows, averages: Floats, growth: Floats, path: Floats) -> d
         drift = np.abs(averages[quick_second, 0] - averages[quick_first, 0])
         settled = end // TRANSIENT
         found["rotation_number"].append(averages[whole, 0])
+        found["weighted_chord"].append(averages[whole, 2])
         found["frequency_diffusion"].append(np.log10(np.maximum(drift, 10.0**-MOST_DIGITS)))
         found["agreement_digits"].append(-change.max(axis=0))
         found["lyapunov_per_bounce"].append((growth[place[end]] - growth[place[settled]]) / (end - settled))
