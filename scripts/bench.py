@@ -101,7 +101,9 @@ def orbits(per_table: int, bounces: int, repeats: int) -> None:
 def extras(per_table: int, bounces: int, repeats: int) -> None:
     """Time what orbits that are left early save, and what periodic orbits cost."""
     print(f"{per_table} orbits of up to {bounces} bounces, median of {repeats}; seconds a table on one core")
-    print(f"{'table':<20}{'islands':>10}{'all':>10}{'left early':>12}{'bounces':>10}{'ns each':>10}{'periods <= 8':>16}")
+    print(
+        f"{'table':<20}{'islands':>10}{'all':>10}{'left early':>12}{'bounces':>10}{'ns each':>10}{'periods <= 8':>16}"
+    )
     for name in ("ellipse", "radial_harmonic 2", "limacon", "normal_harmonic 4"):
         table = build_table(name.split()[0], **TABLES[name])
         s, p = section_points(table, seed=1, replicates=1, orbits=per_table)

@@ -2,8 +2,9 @@
 """What the thresholds of the verdicts rest on: ellipses, all regular, and mixed tables followed longer.
 
 For ellipses it prints the tails of what the thresholds are laid on: the growth of a tangent vector beyond ln(bounces),
-and the digits to which the averages of two halves agree.  For tables with islands and chaos it prints how the verdicts
-after few bounces compare with those of the same orbits after many: fractions of the section, in percent.
+and the digits to which the averages of two halves agree.  For tables with islands and chaos it compares verdicts with
+those of the same orbits followed longer: how many are wrong when all orbits get all the bounces, how many when those
+that are clear are left early, and what that saves.
 
     python scripts/studies/calibrate_verdicts.py --orbits 1024
 """
@@ -18,13 +19,13 @@ import numpy as np
 from study_tools import OneLineParser, answer, print_rows
 
 from scanner.errors import ScannerError
-from scanner.indicators import MINIMUM_BOUNCES
-from scanner.indicators.blocks import stream_orbits
+from scanner.indicators import MINIMUM_BOUNCES, orbit_numbers
+from scanner.indicators.blocks import Batch
 from scanner.indicators.readings import Readings, read_streams
 from scanner.indicators.schedule import make_schedule
 from scanner.indicators.verdicts import CHAOTIC_GROWTH, REGULAR_DIGITS, SHEAR_GROWTH, judge
 from scanner.measure import section_points
-from scanner.quantities import VERDICTS
+from scanner.quantities import CHAOTIC, REGULAR_LIBRATIONAL, REGULAR_ROTATIONAL, UNDECIDED
 from scanner.tables import Table, build_table
 
 ECCENTRICITIES = (0.3, 0.5, 0.7, 0.8, 0.9, 0.95, 0.98, 0.99)
@@ -32,8 +33,10 @@ MIXED: tuple[tuple[str, dict[str, Any]], ...] = (
     ("limacon", {"quadratic": 0.15}),
     ("limacon", {"quadratic": 0.1}),
     ("radial_harmonic", {"harmonic": 2, "amplitude": 0.05}),
+    ("radial_harmonic", {"harmonic": 2, "amplitude": 0.08}),
     ("radial_harmonic", {"harmonic": 2, "amplitude": 0.12}),
     ("radial_harmonic", {"harmonic": 3, "amplitude": 0.05}),
+    ("radial_harmonic", {"harmonic": 4, "amplitude": 0.02}),
     ("radial_harmonic", {"harmonic": 5, "amplitude": 0.01}),
 )
 SEED = 1
@@ -44,8 +47,10 @@ def read_table(table: Table, orbits: int, bounces: int) -> tuple[Readings, np.nd
     """Readings and verdicts of orbits spread over the section, after all the bounces."""
     s, p = section_points(table, SEED, 1, orbits)
     schedule = make_schedule(bounces)
-    streams = stream_orbits(table.harmonics, table.turns_from_arc(s), p, schedule)
-    readings = read_streams(streams, schedule, len(schedule.horizons) - 1, table.mean_chord_exact)
+    batch = Batch(table.harmonics, table.turns_from_arc(s), p, schedule)
+    last = len(schedule.horizons) - 1
+    *_, streams = (batch.advance(number) for number in range(last + 1))
+    readings = read_streams(streams, schedule, last, table.mean_chord_exact)
     return readings, judge(readings, streams.failed).code
 
 
@@ -58,22 +63,33 @@ def tails_of(eccentricity: float, orbits: int, bounces: int) -> dict[str, object
     row["growth_max"] = excess.max()
     row |= {f"digits_{share:g}": np.quantile(readings.digits, share) for share in (0.5, 0.01, 0.001)}
     row["digits_min"] = readings.digits.min()
-    row["percent_undecided"] = 100.0 * float((verdict == VERDICTS.index("undecided")).mean())
-    row["percent_chaotic"] = 100.0 * float((verdict == VERDICTS.index("chaotic")).mean())
+    row["percent_undecided"] = 100.0 * float((verdict == UNDECIDED).mean())
+    row["percent_chaotic"] = 100.0 * float((verdict == CHAOTIC).mean())
     return row
 
 
-def confusion_of(table: Table, orbits: int, bounces: int, reference: int) -> list[dict[str, object]]:
-    """Verdicts after ``bounces`` in rows, after ``reference`` in columns: percent of the section."""
-    _, early = read_table(table, orbits, bounces)
-    _, late = read_table(table, orbits, reference)
-    return [
-        {f"after {bounces}": name}
-        | {late_name: 100.0 * float(((early == code) & (late == late_code)).mean())
-           for late_code, late_name in enumerate(VERDICTS) if late_code}
-        for code, name in enumerate(VERDICTS)
-        if code
-    ]  # fmt: skip
+def compare_on(table: Table, orbits: int, bounces: int, reference: int) -> dict[str, object]:
+    """Count wrong verdicts with all the bounces and of orbits left early, against ``reference`` bounces."""
+    s, p = section_points(table, SEED, 1, orbits)
+    full = orbit_numbers(table, s, p, bounces, adaptive=False)
+    early = orbit_numbers(table, s, p, bounces)
+    # Exponential growth cannot be taken back: what is chaotic need not be followed longer.
+    truth = full["verdict"].copy()
+    open_ones = np.flatnonzero(truth != CHAOTIC)
+    if open_ones.size:
+        truth[open_ones] = orbit_numbers(table, s[open_ones], p[open_ones], reference, adaptive=False)["verdict"]
+    left = early["bounces_used"] < bounces
+    row: dict[str, object] = {"chaotic": np.count_nonzero(truth == CHAOTIC)}
+    for name, found in (("all", full), ("early", early)):
+        regular = np.isin(found["verdict"], (REGULAR_ROTATIONAL, REGULAR_LIBRATIONAL))
+        row[f"{name}_regular_wrong"] = np.count_nonzero(regular & (truth == CHAOTIC))
+        row[f"{name}_undecided"] = np.count_nonzero(found["verdict"] == UNDECIDED)
+        if name == "early":
+            row["left_as_regular_wrong"] = np.count_nonzero(left & regular & (truth == CHAOTIC))
+    row["chaotic_wrong"] = np.count_nonzero((early["verdict"] == CHAOTIC) & (full["verdict"] != CHAOTIC))
+    row["bounces"] = float(early["bounces_used"].mean())
+    row["percent"] = 100.0 * float(early["bounces_used"].mean()) / bounces
+    return row
 
 
 # %%
@@ -93,11 +109,14 @@ def main(arguments: Sequence[str] | None = None) -> None:
     )
     print(f"thresholds: growth {SHEAR_GROWTH:g} and {CHAOTIC_GROWTH:g}, digits {REGULAR_DIGITS:g}")
     print_rows([tails_of(eccentricity, options.orbits, options.bounces) for eccentricity in ECCENTRICITIES])
+    print(f"\nmixed tables, {options.orbits} orbits each: verdicts after all {options.bounces} bounces, and of orbits")
+    print(f"left early, that are wrong by {options.reference} bounces")
+    rows = []
     for family, parameters in MIXED:
-        words = ", ".join(f"{name} = {value}" for name, value in parameters.items())
-        print(f"\n{family}, {words}: percent of the section, columns after {options.reference} bounces", flush=True)
+        words = " ".join([family, *(str(value) for value in parameters.values())])
         table = build_table(family, **parameters)
-        print_rows(confusion_of(table, options.orbits, options.bounces, options.reference))
+        rows.append({"table": words} | compare_on(table, options.orbits, options.bounces, options.reference))
+    print_rows(rows)
 
 
 # %%
