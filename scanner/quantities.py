@@ -138,7 +138,7 @@ _QUANTITIES = (
         reference="Pesin's formula",
     ),
     _root("diffusion_median", "median log10 of the frequency diffusion of the chaotic orbits", reference=_LASKAR),
-    Quantity("bounces_used", ROOT, (), "int64", "1", "bounces of all orbits of the table together"),
+    _root("bounces_used", "bounces of all orbits of the table together"),
     _root("perimeter", "perimeter of the table", units="length"),
     _root("area", "area of the table", units="length2"),
     _root("curvature_min", "smallest curvature of the boundary", units="length-1"),

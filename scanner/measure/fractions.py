@@ -165,7 +165,7 @@ def table_numbers(
         "lyapunov_per_length_stderr": per_length.stderr,
         "entropy_per_bounce": ratio(growth, one, replicates).value,
         "diffusion_median": _median(diffusion[chaotic]),
-        "bounces_used": int(np.asarray(orbits["bounces_used"]).sum()),
+        "bounces_used": float(np.asarray(orbits["bounces_used"]).sum()),
         "perimeter": table.perimeter,
         "area": table.area,
         "curvature_min": table.curvature_min,

@@ -47,6 +47,7 @@ def orbits(verdict: list[int]) -> dict[str, np.ndarray]:
         "island_period": np.where(np.array(verdict) == REGULAR_LIBRATIONAL, 3, 0).astype(np.int16),
         "lyapunov_per_bounce": np.linspace(0.1, 0.8, size),
         "mean_chord": np.linspace(1.0, 2.0, size),
+        "bounces_used": np.full(size, 512),
         "frequency_diffusion": -np.arange(size, dtype=float),
         "p0": np.linspace(-0.99, 0.99, size),
         "rotation_number": np.linspace(0.9, 0.1, size),
@@ -88,6 +89,7 @@ def test_numbers_of_a_table_by_hand() -> None:
     assert found["entropy_per_bounce"] == pytest.approx(exponent[chaotic].sum() / 8)
     assert found["diffusion_median"] == np.median([-1, -4, -5, -7])
     assert found["mean_chord"] == pytest.approx(1.5)
+    assert found["bounces_used"] == 8 * 512
     assert np.nansum(found["regular_area_fraction_by_p"]) == 3.0
     assert set(found) == {entry.name for entry in in_group("root")} - {"table_status"}
 
