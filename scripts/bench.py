@@ -20,7 +20,8 @@ from bench_scale import many_tables, many_workers
 from bench_sweep import compare_workers
 
 from scanner.indicators import orbit_numbers
-from scanner.indicators.schedule import horizons
+from scanner.indicators.blocks import stream_orbits
+from scanner.indicators.schedule import horizons, make_schedule
 from scanner.measure import section_points
 from scanner.measure.resonances import survey_resonances
 from scanner.quantities import REGULAR_LIBRATIONAL
@@ -61,7 +62,7 @@ def rivals_on(table: Table, orbits: int, bounces: int) -> dict[str, Callable[[],
     turns = np.asarray(table.turns_from_arc(s))
     ends = horizons(bounces)
     return {
-        "package": partial(orbit_numbers, table, s, p, bounces, adaptive=False),
+        "package": partial(orbit_numbers, table, s, p, bounces),
         "numpy": partial(measure_vectorised, table.harmonics, turns, p, ends),
         "scalar": partial(measure_scalar, table.harmonics, turns, p, ends),
     }
@@ -99,26 +100,25 @@ def orbits(per_table: int, bounces: int, repeats: int) -> None:
 @click.option("--bounces", default=8192, show_default=True, help="Bounces per orbit.")
 @click.option("--repeats", default=5, show_default=True, help="Rounds that count.")
 def extras(per_table: int, bounces: int, repeats: int) -> None:
-    """Time what orbits that are left early save, and what periodic orbits cost."""
-    print(f"{per_table} orbits of up to {bounces} bounces, median of {repeats}; seconds a table on one core")
-    print(
-        f"{'table':<20}{'islands':>10}{'all':>10}{'left early':>12}{'bounces':>10}{'ns each':>10}{'periods <= 8':>16}"
-    )
+    """Time what comes on top of the first pass over the orbits: islands, periodic orbits."""
+    print(f"{per_table} orbits of {bounces} bounces, median of {repeats}; ns per bounce on one core")
+    print(f"{'table':<20}{'islands':>10}{'first pass':>12}{'whole':>10}{'added':>10}{'periods <= 8':>16}")
+    schedule = make_schedule(bounces)
     for name in ("ellipse", "radial_harmonic 2", "limacon", "normal_harmonic 4"):
         table = build_table(name.split()[0], **TABLES[name])
         s, p = section_points(table, seed=1, replicates=1, orbits=per_table)
-        found = orbit_numbers(table, s, p, bounces)
-        inside = np.mean(found["verdict"] == REGULAR_LIBRATIONAL)
+        turns = np.asarray(table.turns_from_arc(s))
+        inside = np.mean(orbit_numbers(table, s, p, bounces)["verdict"] == REGULAR_LIBRATIONAL)
         rivals: dict[str, Callable[[], object]] = {
-            "all": partial(orbit_numbers, table, s, p, bounces, adaptive=False),
-            "early": partial(orbit_numbers, table, s, p, bounces),
+            "first": partial(stream_orbits, table.harmonics, turns, p, schedule),
+            "whole": partial(orbit_numbers, table, s, p, bounces),
             "resonances": partial(survey_resonances, table, 8),
         }
         seconds = interleaved_medians(rivals, repeats)
-        used = found["bounces_used"]
+        first, whole = (seconds[rival] / (per_table * bounces) * 1e9 for rival in ("first", "whole"))
         print(
-            f"{name:<20}{inside:>10.0%}{seconds['all']:>10.3f}{seconds['early']:>12.3f}{used.mean():>10.0f}"
-            f"{seconds['early'] / used.sum() * 1e9:>10.1f}{seconds['resonances'] * 1e3:>13.1f} ms",
+            f"{name:<20}{inside:>10.0%}{first:>12.1f}{whole:>10.1f}{whole / first - 1:>10.0%}"
+            f"{seconds['resonances'] * 1e3:>13.1f} ms",
             flush=True,
         )
 
