@@ -42,6 +42,11 @@ def test_one_process_a_core_by_default_gives_what_is_computed_here(computed_here
     assert report.exit_status == 0
     assert (report.tables, report.done, report.not_convex, report.failures) == (10, 6, 4, ())
     assert report.bounces == 6 * 256 * 8192
+    assert report.core_hours == pytest.approx(sweep_progress(tmp_path / "grid.zarr").core_seconds / 3600, rel=1e-12)
+    # Kernels are compiled by now, so that there was an estimate; 6 tables take more than a ms each and less than 100 s.
+    assert 6e-3 / 3600 < report.expected_core_hours < 600 / 3600
+    assert f"{report.core_hours:.3g} core-hours, {report.expected_core_hours:.3g} expected" in str(report)
+    assert str(report) in (tmp_path / "grid.log").read_text()
     assert results(tmp_path / "grid.zarr") == computed_here
     assert verify(tmp_path / "grid.zarr") == []
     with scanner.open_sweep(tmp_path / "grid.zarr") as tree:
