@@ -8,6 +8,7 @@ import time
 from collections import Counter, deque
 from collections.abc import Callable
 from concurrent.futures import CancelledError
+from contextlib import suppress
 from dataclasses import dataclass
 from typing import Any
 from uuid import uuid4
@@ -116,6 +117,7 @@ class Dispatcher:
         self._count_workers()
         self._fill_window()
         if not self._flying:
+            self._count_once_more()
             return False
         try:
             future = self._landed.get(timeout=TURN_SECONDS)
@@ -155,7 +157,16 @@ class Dispatcher:
             self._lonely_since = time.monotonic()
         elif time.monotonic() - self._lonely_since > LONELY_SECONDS:
             self._lonely_since = time.monotonic()
-            self._say(f"no workers for {LONELY_SECONDS / 60:.0f} minutes; waiting for some to join, Ctrl-C stops")
+            self._say(
+                f"no workers for {LONELY_SECONDS / 60:.0f} minutes; waiting for some to join, Ctrl-C stops: "
+                "look at the queue, and at what the workers' jobs printed"
+            )
+
+    def _count_once_more(self) -> None:
+        """Note who went in the last moment; all tasks are settled, so that a scheduler that is gone does no harm."""
+        self._next_count = 0.0
+        with suppress(EngineError):
+            self._count_workers()
 
     def _note_departure(self, address: str) -> None:
         """Tell whether a worker left in good order, at the end of its job's time say, or was lost."""
@@ -212,7 +223,6 @@ class Dispatcher:
             self._deaths[number] += 1
             log.warning("task %d lost its workers (%d): %s", number, self._deaths[number], reason)
             if self._deaths[number] < ATTEMPTS:
-                self.losses.repeated += 1
                 self._suspects.append(number)
             else:
                 self.abandoned[number] = "its workers died again and again while computing it"

@@ -18,7 +18,7 @@ LOOPBACK = ((), "127.0.0.1")
 
 IMPATIENT = {
     "DASK_DISTRIBUTED__COMM__TIMEOUTS__TCP": "12s",
-    "DASK_DISTRIBUTED__SCHEDULER__WORKER_TTL": "5s",
+    "DASK_DISTRIBUTED__SCHEDULER__WORKER_TTL": "8s",
 }
 """Give up a host that is silent after seconds rather than minutes."""
 

@@ -97,6 +97,21 @@ def test_a_task_that_kills_its_workers_is_abandoned_and_the_others_are_not(tmp_p
         assert list(run.dispatcher.abandoned) == [1]
 
 
+def test_a_worker_that_leaves_in_good_order_is_not_lost(tmp_path, monkeypatch, caplog):
+    with (
+        caplog.at_level(logging.INFO),
+        LocalCluster(n_workers=2, threads_per_worker=1, processes=False, dashboard_address=":0") as cluster,
+        Client(cluster) as client,
+    ):
+        run = Run(client, tmp_path, stand_ins.note_and_wait, monkeypatch)
+        while not run.landed:
+            run.dispatcher.turn()
+        client.retire_workers([next(iter(run.dispatcher.workers))])  # as at the end of a job's time
+        assert run.to_the_end() == list(range(10))
+    assert "has left in good order" in caplog.text
+    assert run.dispatcher.losses.workers == 0
+
+
 def test_being_without_workers_is_said(tmp_path, monkeypatch):
     monkeypatch.setattr(dispatch, "LONELY_SECONDS", 0.2)
     with (
