@@ -62,4 +62,4 @@ def mark_missing(plots: Sequence[Axes], scale: Scale, status: np.ndarray) -> lis
 def limit_to_fractions(axes: Axes) -> None:
     """Show the whole range of a fraction, or its lower part where all values are small."""
     top = axes.dataLim.y1
-    axes.set_ylim(0.0, 1.02 if not top < 0.5 else 1.1 * max(top, 1e-3))
+    axes.set_ylim(0.0, 1.1 * max(top, 1e-3) if np.isfinite(top) and top < 0.5 else 1.02)

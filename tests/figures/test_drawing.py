@@ -79,6 +79,11 @@ def test_a_dimension_of_words_has_them_on_its_axis():
     assert_legible(figure)
 
 
+def test_where_nothing_is_done_the_axis_is_that_of_a_fraction():
+    figure, _ = draw_figure(invented_sweep(ONE, convex_below=-1.0), Request())
+    assert figure.axes[0].get_ylim() == (0.0, 1.02)
+
+
 def test_map_shows_the_stored_numbers():
     tree = invented_sweep(TWO)
     figure, _ = draw_figure(tree, Request(quantity="lyapunov_per_length"))
