@@ -5,6 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 
 import click
+from click.core import ParameterSource
 
 PATH = click.Path(path_type=Path)
 
@@ -15,6 +16,11 @@ allow_code_option = click.option(
 )
 force_option = click.option("--force", is_flag=True, help="Replace a file that exists.")
 to_option = click.option("--to", "target", required=True, metavar="FILE", type=PATH, help="The file to write.")
+
+
+def is_given(name: str) -> bool:
+    """Whether an option of the running command was written, rather than left at its default."""
+    return click.get_current_context().get_parameter_source(name) is ParameterSource.COMMANDLINE
 
 
 def _split_selections(_: click.Context, __: click.Parameter, entries: tuple[str, ...]) -> dict[str, str]:

@@ -13,6 +13,7 @@ from scanner.cli.options import (
     allow_code_option,
     average_option,
     force_option,
+    is_given,
     select_option,
     store_argument,
     to_option,
@@ -76,6 +77,8 @@ def summary(store: Path, select: dict[str, str], average: tuple[str, ...], faile
 
     if failed and (select or average):
         raise click.UsageError("--failed lists all tables without numbers: leave out --select and --average")
+    if (failed or form != "text") and is_given("rows"):
+        raise click.UsageError("--rows shortens the columns on a terminal, all else is whole: leave it out")
     with open_store(store) as tree:
         picked, taken = pick_tables(tree, select)
         root = average_tables(picked.to_dataset().load(), average)
@@ -107,6 +110,8 @@ def export(store: Path, target: Path, orbits: bool, resonances: bool, force: boo
 
     if orbits and resonances:
         raise click.UsageError("--orbits and --resonances are rows of different kinds: write a file each")
+    if (orbits or resonances) and target.suffix.lower() == ".nc":
+        raise click.UsageError("a .nc file has no rows and holds all groups: leave out --orbits and --resonances")
     with open_store(store) as tree:
         export_sweep(tree, target, rows=ORBITS if orbits else RESONANCES if resonances else ROOT, force=force)
     click.echo(f"wrote {target}", err=True)

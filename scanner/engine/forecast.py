@@ -16,23 +16,31 @@ MOST_TABLES = 2000
 """Building more tables than this on the client, before anything runs, would keep the workers waiting."""
 
 
+def remembered_core_hours(store: Path) -> float | None:
+    """Core-hours that were expected when a store was begun, None where that was not noted."""
+    try:
+        return float(json.loads(_note(store).read_bytes())["core_hours"])
+    except (OSError, ValueError, TypeError, KeyError):
+        return None
+
+
 def expected_core_hours(plan: Plan, store: Path) -> float | None:
     """Core-hours that were expected when a store was begun; asked for the first time, they are estimated.
 
     None where that would take long: a host without compiled kernels, a large grid, a function of the user's own.
     """
-    note = Ledger(store).folder / "estimate.json"
-    try:
-        return float(json.loads(note.read_bytes())["core_hours"])
-    except (OSError, ValueError, TypeError, KeyError):
-        pass
+    known = remembered_core_hours(store)
     quick = ":" not in plan.study.family and plan.table_count <= MOST_TABLES
-    if not (quick and kernels_are_warm(resonances=bool(plan.rotations))):
-        return None
+    if known is not None or not (quick and kernels_are_warm(resonances=bool(plan.rotations))):
+        return known
     try:
         hours = estimate_cost(plan, seconds=QUICK_SECONDS).core_hours
     except ScannerError:
         return None
     with contextlib.suppress(OSError):
-        note.write_text(json.dumps({"core_hours": hours}))
+        _note(store).write_text(json.dumps({"core_hours": hours}))
     return hours
+
+
+def _note(store: Path) -> Path:
+    return Ledger(store).folder / "estimate.json"

@@ -14,7 +14,7 @@ from scanner.engine.agenda import Agenda
 from scanner.engine.crew import call_on_scheduler, hire
 from scanner.engine.dispatch import Dispatcher, Losses
 from scanner.engine.display import Display, choose_display
-from scanner.engine.forecast import expected_core_hours
+from scanner.engine.forecast import expected_core_hours, remembered_core_hours
 from scanner.engine.interrupts import Interrupts
 from scanner.engine.journal import log_beside
 from scanner.engine.tally import Tally, clock
@@ -188,7 +188,7 @@ class _Run:
         self._reported: set[int] = set()
         self._abandoned: dict[int, str] = {}
         self._losses = Losses()
-        self._expected: float | None = None
+        self._expected = remembered_core_hours(path)
         self.before = sweep_progress(path)
         log.info(
             "%s",

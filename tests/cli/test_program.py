@@ -11,7 +11,20 @@ import pytest
 from scanner.cli import program
 from scanner.cli.program import run, scanner
 
-COMMANDS = ["estimate", "sweep", "progress", "summary", "export", "figure", "verify", "selfcheck"]
+COMMANDS = [
+    "estimate",
+    "sweep",
+    "jobscript",
+    "progress",
+    "summary",
+    "export",
+    "figure",
+    "report",
+    "atlas",
+    "verify",
+    "compact",
+    "selfcheck",
+]
 HEAVY = ["numpy", "numba", "xarray", "dask", "distributed", "zarr", "pandas", "scipy", "matplotlib", "pydantic"]
 
 
@@ -58,7 +71,9 @@ def test_no_command_shows_the_help(call):
         (["summary", "{store}", "--rows", "-3"], "-3 is not in the range x>=0"),
         (["summary", "{store}", "--average", "phase"], "'phase' is not a swept parameter"),
         (["summary", "{store}", "--failed", "--average", "amplitude"], "leave out --select and --average"),
+        (["summary", "{store}", "--format", "csv", "--rows", "5"], "--rows shortens the columns on a terminal"),
         (["summary", "{folder}/nowhere.zarr"], "nowhere.zarr"),
+        (["export", "{store}", "--to", "{out}/all.nc", "--orbits"], "holds all groups: leave out --orbits"),
         (["progress", "{folder}"], "Größe"),
         (["verify", "{study}"], "my study.toml"),
         (["export", "{study}", "--to", "{out}/tables.csv"], "my study.toml"),
