@@ -16,7 +16,7 @@ from typing import Any
 import click
 import numpy as np
 from baselines import measure_scalar, measure_vectorised
-from bench_scale import many_tables, many_workers
+from bench_scale import many_tables, many_workers, scheduling_alone
 from bench_sweep import compare_workers
 
 from scanner.indicators import orbit_numbers
@@ -142,8 +142,10 @@ def scale(tables: int, seconds: float) -> None:
 @main.command()
 @click.option("--count", "counts", multiple=True, type=int, default=(1, 2, 8, 32), show_default=True)
 @click.option("--tasks", default=300, show_default=True, help="Tasks of some tens of milliseconds.")
-def workers(counts: tuple[int, ...], tasks: int) -> None:
+@click.option("--empty", default=10_000, show_default=True, help="Tasks that do nothing.")
+def workers(counts: tuple[int, ...], tasks: int, empty: int) -> None:
     """Measure what a task and a worker cost the scheduler and its client, with ever more workers."""
+    scheduling_alone(empty)
     many_workers(counts, tasks)
 
 

@@ -18,9 +18,11 @@ import psutil
 from distributed import Client, LocalCluster
 
 import scanner
+from scanner.engine import dispatch
+from scanner.engine.agenda import Agenda
 from scanner.engine.work import Order, Outcome
 from scanner.store import Ledger, Receipt, Regions, compact_store, prepare_store, sweep_progress
-from scanner.study import Plan, load_study, make_plan
+from scanner.study import Plan, load_study, make_plan, parse_study
 
 STUDY = """
 [study]
@@ -169,6 +171,33 @@ def many_workers(counts: tuple[int, ...], tasks: int) -> None:
         order = Order(str(folder), plan.study.text, "", False, plan.study.fingerprint)
         outcome = Outcome(1, 1, 1, 1, 1, 1, 1.0, "host")
         print(f"a task sends {len(pickle.dumps(order))} bytes to its worker and {len(pickle.dumps(outcome))} back")
+
+
+def do_nothing(order: Order, number: int) -> Outcome:
+    """Stand in for a task: what is left of a run is the client, the scheduler and what they send."""
+    return Outcome(number, 1, 1, 1, 0, 0, 0.0, "host")
+
+
+def scheduling_alone(tasks: int) -> None:
+    """Dispatch tasks that do nothing to two workers: the highest rate, and the memory as it goes."""
+    text = STUDY.format(harmonics="2", start=0.5, stop=0.6, count=TABLES_A_TASK * tasks, per_table=128, bounces=65536)
+    plan = make_plan(parse_study(text))
+    dispatch.run_task = do_nothing
+    with LocalCluster(n_workers=2, threads_per_worker=1, dashboard_address=":0") as cluster, Client(cluster) as client:
+        landed: list[int] = []
+        order = Order("nowhere", text, "", False, plan.study.fingerprint)
+        agenda = Agenda(plan, frozenset())
+        dispatcher = dispatch.Dispatcher(client, order, agenda, lambda outcome: landed.append(outcome.task), print)
+        begun, spent, shown = time.perf_counter(), time.process_time(), 0
+        while dispatcher.turn():
+            if len(landed) - shown >= tasks // DOZEN:
+                shown = len(landed)
+                size = psutil.Process().memory_info().rss
+                print(f"  {shown:6d} tasks, {dispatcher.flying} in flight, client with scheduler {size / 1e6:.1f} MB")
+        passed = time.perf_counter() - begun
+        each = (time.process_time() - spent) / len(landed)
+        rate = len(landed) / passed
+        print(f"{len(landed)} tasks that do nothing: {rate:.0f} a second, each {each * 1e3:.2f} ms of a core")
 
 
 def idle_share(workers: int) -> float:
