@@ -70,7 +70,7 @@ def restore(store, files):
         file.write_bytes(content)
 
 
-@pytest.mark.parametrize("seed", range(20))
+@pytest.mark.parametrize("seed", range(15))
 def test_every_command_ends_in_one_line(original, seed):
     store, files = original
     target = store.parent / "tables.csv"
