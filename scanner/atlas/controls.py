@@ -9,6 +9,7 @@ from pathlib import Path
 import xarray as xr
 from bokeh.models import CategoricalSlider, Column, Select, Spinner
 
+from scanner.atlas.portrait import COLOUR_NAMES
 from scanner.atlas.view import (
     DRAWN_BOUNCES,
     View,
@@ -20,12 +21,8 @@ from scanner.atlas.view import (
     values_of,
 )
 from scanner.atlas.words import name_of, plain, write_value
-from scanner.figures.request import COLOURS
 
 WIDGETS = (Path(__file__).parent / "widgets.css").read_text(encoding="utf-8")
-COLOUR_NAMES = dict(
-    zip(COLOURS, ("verdict", "Lyapunov exponent per bounce", "frequency diffusion", "rotation number"), strict=True)
-)
 NO_AXIS = "none, a curve"
 
 

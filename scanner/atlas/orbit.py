@@ -60,7 +60,7 @@ def find_table(picked: xr.DataTree, allow_code: bool) -> Table | str:
         )
     try:
         return rebuild_table(picked, allow_code=allow_code)
-    except ScannerError as error:
+    except (ScannerError, SystemExit) as error:  # the latter from a function of the study's author
         return f"The table cannot be built here: {error}."
 
 

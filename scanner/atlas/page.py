@@ -71,7 +71,7 @@ class Page:
         self._snapshot = watch.look()
         self._view = read_query(query, self._snapshot.root)
         self._table: Table | str = ""
-        self._built = self._asked = 0
+        self._building, self._tracing = Future[Table | str](), Future[TracedOrbit]()
         self._wire = Wire()
         self._texts = {name: _make_text(name) for name in TEXTS}
         self._controls = Controls(self._snapshot.root, self._view, self._change)
@@ -113,6 +113,7 @@ class Page:
 
     def _change(self, asked: Callable[[View], View]) -> None:
         """Go from the view to another one and show what is different in it."""
+        self._texts["notice"].text = ""
         self._guard(partial(self._go_to, asked))()
 
     def _go_to(self, asked: Callable[[View], View]) -> None:
@@ -191,12 +192,12 @@ class Page:
         self._say_table()
         self._show_portrait()
         self._trace()
-        self._built += 1
-        job = self._tracer.submit(find_table, self._snapshot.tree.isel(place), self._allow_code)
-        self._when_done(job, partial(self._show_outline, self._built))
+        self._building.cancel()
+        self._building = self._tracer.submit(find_table, self._snapshot.tree.isel(place), self._allow_code)
+        self._when_done(self._building, self._show_outline)
 
-    def _show_outline(self, built: int, job: Future[Table | str]) -> None:
-        if built != self._built:
+    def _show_outline(self, job: Future[Table | str]) -> None:
+        if job is not self._building:
             return
         self._table = job.result()
         self._outline.fill(self._table if isinstance(self._table, Table) else None)
@@ -221,24 +222,27 @@ class Page:
     def _show_portrait(self) -> None:
         root, place = self._snapshot.root, self._view.table(self._snapshot.root)
         done = int(root["table_status"].isel(place).item()) == DONE
-        orbits = stored_orbits(self._snapshot.tree, place) if done else None
+        orbits = stored_orbits(self._snapshot.tree.isel(place)) if done else None
         self._texts["table_legend"].text = self._portrait.fill(orbits, self._view.colour)
 
     def _trace(self) -> None:
         """Follow the orbit of the view in the table that is shown, beside the server's loop."""
-        self._asked += 1
+        self._tracing.cancel()
+        self._tracing = Future()
         start, table = self._view.start, self._table
         if not isinstance(table, Table) or not table.is_convex or start is None:
             self._say_orbit(*_why_no_orbit(table))
             self._draw_orbit(None)
             return
         self._texts["orbit_title"].text = "tracing ..."
-        job = self._tracer.submit(trace_orbit, table, start, self._view.bounces, self._snapshot.study.bounces)
-        self._when_done(job, partial(self._show_orbit, self._asked))
+        bounces = self._snapshot.study.bounces
+        self._tracing = self._tracer.submit(trace_orbit, table, start, self._view.bounces, bounces)
+        self._when_done(self._tracing, self._show_orbit)
 
-    def _show_orbit(self, asked: int, job: Future[TracedOrbit]) -> None:
-        if asked != self._asked:
+    def _show_orbit(self, job: Future[TracedOrbit]) -> None:
+        if job is not self._tracing:
             return
+        self._say_orbit("none", "")
         orbit = job.result()
         self._draw_orbit(orbit)
         self._texts["orbit_title"].text = escape(orbit.verdict)
@@ -265,7 +269,6 @@ class Page:
         def guarded() -> None:
             try:
                 work()
-                self._texts["notice"].text = ""
             except ScannerError as error:
                 self._texts["notice"].text = escape(str(error))
             except Exception as error:

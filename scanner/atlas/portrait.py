@@ -11,7 +11,7 @@ from bokeh.models import ColorBar, ColumnDataSource, LinearColorMapper, Range1d
 from bokeh.palettes import Viridis256
 
 from scanner.atlas.dress import TRACED, make_plot
-from scanner.atlas.words import lay_title, list_colours, title_of
+from scanner.atlas.words import lay_title, list_colours
 from scanner.figures.colours import GREY, VERDICT_COLOURS
 from scanner.figures.labels import VERDICTS
 from scanner.figures.request import COLOURS
@@ -22,14 +22,20 @@ COLOURINGS = dict(
     zip(COLOURS, ("verdict", "lyapunov_per_bounce", "frequency_diffusion", "rotation_number"), strict=True)
 )
 """Variable of the group ``orbits`` behind each colouring."""
+COLOUR_NAMES = {
+    "verdict": "verdict",
+    "exponent": "Lyapunov exponent per bounce",
+    "diffusion": "frequency diffusion (log10)",
+    "rotation": "rotation number",
+}
 
 SNAP = 0.01
 """A click takes a stored orbit that is this near, as a share of the plot's width or height."""
 
 
-def stored_orbits(tree: xr.DataTree, table: dict[str, int]) -> xr.Dataset:
-    """Read the stored orbits of one table, over the whole section, dimension ``orbit``."""
-    return tree[ORBITS].to_dataset().isel(table).load()
+def stored_orbits(picked: xr.DataTree) -> xr.Dataset:
+    """Read the stored orbits of the one table that is left, over the whole section, dimension ``orbit``."""
+    return picked[ORBITS].to_dataset().load()
 
 
 class Portrait:
@@ -63,7 +69,7 @@ class Portrait:
             self.figure.title.text = lay_title("no orbits")
             return ""
         values = orbits[COLOURINGS[colour]]
-        self.figure.title.text = title_of(values, "stored orbits: ")
+        self.figure.title.text = lay_title(f"stored orbits by {COLOUR_NAMES[colour]}")
         self._dots.glyph.size = float(np.clip(np.sqrt(24000 / max(values.size, 1)), 1.5, 7.0))
         colours, legend = self._by_verdict(values.values) if colour == COLOURS[0] else self._by_number(values)
         self._stored.data = _points(orbits["s0"].values, orbits["p0"].values, colours)

@@ -17,6 +17,7 @@ from bokeh.server.tornado import BokehTornado
 from tornado.httpserver import HTTPServer
 from tornado.ioloop import IOLoop
 
+from scanner.atlas import LOOPBACK
 from scanner.atlas.downloads import Download
 from scanner.atlas.orbit import warm_up
 from scanner.atlas.page import Page
@@ -37,7 +38,7 @@ def serve(path: Path, address: str, port: int, allow_code: bool, announce: Calla
 
         application = BokehTornado(
             {"/": Application(FunctionHandler(open_page))},
-            extra_websocket_origins=[f"{host}:{port}" for host in {address, "localhost", socket.gethostname()}],
+            extra_websocket_origins=[address, "localhost"] if address == LOOPBACK else ["*"],
             extra_patterns=[(r"/(slice|orbits)\.(csv|nc)", Download, {"watch": watch})],
             ico_path="none",
         )

@@ -25,6 +25,7 @@ class Snapshot:
     tree: xr.DataTree
     progress: SweepProgress
     taken: float
+    folder: int
 
     @cached_property
     def root(self) -> xr.Dataset:
@@ -56,13 +57,14 @@ class Watch:
         started = time.monotonic()
         if started > self._next_look:
             state, last = sweep_progress(self.path), self.snapshot.progress
-            if (state.finished, state.running) != (last.finished, last.running):
+            folder = self.path.stat().st_ino  # another one where the store was compacted
+            if (state.finished, state.running, folder) != (last.finished, last.running, self.snapshot.folder):
                 self.snapshot = self._take(state)
             spent = time.monotonic() - started
             self._next_look = started + max(REFRESH_SECONDS, spent / SHARE_OF_TIME)
         return self.snapshot
 
     def _take(self, state: SweepProgress) -> Snapshot:
-        snapshot = Snapshot(open_sweep(self.path), state, time.time())
+        snapshot = Snapshot(open_sweep(self.path), state, time.time(), self.path.stat().st_ino)
         snapshot.root["table_status"].load()
         return snapshot

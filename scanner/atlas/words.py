@@ -11,7 +11,7 @@ import xarray as xr
 
 from scanner.figures.colours import MISSING
 
-TITLE_LETTERS = 38
+TITLE_LETTERS = 36
 TITLE_LINES = 2
 
 _UNITS = {"length": "length", "length2": "length²", "length-1": "1/length"}
@@ -32,9 +32,9 @@ def with_units(variable: xr.DataArray) -> str:
     return plain(str(variable.name)) + _in_brackets(variable)
 
 
-def title_of(variable: xr.DataArray, before: str = "") -> str:
+def title_of(variable: xr.DataArray) -> str:
     """Title of a plot: the variable's meaning and units, laid out as `lay_title` does."""
-    return lay_title(before + name_of(variable) + _in_brackets(variable))
+    return lay_title(name_of(variable) + _in_brackets(variable))
 
 
 def lay_title(text: str) -> str:

@@ -2,16 +2,11 @@
 
 from __future__ import annotations
 
-import os
-import re
 import shutil
-import signal
-import subprocess
-import sys
-from contextlib import contextmanager
 
 import pytest
 from reader import Reader
+from serving import served
 from sweeps import fill, grid
 
 BROWSERS = ("chromium", "chromium-browser", "google-chrome")
@@ -31,23 +26,6 @@ def store(tmp_path_factory, study):
     path = tmp_path_factory.mktemp("atlas") / "small grid.zarr"
     fill(path, study)
     return path
-
-
-@contextmanager
-def served(*arguments, folder=None):
-    """Serve an atlas as a user does, at any port that is free; gives its address."""
-    command = [sys.executable, "-m", "scanner", "atlas", *map(str, arguments), "--port", "0"]
-    environment = {**os.environ, "PYTHONUNBUFFERED": "1", "PYTHONPATH": os.pathsep.join(filter(None, sys.path))}
-    pipes = {"stdout": subprocess.PIPE, "stderr": subprocess.PIPE, "text": True}
-    with subprocess.Popen(command, cwd=folder, env=environment, **pipes) as process:
-        try:
-            line = process.stdout.readline()
-            yield re.search(r"http://\S+", line)[0]
-        finally:
-            process.send_signal(signal.SIGINT)
-            _, complaints = process.communicate(timeout=30)
-    assert process.returncode == 0
-    assert complaints == ""
 
 
 @pytest.fixture(scope="session")

@@ -6,7 +6,7 @@ import time
 
 import numpy as np
 
-PATIENCE = 15_000
+PATIENCE = 60_000
 """Milliseconds: kernels may have to be compiled, and other tests run beside."""
 
 FIND = """name => {

@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 import pytest
 import xarray as xr
-from conftest import served
+from serving import served
 from sweeps import everything, fill, grid, order_for
 
 import scanner
@@ -189,7 +189,7 @@ def test_a_link_reproduces_the_view(read, address):
     exponent = "mean Lyapunov exponent of the chaotic orbits, per unit length"
     reader.page.get_by_label("Quantity").select_option(label=exponent)
     reader.page.get_by_label("Up").select_option(label="amplitude")
-    reader.page.get_by_label("Colours").select_option(label="frequency diffusion")
+    reader.page.get_by_label("Colours").select_option(label="frequency diffusion (log10)")
     reader.page.get_by_label("Bounces drawn").select_option(label="50")
     reader.page.get_by_label("Start s/L").fill("0.3")
     reader.page.get_by_label("Start s/L").press("Enter")
