@@ -99,9 +99,9 @@ def test_a_task_that_kills_its_workers_is_abandoned_and_the_others_are_not(tmp_p
 
 def test_a_worker_that_leaves_in_good_order_is_not_lost(tmp_path, monkeypatch, caplog):
     with (
-        caplog.at_level(logging.INFO),
         LocalCluster(n_workers=2, threads_per_worker=1, processes=False, dashboard_address=":0") as cluster,
         Client(cluster) as client,
+        caplog.at_level(logging.INFO, logger="scanner"),  # last, as a cluster silences all handlers that it meets
     ):
         run = Run(client, tmp_path, stand_ins.note_and_wait, monkeypatch)
         while not run.landed:
