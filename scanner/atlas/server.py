@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import errno
+import logging
 import socket
 from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor
@@ -29,6 +30,8 @@ def serve(path: Path, address: str, port: int, allow_code: bool, announce: Calla
     """Serve the page until interrupted; parameters and errors as for ``serve_atlas``."""
     watch = Watch(path)
     listening = _bind(address, port)
+    # a page that is closed in the middle of something is no news
+    logging.getLogger("bokeh.server.views.ws").setLevel(logging.ERROR)
     port = listening.getsockname()[1]
     with ThreadPoolExecutor(1, "tracer") as tracer:
         tracer.submit(warm_up)
