@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 import click
 
 from scanner.cli.options import store_argument
-from scanner.cli.terminal import align, duration, print_lines, progress_bar
+from scanner.cli.terminal import duration, print_columns, progress_bar
 
 if TYPE_CHECKING:
     from scanner.store import SweepProgress
@@ -104,7 +104,8 @@ def selfcheck() -> int:
          "ok" if check.holds else "FAILED")
         for check in checks
     ]  # fmt: skip
-    print_lines(align(pd.DataFrame(rows, columns=["check", "value", "truth", "difference", "bound", "verdict"])))
+    styles = {(row, "verdict"): "good" if check.holds else "bad" for row, check in enumerate(checks)}
+    print_columns(pd.DataFrame(rows, columns=["check", "value", "truth", "difference", "bound", "verdict"]), styles)
     failed = sum(not check.holds for check in checks)
     click.echo(f"\n{len(checks) - failed} of {len(checks)} checks hold")
     return 1 if failed else 0

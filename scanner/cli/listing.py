@@ -11,9 +11,9 @@ import pandas as pd
 import xarray as xr
 
 from scanner.analysis import study_of, summarise, swept_parameters
-from scanner.analysis.summary import count_statuses, largest_drift
+from scanner.analysis.summary import DRIFT, count_statuses, largest_drift
 from scanner.analysis.wording import first_and_last, number, write_parameters, write_summary
-from scanner.cli.terminal import align, on_terminal, print_lines
+from scanner.cli.terminal import align, on_terminal, print_columns
 
 DISPENSABLE = ("diffusion", "undecided", "drift", "tables", "Lyapunov/bounce", "regular volume")
 """Columns that make room on a narrow terminal, the first one first."""
@@ -23,15 +23,12 @@ def list_tables(root: xr.Dataset, most: int) -> None:
     """Print the summary in aligned columns, with a heading and what to make of them."""
     study = study_of(root)
     rows = summarise(root)
-    most = most if on_terminal() else 0
-    texts = write_summary(first_and_last(rows, most), swept_parameters(root))
+    shown = first_and_last(rows, most if on_terminal() else 0)
+    texts = write_summary(shown, swept_parameters(root))
     omitted = _fit(texts, shutil.get_terminal_size().columns) if on_terminal() else []
-    lines = align(texts)
-    hidden = len(rows) - len(texts)
-    if hidden:
-        lines.insert(1 + (most + 1) // 2, "...")
+    hidden = len(rows) - len(shown)
     click.echo(f"{study.title}: {study.family}, {study.orbits} orbits of {study.bounces} bounces a table\n")
-    print_lines(lines)
+    print_columns(texts, _mark(shown), (most + 1) // 2 if hidden else None)
     counts = ", ".join(f"{count} {name.replace('_', ' ')}" for name, count in count_statuses(root).items())
     click.echo(f"\n{len(rows)} tables: {counts}")
     click.echo(
@@ -53,7 +50,8 @@ def list_failures(rows: pd.DataFrame) -> None:
     texts["status"] = texts["status"].str.replace("_", " ")
     if not any(texts["reason"]):
         del texts["reason"]
-    print_lines(align(write_parameters(texts, [name for name in texts if name not in ("status", "reason")])))
+    names = [name for name in texts if name not in ("status", "reason")]
+    print_columns(write_parameters(texts, names), _mark(rows))
     unexplained = int((rows["reason"] == "").sum())
     if unexplained:
         click.echo(f"\n{unexplained} without a reason: scanner estimate STUDY says why tables are not convex")
@@ -67,6 +65,19 @@ def write_rows(rows: pd.DataFrame, form: str) -> None:
     else:
         known = rows.astype(object).where(rows.notna(), None)
         click.echo(json.dumps(known.to_dict("records"), indent=1, ensure_ascii=False))
+
+
+STATUS_STYLES = {"done": "good", "not_convex": "doubtful", "failed": "bad"}
+
+
+def _mark(rows: pd.DataFrame) -> dict[tuple[int, str], str]:
+    """Choose styles for the cells of statuses and of numbers that a reader should doubt."""
+    styles = {(row, "status"): STATUS_STYLES.get(status, "") for row, status in enumerate(rows["table_status"])}
+    if DRIFT in rows:
+        for row, (drift, error) in enumerate(zip(rows[DRIFT].abs(), rows["regular_area_fraction_stderr"], strict=True)):
+            if drift > error:
+                styles[row, "drift"] = "doubtful"
+    return styles
 
 
 def _fit(texts: pd.DataFrame, width: int) -> list[str]:

@@ -23,12 +23,13 @@ def is_given(name: str) -> bool:
     return click.get_current_context().get_parameter_source(name) is ParameterSource.COMMANDLINE
 
 
-def _split_selections(_: click.Context, __: click.Parameter, entries: tuple[str, ...]) -> dict[str, str]:
+def split_assignments(_: click.Context, option: click.Parameter, entries: tuple[str, ...]) -> dict[str, str]:
+    """Read the entries NAME=VALUE of an option that may be repeated."""
     found: dict[str, str] = {}
     for entry in entries:
         name, sign, value = (part.strip() for part in entry.partition("="))
         if not (name and sign and value):
-            raise click.BadParameter(f"{entry!r} is not NAME=VALUE, for example --select amplitude=0.05")
+            raise click.BadParameter(f"{entry!r} is not NAME=VALUE, for example {option.opts[0]} amplitude=0.05")
         if name in found:
             raise click.BadParameter(f"{name} is given twice: keep one of them")
         found[name] = value
@@ -46,7 +47,7 @@ select_option = click.option(
     "--select",
     multiple=True,
     metavar="NAME=VALUE",
-    callback=_split_selections,
+    callback=split_assignments,
     help="Hold a swept parameter at the stored value nearest to this one; may be repeated.",
 )
 average_option = click.option(

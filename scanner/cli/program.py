@@ -10,6 +10,7 @@ import click
 
 from scanner import __version__
 from scanner.cli.checking import compact, progress, selfcheck, verify
+from scanner.cli.families import families, new
 from scanner.cli.looking import atlas
 from scanner.cli.reading import export, figure, report, summary
 from scanner.cli.running import estimate, jobscript, sweep
@@ -48,11 +49,12 @@ def scanner(context: click.Context) -> None:
         click.echo(context.get_help())
 
 
+BEGINNING = (families, new)
 ASKING = (estimate, sweep, jobscript)
 LOOKING = (progress, summary, export, figure, report, atlas)
 KEEPING = (verify, compact, selfcheck)
 
-for command in (*ASKING, *LOOKING, *KEEPING):
+for command in (*BEGINNING, *ASKING, *LOOKING, *KEEPING):
     command.epilog = STATUSES
     scanner.add_command(command)
 

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+import os
 import sys
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import click
 
@@ -13,16 +14,53 @@ if TYPE_CHECKING:
     import pandas as pd
 
 
+STYLES: dict[str, dict[str, Any]] = {
+    "heading": {"bold": True},
+    "name": {"fg": "cyan"},
+    "good": {"fg": "green"},
+    "doubtful": {"fg": "yellow"},
+    "bad": {"fg": "red", "bold": True},
+}
+
+
+def paint(text: str, style: str) -> str:
+    """Give text a style for people; pipes get it without, as do terminals without colours and those who want none."""
+    plain = os.environ.get("NO_COLOR") or os.environ.get("TERM") == "dumb"
+    return text if plain or not style else click.style(text, **STYLES[style])
+
+
 def align(texts: pd.DataFrame) -> list[str]:
     """Lines of columns aligned to the right, the first line being the headings."""
-    lines: list[str] = texts.to_string(index=False).split("\n")
-    return lines
+    return [" ".join(line) for line in _pad(texts)]
 
 
-def print_lines(lines: list[str]) -> None:
-    """Print aligned columns, the headings bold on a terminal."""
-    click.echo(click.style(lines[0], bold=True))
-    click.echo("\n".join(lines[1:]))
+def print_columns(texts: pd.DataFrame, styles: Mapping[tuple[int, str], str], gap: int | None = None) -> None:
+    """Print aligned columns in colour.
+
+    Parameters
+    ----------
+    texts
+        Columns of text under their headings.
+    styles
+        Names of styles of single cells, by row and heading.
+    gap
+        Row before which others have been left out.
+    """
+    headings, *lines = _pad(texts)
+    click.echo(paint(" ".join(headings), "heading"))
+    for row, line in enumerate(lines):
+        if row == gap:
+            click.echo("...")
+        click.echo(" ".join(paint(cell, styles.get((row, name), "")) for name, cell in zip(texts, line, strict=True)))
+
+
+def _pad(texts: pd.DataFrame) -> list[list[str]]:
+    """Cells of each line, headings first, as wide as their columns."""
+    columns = [[str(name), *map(str, texts[name])] for name in texts]
+    widths = [max(map(len, column)) for column in columns]
+    return [
+        [cell.rjust(width) for cell, width in zip(line, widths, strict=True)] for line in zip(*columns, strict=True)
+    ]
 
 
 def on_terminal() -> bool:

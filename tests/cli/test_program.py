@@ -12,6 +12,8 @@ from scanner.cli import program
 from scanner.cli.program import run, scanner
 
 COMMANDS = [
+    "families",
+    "new",
     "estimate",
     "sweep",
     "jobscript",

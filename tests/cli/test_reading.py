@@ -2,12 +2,17 @@
 
 from __future__ import annotations
 
+import contextlib
 import csv
 import io
 import json
+import os
 import shutil
+import subprocess
+import sys
 from types import SimpleNamespace
 
+import click
 import numpy as np
 import pandas as pd
 import pytest
@@ -181,3 +186,28 @@ def test_report_is_one_page_with_the_reasons_of_failures(call, moody_store, tmp_
     assert text.count("data:image/svg+xml") == 3
     status, _, said = call("report", moody_store, "--to", target)
     assert (status, said.count("\n")) == (2, 1)
+
+
+def on_a_terminal(*arguments, **environment):
+    """What a command prints to a terminal of 200 columns."""
+    ours, theirs = os.openpty()
+    wanted = {**os.environ, "TERM": "xterm", "COLUMNS": "200", **environment}
+    command = [sys.executable, "-m", "scanner", *map(str, arguments)]
+    with subprocess.Popen(command, stdin=theirs, stdout=theirs, env=wanted):
+        os.close(theirs)
+        text = b""
+        with contextlib.suppress(OSError):  # Linux says so when the last writer is gone
+            while part := os.read(ours, 4096):
+                text += part
+    os.close(ours)
+    return text.decode().replace("\r\n", "\n")
+
+
+def test_colours_are_for_terminals_that_want_them(call, store):
+    plain = call("summary", store)[1]
+    assert "\x1b" not in plain
+    coloured = on_a_terminal("summary", store)
+    assert click.style("not convex", fg="yellow") in coloured
+    assert click.style("done".rjust(10), fg="green") in coloured
+    assert click.unstyle(coloured) == plain
+    assert on_a_terminal("summary", store, NO_COLOR="1") == plain
