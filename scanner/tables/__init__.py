@@ -2,6 +2,7 @@
 
 from scanner.tables.building import build_table, check_parameters
 from scanner.tables.families import FAMILIES, Family, Parameter
+from scanner.tables.symmetry import Symmetry
 from scanner.tables.table import Table
 
-__all__ = ["FAMILIES", "Family", "Parameter", "Table", "build_table", "check_parameters"]
+__all__ = ["FAMILIES", "Family", "Parameter", "Symmetry", "Table", "build_table", "check_parameters"]

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -22,6 +23,7 @@ from scanner.tables.boundary import (
     turns_from_arc,
 )
 from scanner.tables.curve import Curve, Shape, tails
+from scanner.tables.symmetry import Symmetry, find_symmetry
 
 Value = float | int | str
 
@@ -92,6 +94,12 @@ class Table:
     def mean_chord_exact(self) -> float:
         """Mean chord over the section, pi A / L (Santalo 1976)."""
         return 0.5 * TWO_PI * self.area / self.perimeter
+
+    @cached_property
+    def symmetry(self) -> Symmetry:
+        """Rotations and mirrors that map the table onto itself, found from its boundary."""
+        order, mirror = find_symmetry(self.harmonics)
+        return Symmetry(order, None if mirror is None else float(self.arc_from_turns(mirror)))
 
     def point(self, s: ArrayLike) -> tuple[FloatArray, FloatArray]:
         """Points of the boundary.
