@@ -16,6 +16,7 @@ _HOMES = {
     "curve_fate": "scanner.measure",
     "open_sweep": "scanner.store",
     "run_study": "scanner.engine",
+    "whole_section": "scanner.analysis",
 }
 
 __all__ = [
@@ -27,6 +28,7 @@ __all__ = [
     "survey_resonances",
     "survey_table",
     "trace",
+    "whole_section",
 ]
 
 __version__ = "0.1.0"

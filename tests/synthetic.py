@@ -20,6 +20,9 @@ from scanner.quantities import (
 BOUNCES = 8192
 HORIZONS = (1024, 2048, 4096, 8192)
 REPLICATES = 8
+SYMMETRY_ORDER = 2
+IMAGES = 4 * SYMMETRY_ORDER
+"""Images of each orbit, as there is a mirror line through s = 0."""
 TITLE = "Invented numbers"
 
 
@@ -73,10 +76,10 @@ def invented_sweep(
             values = np.where(convex, DONE, NOT_CONVEX)
         else:
             values = _invent_root(quantity, level, shape_of(quantity), random)
-            values = np.where(convex.reshape(shape + (1,) * extra), values, np.nan)
+            values = np.where(convex.reshape(shape + (1,) * extra), values, quantity.fill_value)
         root[quantity.name] = label(quantity, values)
 
-    starts = {"s0": random.random((*shape, orbits)), "p0": 2.0 * random.random((*shape, orbits)) - 1.0}
+    starts = {"s0": random.random((*shape, orbits)) / (2 * SYMMETRY_ORDER), "p0": random.random((*shape, orbits))}
     orbit: dict[str, xr.Variable] = {}
     chaotic = np.abs(starts["p0"]) < np.clip(depth, 0.0, 1.0)[..., None]
     island = ~chaotic & (np.abs(starts["p0"]) < 0.3)
@@ -96,6 +99,10 @@ def _invent_root(
     quantity: Quantity, level: np.ndarray, shape: tuple[int, ...], random: np.random.Generator
 ) -> np.ndarray:
     name = quantity.name
+    if name == "symmetry_order":
+        return np.full(shape, SYMMETRY_ORDER)
+    if name == "mirror_s":
+        return np.zeros(shape)
     if name.endswith("_stderr"):
         return np.full(shape, 0.0123)
     if name.endswith("_by_horizon"):

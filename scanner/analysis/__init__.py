@@ -1,4 +1,4 @@
-"""Reading a finished or half-finished sweep: picking tables, averaging, the summary, exports to other formats.
+"""Reading a finished or half-finished sweep: picking tables, averaging, summary, whole sections, other formats.
 
 Works on labelled data alone, so also on a store of last year.
 """
@@ -17,6 +17,7 @@ from scanner.analysis.sweep import (
     study_of,
     swept_parameters,
 )
+from scanner.analysis.whole_section import orbit_images, whole_section
 
 __all__ = [
     "StudyFacts",
@@ -24,11 +25,13 @@ __all__ = [
     "check_target",
     "export_sweep",
     "failures",
+    "orbit_images",
     "pick_tables",
     "replace_whole",
     "require_resonances",
     "study_of",
     "summarise",
     "swept_parameters",
+    "whole_section",
     "why_not_convex",
 ]

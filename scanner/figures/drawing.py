@@ -11,7 +11,7 @@ import xarray as xr
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
-from scanner.analysis import average_tables, pick_tables, replace_whole, study_of, swept_parameters
+from scanner.analysis import average_tables, pick_tables, replace_whole, study_of, swept_parameters, whole_section
 from scanner.analysis.sweep import describe
 from scanner.errors import ScannerError
 from scanner.figures.curves import MOST_LINES, draw_curve, draw_fractions
@@ -135,7 +135,7 @@ def _draw(kind: str, picked: xr.DataTree, root: xr.Dataset, request: Request) ->
 
 def _draw_portrait(picked: xr.DataTree, request: Request) -> Axes:
     require_one_table(picked, "portrait", request)
-    orbits = orbits_of(picked)
+    orbits = whole_section(picked)
     s, p = orbits["s0"].values[:, None], orbits["p0"].values[:, None]
     if request.bounces:
         table = rebuild_table(picked, allow_code=request.allow_code)

@@ -28,7 +28,7 @@ def require_one_table(picked: xr.DataTree, kind: str, request: Request) -> None:
 
 
 def orbits_of(picked: xr.DataTree) -> xr.Dataset:
-    """Orbits of the one table that is left, all over the section."""
+    """Orbits as they are stored, in the part of the section that was sampled."""
     return picked[ORBITS].to_dataset().load()
 
 

@@ -78,11 +78,16 @@ def _is_regular(verdict: npt.NDArray[np.int8]) -> Mask:
 
 
 def _by_p(regular: Mask, p: Floats) -> Floats:
-    """Regular fraction in each bin of p; NaN in a bin without orbits."""
-    place = np.minimum(((p + 1.0) * (P_BINS / 2)).astype(np.int64), P_BINS - 1)
-    counts = np.bincount(place, minlength=P_BINS)
-    inside = np.bincount(place[regular], minlength=P_BINS)
-    return np.array([_quotient(float(a), float(b)) for a, b in zip(inside, counts, strict=True)])
+    """Regular fraction in each bin of p; NaN in a bin without orbits.
+
+    Every orbit counts for p and for -p, where it runs backwards.
+    """
+    bins = P_BINS // 2
+    place = np.minimum((np.abs(p) * bins).astype(np.int64), bins - 1)
+    counts = np.bincount(place, minlength=bins)
+    inside = np.bincount(place[regular], minlength=bins)
+    forward = [_quotient(float(a), float(b)) for a, b in zip(inside, counts, strict=True)]
+    return np.array([*reversed(forward), *forward])
 
 
 def _by_period(librational: Mask, period: npt.NDArray[np.generic], weight: Floats, replicates: int) -> Floats:
@@ -173,4 +178,6 @@ def table_numbers(
         "mean_chord": ratio(chord, one, replicates).value,
         "mean_chord_exact": table.mean_chord_exact,
         "boundary_error": table.boundary_error,
+        "symmetry_order": table.symmetry.order,
+        "mirror_s": math.nan if table.symmetry.mirror_s is None else table.symmetry.mirror_s,
     }

@@ -11,7 +11,7 @@ import numpy.typing as npt
 from scanner.bounce.resonances import resonance_numbers
 from scanner.errors import TableError
 from scanner.measure.residues import Fate, convergents, judge_residues
-from scanner.quantities import CURVE_FATES, CURVES, REGULAR_ROTATIONAL, UNDECIDED
+from scanner.quantities import CURVE_FATES, CURVES, DIRECTIONS, REGULAR_ROTATIONAL, UNDECIDED
 from scanner.tables import Table
 
 Floats = npt.NDArray[np.float64]
@@ -34,23 +34,24 @@ def last_curves(p: Floats, rotation: Floats, verdict: Codes) -> dict[str, float 
     Returns
     -------
     dict
-        ``rotational_band_p`` and ``_error``, shape (2,): ``find_band`` for p > 0 and for p < 0.
+        ``rotational_band_p`` and ``_error``, shape (2,): ``find_band`` for p > 0 and for p < 0, which are alike, as
+        every orbit also runs backwards.
         ``rotation_range_min`` and ``_max``: of all rotational curves, rotation numbers beyond 1/2 taken from 1; NaN
         if there are none.
     """
-    bands = np.array([find_band(np.abs(p[side]), verdict[side]) for side in (p > 0.0, p < 0.0)])
+    band, error = find_band(np.abs(p), verdict)
     rotational = verdict == REGULAR_ROTATIONAL
     folded = np.minimum(rotation, 1.0 - rotation)[rotational]
     return {
-        "rotational_band_p": bands[:, 0],
-        "rotational_band_p_error": bands[:, 1],
+        "rotational_band_p": np.full(len(DIRECTIONS), band),
+        "rotational_band_p_error": np.full(len(DIRECTIONS), error),
         "rotation_range_min": float(folded.min()) if folded.size else math.nan,
         "rotation_range_max": float(folded.max()) if folded.size else math.nan,
     }
 
 
 def find_band(height: Floats, verdict: Codes) -> tuple[float, float]:
-    """Smallest |p| beyond which all sampled orbits of one direction are on rotational curves.
+    """Smallest |p| beyond which all sampled orbits are on rotational curves.
 
     The band cannot begin below the highest orbit that is chaotic or in an island, and begins at the next rotational
     one above that, if the undecided orbits beyond turn out rotational too.  If none of them does, it begins at the
@@ -59,7 +60,7 @@ def find_band(height: Floats, verdict: Codes) -> tuple[float, float]:
     Parameters
     ----------
     height, verdict
-        Shape (orbits,): |p| and verdict of the orbits of that direction.
+        Shape (orbits,): |p| and verdict of the orbits.
 
     Returns
     -------

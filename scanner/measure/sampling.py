@@ -1,4 +1,8 @@
-"""Initial conditions spread uniformly over the section ds dp.
+"""Initial conditions spread uniformly over the section ds dp, or rather over the part that its images make whole.
+
+An orbit run backwards goes through (s, -p), and a symmetry of the table takes orbits to orbits: points that are images
+of each other need not be followed twice.  All images of the part have the same area, so that a fraction of the part
+is that of the section.
 
 Point i of a table depends on the seed, the table itself and the replicate, never on where or when it is computed.
 """
@@ -17,7 +21,7 @@ from scanner.tables import Table
 Floats = npt.NDArray[np.float64]
 
 BITS = 30
-"""Binary digits of a point; half a unit in the last place keeps p away from -1."""
+"""Binary digits of a point; half a unit in the last place keeps p away from 0."""
 
 
 def _generator(table: Table, seed: int, replicate: int) -> np.random.Generator:
@@ -29,12 +33,12 @@ def _generator(table: Table, seed: int, replicate: int) -> np.random.Generator:
 def section_points(
     table: Table, seed: int, replicates: int, orbits: int, start: int = 0, stop: int | None = None
 ) -> tuple[Floats, Floats]:
-    """Scrambled Sobol points of the section, replicate after replicate.
+    """Scrambled Sobol points of the fundamental part of the section, replicate after replicate.
 
     Parameters
     ----------
     table
-        The table; only its identity matters.
+        The table; its identity and its symmetry matter.
     seed, replicates, orbits
         ``orbits`` points in all, as many for each of the ``replicates`` independent scramblings (Owen's, after
         Matousek, J. Complexity 14:527, 1998, as scipy implements it).
@@ -44,15 +48,14 @@ def section_points(
     Returns
     -------
     s, p
-        Arrays of shape (stop - start,): arc length over the perimeter in [0, 1), and p in (-1, 1).
+        Arrays of shape (stop - start,): arc length over the perimeter in [0, 1), from ``table.symmetry.start`` over
+        ``table.symmetry.width``, and p in (0, 1).
 
     Raises
     ------
     StudyError
         If ``orbits`` is not a multiple of ``replicates``.
     """
-    from scipy.stats import qmc
-
     if replicates < 1 or orbits < replicates or orbits % replicates:
         raise StudyError(
             f"orbits = {orbits} cannot be shared equally by replicates = {replicates}: "
@@ -62,10 +65,23 @@ def section_points(
     stop = orbits if stop is None else stop
     pieces = []
     for replicate in range(start // share, math.ceil(stop / share)):
-        sampler = qmc.Sobol(d=2, scramble=True, bits=BITS, rng=_generator(table, seed, replicate))
-        # A whole power of two keeps the points balanced; what is beyond the replicate's share is dropped.
-        points = sampler.random_base2(math.ceil(math.log2(share)))
         first = replicate * share
-        pieces.append(points[max(start - first, 0) : min(stop - first, share)])
-    points = np.concatenate(pieces) + 0.5 ** (BITS + 1)
-    return np.ascontiguousarray(points[:, 0]), 2.0 * points[:, 1] - 1.0
+        pieces.append(_unit_points(table, seed, replicate, max(start - first, 0), min(stop - first, share)))
+    return _spread(table, np.concatenate(pieces))
+
+
+def _unit_points(table: Table, seed: int, replicate: int, start: int, stop: int) -> Floats:
+    """Points ``start`` to ``stop`` of one replicate's sequence in the unit square, shape (stop - start, 2)."""
+    from scipy.stats import qmc
+
+    sampler = qmc.Sobol(d=2, scramble=True, bits=BITS, rng=_generator(table, seed, replicate))
+    # A whole power of two keeps the points balanced; what is beyond is dropped.
+    points: Floats = sampler.random_base2(math.ceil(math.log2(stop)))[start:stop]
+    return points + 0.5 ** (BITS + 1)
+
+
+def _spread(table: Table, points: Floats) -> tuple[Floats, Floats]:
+    """Points of the fundamental part of the section from points of the unit square."""
+    symmetry = table.symmetry
+    s = (symmetry.start + symmetry.width * points[:, 0]) % 1.0
+    return s, np.ascontiguousarray(points[:, 1])

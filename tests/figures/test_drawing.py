@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 from legibility import assert_legible, notes_of
 from matplotlib.contour import ContourSet
-from synthetic import invented_sweep
+from synthetic import IMAGES, invented_sweep
 
 from scanner.errors import ScannerError
 from scanner.figures import Request, write_figure
@@ -124,10 +124,13 @@ def test_portrait_shows_the_table_nearest_to_the_selected():
     place = {"amplitude": 5, "harmonic": 1}
     chaotic = tree["orbits/verdict"].isel(place).values == 3
     points = np.vstack([entry.get_offsets() for entry in figure.axes[0].collections])
-    assert len(points) == 256
-    np.testing.assert_array_equal(
-        figure.axes[0].collections[-1].get_offsets()[:, 1], tree["orbits/p0"].isel(place).values[chaotic]
-    )
+    assert len(points) == IMAGES * 256
+    # Images fill the section evenly: as many in each quarter of s, and of either sign of p.
+    assert np.histogram(points[:, 0], 4, (0.0, 1.0))[0].tolist() == [IMAGES * 64] * 4
+    assert (points[:, 1] > 0.0).mean() == 0.5
+    drawn = np.sort(figure.axes[0].collections[-1].get_offsets()[:, 1])
+    p = tree["orbits/p0"].isel(place).values[chaotic]
+    np.testing.assert_array_equal(drawn, np.sort(np.tile(np.concatenate([p, -p]), IMAGES // 2)))
     assert (figure.axes[0].get_xlim(), figure.axes[0].get_ylim()) == ((0.0, 1.0), (-1.0, 1.0))
 
 
@@ -156,8 +159,8 @@ def test_portrait_is_coloured_by_a_number(colour, variable):
     tree["orbits"][variable].values[7] = np.nan
     figure, _ = draw_figure(tree, Request(colour=colour))
     unknown, known = figure.axes[0].collections
-    assert len(unknown.get_offsets()) == 1
-    np.testing.assert_array_equal(known.get_array(), np.delete(tree["orbits"][variable].values, 7))
+    assert len(unknown.get_offsets()) == IMAGES
+    np.testing.assert_array_equal(known.get_array(), np.tile(np.delete(tree["orbits"][variable].values, 7), IMAGES))
 
 
 CASES = [

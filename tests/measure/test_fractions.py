@@ -90,7 +90,11 @@ def test_numbers_of_a_table_by_hand() -> None:
     assert found["diffusion_median"] == np.median([-1, -4, -5, -7])
     assert found["mean_chord"] == pytest.approx(1.5)
     assert found["bounces_used"] == 8 * 512
-    assert np.nansum(found["regular_area_fraction_by_p"]) == 3.0
+    # Bins of |p|, a tenth each; 0.99 is shared by the first and the last orbit, 0.707 by a chaotic and a regular one.
+    by_p = found["regular_area_fraction_by_p"]
+    np.testing.assert_array_equal(by_p[10:], [np.nan, 0.0, np.nan, np.nan, 0.5, np.nan, np.nan, 0.5, np.nan, 0.5])
+    np.testing.assert_array_equal(by_p, by_p[::-1])
+    assert (found["symmetry_order"], found["mirror_s"]) == (2, 0.0)
     assert set(found) == {entry.name for entry in in_group("root")} - {"table_status"}
 
 

@@ -18,10 +18,9 @@ def reach(p, rotation, codes):
 
 
 def test_the_band_begins_above_the_last_orbit_of_another_kind():
-    found = reach([0.1, 0.5, 0.7, 0.9, -0.2, -0.6, -0.8], [0.45, 0.3, 0.2, 0.1, 0.6, 0.7, 0.8], "rcrrrlc")
-    # The highest orbit against the boundary is chaotic: there is no band.
-    assert found["rotational_band_p"].tolist() == [0.7, 1.0]
-    assert found["rotational_band_p_error"] == pytest.approx([0.2, 0.2], abs=1e-15)
+    found = reach([0.1, 0.5, 0.7, 0.9, -0.2, -0.6, -0.8], [0.45, 0.3, 0.2, 0.1, 0.6, 0.7, 0.8], "rcrrrlr")
+    assert found["rotational_band_p"].tolist() == [0.7, 0.7]
+    assert found["rotational_band_p_error"] == pytest.approx([0.1, 0.1], abs=1e-15)
     assert found["rotation_range_min"] == 0.1
     assert found["rotation_range_max"] == 0.45
 
@@ -62,9 +61,16 @@ def test_the_error_covers_whatever_the_undecided_orbits_turn_out_to_be(truth):
             assert band - error - 1e-15 <= answer <= band + error + 1e-15
 
 
+def test_orbits_count_for_both_directions():
+    """The highest orbit of one direction is chaotic: there is no band, as it also runs backwards."""
+    found = reach([0.7, -0.8], [0.2, 0.8], "rc")
+    assert found["rotational_band_p"].tolist() == [1.0, 1.0]
+    assert found["rotational_band_p_error"] == pytest.approx([0.2, 0.2], abs=1e-15)
+
+
 def test_all_curves_and_none():
     everything = reach([0.1, -0.3], [0.4, 0.7], "rr")
-    assert everything["rotational_band_p"].tolist() == everything["rotational_band_p_error"].tolist() == [0.1, 0.3]
+    assert everything["rotational_band_p"].tolist() == everything["rotational_band_p_error"].tolist() == [0.1, 0.1]
     assert everything["rotation_range_min"] == pytest.approx(0.3, abs=1e-15)
     nothing = reach([0.1, -0.3], [0.4, 0.7], "lc")
     assert nothing["rotational_band_p"].tolist() == [1.0, 1.0]
