@@ -15,7 +15,7 @@ import numpy.typing as npt
 from scanner.bounce.resonances import resonance_numbers
 from scanner.errors import ScannerError
 from scanner.indicators import orbit_numbers
-from scanner.measure import curve_numbers, section_points, table_numbers
+from scanner.measure import curve_numbers, follow_rounds, section_points, table_numbers
 from scanner.quantities import DONE, FAILED, NOT_CONVEX, ORBITS, RESONANCES, ROOT, in_group
 from scanner.study import Plan, Task
 from scanner.tables import Table, build_table
@@ -51,6 +51,13 @@ class CellResult:
         for name, values in numbers.items():
             self.groups[group][name][place] = values
 
+    def fill_shares(self, place: Index, numbers: Mapping[str, Array], replicates: int) -> None:
+        """Put orbits of one table at the beginning of the room that each replicate has for its own."""
+        for name, values in numbers.items():
+            room = self.groups[ORBITS][name][place]
+            shares = values.reshape(replicates, -1, *values.shape[1:])
+            room.reshape(replicates, -1, *room.shape[1:])[:, : shares.shape[1]] = shares
+
     def set_status(self, place: Index, status: int) -> None:
         """Settle a table, if the task settles tables at all."""
         if ROOT in self.groups:
@@ -68,16 +75,21 @@ def compute(plan: Plan, task: Task) -> CellResult:
     """Follow orbits on every table of a task of kind "survey" or "orbits"; the former also sums them up."""
     asked = plan.study.orbits
 
+    def survey(result: CellResult, place: Index, table: Table) -> None:
+        rounds = (asked.per_table, asked.bounces, asked.target_error, asked.most_per_table)
+        numbers = follow_rounds(table, plan.study.seed, asked.replicates, *rounds)
+        result.fill_shares(place, numbers, asked.replicates)
+        result.fill(ROOT, place, table_numbers(table, numbers, asked.replicates))
+        result.bounces += int(numbers["bounces_used"].sum())
+
     def follow(result: CellResult, place: Index, table: Table) -> None:
         share = (task.orbits.start, task.orbits.stop)
         s, p = section_points(table, plan.study.seed, asked.replicates, asked.per_table, *share)
         numbers = orbit_numbers(table, s, p, asked.bounces)
         result.fill(ORBITS, place, numbers)
-        if task.kind == "survey":
-            result.fill(ROOT, place, table_numbers(table, numbers, asked.replicates))
         result.bounces += int(numbers["bounces_used"].sum())
 
-    return _settle_tables(plan, task, follow, {})
+    return _settle_tables(plan, task, survey if task.kind == "survey" else follow, {})
 
 
 def reduce(plan: Plan, task: Task, orbits: Mapping[str, Array], failures: Mapping[Index, str]) -> CellResult:

@@ -146,6 +146,7 @@ _QUANTITIES = (
     _root("mean_chord", "mean chord over the sampled orbits", units="length"),
     _root("mean_chord_exact", "mean chord over the section, pi A / L", units="length", reference=_SANTALO),
     _root("boundary_error", "distance of the stored boundary from the family's curve, over its size"),
+    Quantity("orbits_used", ROOT, (), "int32", "1", "orbits that were followed"),
     Quantity("symmetry_order", ROOT, (), "int16", "1", "n of the rotations by 1/n turn that map the table onto itself"),
     _root("mirror_s", "arc length of a point on a mirror line as a fraction of the perimeter, NaN without mirrors"),
     _orbit("s0", "arc length at the start as a fraction of the perimeter"),

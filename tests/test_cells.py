@@ -6,7 +6,7 @@ from scanner import cells
 from scanner.cells import compute, reduce
 from scanner.measure import section_points, table_numbers
 from scanner.quantities import DONE, FAILED, NOT_CONVEX, ORBITS, PENDING, ROOT, in_group
-from scanner.study import Plan, parse_study
+from scanner.study import Plan, make_plan, parse_study
 from scanner.tables import build_table
 
 SHAPES = """
@@ -59,6 +59,37 @@ def test_a_table_that_is_not_convex_is_recorded_and_holds_nothing(surveyed):
 
 def test_bounces_count_what_was_computed(surveyed):
     assert [result.bounces for result in surveyed] == [2 * 128 * 128, 128 * 128]
+
+
+@pytest.fixture(scope="module")
+def in_rounds():
+    """The same tables with few orbits at first, and room for 512."""
+    orbits = "4\ntarget_error = 0.03\nmost_per_table = 512"
+    return make_plan(grid(amplitude="{ values = [0.05, 0.15] }", per_table="32", bounces="128", replicates=orbits))
+
+
+def test_tables_get_as_many_rounds_as_their_error_takes(in_rounds):
+    whole = Plan(in_rounds.study, (2, 2), 512)
+    result = compute(whole, whole.tasks[0])
+    used = result.groups[ROOT]["orbits_used"]
+    stderr = result.groups[ROOT]["regular_area_fraction_stderr"]
+    verdict = result.groups[ORBITS]["verdict"].reshape(2, 2, 4, 128)
+    assert used[1, 1] == 0  # not convex
+    convex = [(0, 0), (0, 1), (1, 0)]
+    assert len({used[place] for place in convex}) > 1
+    for place in convex:
+        assert used[place] == 512 or stderr[place] <= 0.03
+        share = used[place] // 4
+        assert (verdict[place][:, :share] != PENDING).all()
+        assert (verdict[place][:, share:] == PENDING).all()
+    assert result.bounces == used.sum() * 128
+    unused = verdict.reshape(2, 2, 512) == PENDING
+    np.testing.assert_array_equal(np.isnan(result.groups[ORBITS]["s0"]), unused)
+    for task in Plan(in_rounds.study, (1, 1), 512).tasks:
+        place = tuple(part.start for part in task.box)
+        for group, arrays in compute(in_rounds, task).groups.items():
+            for name, values in arrays.items():
+                np.testing.assert_array_equal(values[0, 0], result.groups[group][name][place])
 
 
 IN_ISLANDS = {"frequency_diffusion", "island_winding", "island_centre_s", "island_centre_p"}
@@ -146,6 +177,6 @@ def test_running_out_of_memory_is_not_the_table_s_fault(plan, monkeypatch):
     def fail(*_):
         raise MemoryError
 
-    monkeypatch.setattr(cells, "orbit_numbers", fail)
+    monkeypatch.setattr(cells, "follow_rounds", fail)
     with pytest.raises(MemoryError):
         compute(plan, plan.tasks[0])

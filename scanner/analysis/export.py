@@ -15,7 +15,7 @@ from scanner.analysis.files import check_target, replace_whole
 from scanner.analysis.rows import blocks, stored_steps, to_rows
 from scanner.analysis.sweep import require_resonances, swept_parameters
 from scanner.errors import ScannerError
-from scanner.quantities import DONE, ORBITS, RESONANCES, ROOT, TABLE_STATUS, in_group
+from scanner.quantities import DONE, ORBITS, PENDING, RESONANCES, ROOT, TABLE_STATUS, VERDICTS, in_group
 
 SUFFIXES = (".nc", ".csv", ".parquet")
 ROW_DIMS = {ORBITS: "orbit", RESONANCES: "resonance"}
@@ -36,7 +36,8 @@ def export_sweep(tree: xr.DataTree, target: Path, *, rows: str = ROOT, force: bo
         codes as words.
     rows
         Group whose rows are written: ``root`` for one row a table, with the fate of its curves if there are
-        resonances; ``orbits`` and ``resonances`` for one row each of the tables that are done.
+        resonances; ``orbits`` and ``resonances`` for one row each of the tables that are done, and
+        of the orbits that were followed.
     force
         Replace a file that exists.
 
@@ -75,7 +76,10 @@ def _frames(tree: xr.DataTree, group: str) -> Iterator[pd.DataFrame]:
     left_out = ["table_status", *([dim] if named_by else [])]
     for block in blocks(rows, [*names, dim]):
         frame = to_rows(block, [*names, dim])
-        yield frame[frame["table_status"] == TABLE_STATUS[DONE]].drop(columns=left_out)
+        wanted = frame["table_status"] == TABLE_STATUS[DONE]
+        if group == ORBITS:
+            wanted &= frame["verdict"] != VERDICTS[PENDING]
+        yield frame[wanted].drop(columns=left_out)
 
 
 def _of_whole_tables(tree: xr.DataTree) -> dict[str, xr.DataArray]:

@@ -15,13 +15,16 @@ from scanner.quantities import DONE, RESONANCES
 
 @dataclass(frozen=True)
 class StudyFacts:
-    """The parts of a study that a reader of its results wants to see; empty or None where the store does not say."""
+    """The parts of a study that a reader of its results wants to see; empty or None where the store does not say.
+
+    ``orbits`` is what a table gets, "256 to 4096" where that depends on the table.
+    """
 
     title: str = ""
     family: str = ""
     fixed: Mapping[str, float | str] = field(default_factory=dict)
     bounces: int | None = None
-    orbits: int | None = None
+    orbits: str = ""
 
 
 def study_of(tree: xr.DataTree | xr.Dataset) -> StudyFacts:
@@ -36,7 +39,7 @@ def study_of(tree: xr.DataTree | xr.Dataset) -> StudyFacts:
         family=str(table.get("family", "")),
         fixed={name: value for name, value in table.items() if name != "family" and not isinstance(value, dict)},
         bounces=orbits.get("bounces"),
-        orbits=orbits.get("per_table"),
+        orbits=" to ".join(str(orbits[key]) for key in ("per_table", "most_per_table") if key in orbits),
     )
 
 

@@ -34,15 +34,17 @@ def estimate(study: Path, store: Path | None, allow_code: bool) -> None:
         ("tables", f"{found.tables:,}"),
         ("not convex", f"{found.not_convex:,}"),
         ("cannot be built", f"{found.failed:,}"),
-        ("orbits", f"{found.orbits:,}"),
-        ("bounces", f"{found.bounces:,}"),
+        ("orbits", _span(found.orbits, found.most_orbits, ",")),
+        ("bounces", _span(found.bounces, found.most_bounces, ",")),
         ("tasks", f"{found.tasks:,}"),
         ("store, at most", size(found.store_bytes)),
         ("one bounce", f"{found.nanoseconds_per_bounce:.0f} ns" if found.nanoseconds_per_bounce else "-"),
-        ("core-hours", f"{found.core_hours:,.3g}"),
-        ("that is", f"{duration(3600 * found.core_hours)} on one core like this one"),
+        ("core-hours", _span(found.core_hours, found.most_core_hours, ",.3g")),
+        ("that is", f"{_spell(found)} on one core like this one"),
     ):
         click.echo(f"{name:>16}  {value}")
+    if found.most_orbits > found.orbits:
+        click.echo("first round, and what it is at most if no table meets target_error before its last one")
     _list_faults(found)
 
 
@@ -124,6 +126,16 @@ def _estimate(asked: Study, store: Path | None) -> Estimate:
         return estimate_cost(plan, store, report=lambda checked: show(checked, plan.table_count))
 
 
+def _span(least: float, most: float, form: str) -> str:
+    """Write a number, or the range it is in where that depends on how many rounds the tables take."""
+    return f"{least:{form}}" if least == most else f"{least:{form}} to {most:{form}}"
+
+
+def _spell(found: Estimate) -> str:
+    times = [duration(3600 * hours) for hours in (found.core_hours, found.most_core_hours)]
+    return " to ".join(dict.fromkeys(times))
+
+
 def _list_faults(found: Estimate) -> None:
     """Name the first tables on which there will be no orbits, and why."""
     from scanner.analysis.sweep import describe
@@ -141,7 +153,8 @@ def _confirm(asked: Study, store: Path, workers: int | None) -> None:
     runner = asked.resources.runner
     click.echo(
         f"{found.tables:,} tables ({found.not_convex:,} not convex), {found.tasks:,} tasks, "
-        f"{found.core_hours:,.3g} core-hours, store at most {size(found.store_bytes)}; "
+        f"{_span(found.core_hours, found.most_core_hours, ',.3g')} core-hours, "
+        f"store at most {size(found.store_bytes)}; "
         f"{workers or asked.resources.workers or 'no number of'} workers from {runner}",
         err=True,
     )

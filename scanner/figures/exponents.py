@@ -18,6 +18,7 @@ from scanner.figures.one_table import orbits_of, require_one_table
 from scanner.figures.request import Request
 from scanner.figures.scale import scale_of
 from scanner.figures.style import add_legend, new_axes
+from scanner.quantities import PENDING
 from scanner.quantities import VERDICTS as VERDICT_NAMES
 
 BINS = 60
@@ -52,6 +53,7 @@ def _bins(exponents: np.ndarray) -> np.ndarray:
 
 def _draw_one(picked: xr.DataTree, width: str) -> Axes:
     orbits = orbits_of(picked)
+    orbits = orbits.isel(orbit=np.flatnonzero(orbits["verdict"].values != PENDING))
     exponents, verdict = orbits[EXPONENT].values, orbits["verdict"].values
     edges = _bins(exponents)
     axes = new_axes(width, 0.95)
@@ -78,10 +80,13 @@ def _draw_one(picked: xr.DataTree, width: str) -> Axes:
 
 
 def _draw_along(picked: xr.DataTree, along: str, width: str) -> Axes:
-    exponents = orbits_of(picked)[EXPONENT].transpose(along, "orbit")
+    orbits = orbits_of(picked)
+    exponents = orbits[EXPONENT].transpose(along, "orbit")
     edges = _bins(exponents.values)
     scale = scale_of(exponents, along)
-    shares = np.array([np.histogram(row, edges)[0] / len(row) for row in exponents.values])
+    followed = (orbits["verdict"].transpose(along, "orbit").values != PENDING).sum(axis=1)
+    counts = np.array([np.histogram(row, edges)[0] for row in exponents.values])
+    shares = counts / np.maximum(followed, 1)[:, None]
     axes = new_axes(width, 0.95)
     mesh = axes.pcolormesh(
         scale.edges,

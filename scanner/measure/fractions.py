@@ -77,6 +77,20 @@ def _is_regular(verdict: npt.NDArray[np.int8]) -> Mask:
     return found
 
 
+def regular_error(verdict: npt.NDArray[np.int8], replicates: int) -> float:
+    """Standard error of the regular fraction of the section; NaN with a single replicate.
+
+    Where all replicates agree, as when no orbit of all differs, their spread of 0 is not the error: they might as well
+    have disagreed by one orbit, which gives 1/orbits, the smallest spread there is.
+    """
+    regular = _fraction(_is_regular(verdict), np.ones(verdict.size), replicates)
+    return _at_least_one_orbit(regular.stderr, verdict.size)
+
+
+def _at_least_one_orbit(stderr: float, orbits: int) -> float:
+    return stderr if math.isnan(stderr) else max(stderr, 1.0 / orbits)
+
+
 def _by_p(regular: Mask, p: Floats) -> Floats:
     """Regular fraction in each bin of p; NaN in a bin without orbits.
 
@@ -147,10 +161,10 @@ def table_numbers(
     seen = [_is_regular(by_horizon[:, number]) for number in range(by_horizon.shape[1])]
     return {
         "regular_area_fraction": area.value,
-        "regular_area_fraction_stderr": area.stderr,
+        "regular_area_fraction_stderr": regular_error(verdict, replicates),
         "regular_area_fraction_replicates": area.replicates,
         "regular_volume_fraction": volume.value,
-        "regular_volume_fraction_stderr": volume.stderr,
+        "regular_volume_fraction_stderr": _at_least_one_orbit(volume.stderr, verdict.size),
         "regular_volume_fraction_replicates": volume.replicates,
         "regular_area_fraction_by_horizon": np.array([_fraction(mask, one, replicates).value for mask in seen]),
         "regular_volume_fraction_by_horizon": np.array([_fraction(mask, chord, replicates).value for mask in seen]),
@@ -178,6 +192,7 @@ def table_numbers(
         "mean_chord": ratio(chord, one, replicates).value,
         "mean_chord_exact": table.mean_chord_exact,
         "boundary_error": table.boundary_error,
+        "orbits_used": verdict.size,
         "symmetry_order": table.symmetry.order,
         "mirror_s": math.nan if table.symmetry.mirror_s is None else table.symmetry.mirror_s,
     }

@@ -56,18 +56,35 @@ def section_points(
     StudyError
         If ``orbits`` is not a multiple of ``replicates``.
     """
-    if replicates < 1 or orbits < replicates or orbits % replicates:
-        raise StudyError(
-            f"orbits = {orbits} cannot be shared equally by replicates = {replicates}: "
-            f"use a positive multiple of {max(replicates, 1)}"
-        )
-    share = orbits // replicates
+    share = check_shares(replicates, orbits)
     stop = orbits if stop is None else stop
     pieces = []
     for replicate in range(start // share, math.ceil(stop / share)):
         first = replicate * share
         pieces.append(_unit_points(table, seed, replicate, max(start - first, 0), min(stop - first, share)))
     return _spread(table, np.concatenate(pieces))
+
+
+def replicate_points(table: Table, seed: int, replicates: int, start: int, stop: int) -> tuple[Floats, Floats]:
+    """Points ``start`` to ``stop`` of every replicate's sequence, replicate after replicate; see `section_points`."""
+    pieces = [_unit_points(table, seed, replicate, start, stop) for replicate in range(replicates)]
+    return _spread(table, np.concatenate(pieces))
+
+
+def check_shares(replicates: int, orbits: int) -> int:
+    """Orbits of each replicate.
+
+    Raises
+    ------
+    StudyError
+        If they cannot be shared equally.
+    """
+    if replicates < 1 or orbits < replicates or orbits % replicates:
+        raise StudyError(
+            f"orbits = {orbits} cannot be shared equally by replicates = {replicates}: "
+            f"use a positive multiple of {max(replicates, 1)}"
+        )
+    return orbits // replicates
 
 
 def _unit_points(table: Table, seed: int, replicate: int, start: int, stop: int) -> Floats:

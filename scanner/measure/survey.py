@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from scanner.indicators import horizons, orbit_numbers
+from scanner.indicators import horizons
 from scanner.indicators.labelled import label
 from scanner.measure.fractions import table_numbers
-from scanner.measure.sampling import section_points
+from scanner.measure.rounds import check_rounds, follow_rounds
 from scanner.quantities import DIRECTIONS, DONE, P_BINS, PERIODS, ROOT
 
 if TYPE_CHECKING:
@@ -28,7 +28,13 @@ def root_coordinates(bounces: int, replicates: int) -> dict[str, list[int] | lis
 
 
 def survey_table(
-    table: Table, orbits: int = 1024, bounces: int = 8192, replicates: int = 8, seed: int = 1
+    table: Table,
+    orbits: int = 1024,
+    bounces: int = 8192,
+    replicates: int = 8,
+    seed: int = 1,
+    target_error: float | None = None,
+    most_orbits: int | None = None,
 ) -> xr.Dataset:
     """How much of one table is regular, and how chaotic the rest.
 
@@ -44,6 +50,9 @@ def survey_table(
         Independent scramblings, at least 2 for error bars.
     seed
         Seed of the scramblings.
+    target_error, most_orbits
+        Standard error of ``regular_area_fraction`` to go on for: after ``orbits`` twice as many in all, and so on up to
+        ``most_orbits``, a multiple of ``replicates``.
 
     Returns
     -------
@@ -55,10 +64,13 @@ def survey_table(
     TableError, StudyError
         If the table is not convex or the numbers do not fit together.
     """
-    s, p = section_points(table, seed, replicates, orbits)
-    numbers = table_numbers(table, orbit_numbers(table, s, p, bounces), replicates)
+    check_rounds(replicates, orbits, target_error, most_orbits)
+    followed = follow_rounds(table, seed, replicates, orbits, bounces, target_error, most_orbits)
+    numbers = table_numbers(table, followed, replicates)
     survey = label(ROOT, {**numbers, "table_status": DONE}, root_coordinates(bounces, replicates))
     survey.attrs.update(
         family=table.family, **table.parameters, orbits=orbits, bounces=bounces, replicates=replicates, seed=seed
     )
+    if target_error is not None:
+        survey.attrs.update(target_error=target_error, most_orbits=most_orbits)
     return survey

@@ -9,6 +9,7 @@ import numpy.typing as npt
 
 from scanner.errors import ScannerError
 from scanner.measure.fractions import ratio
+from scanner.quantities import PENDING
 
 Floats = npt.NDArray[np.float64]
 
@@ -21,7 +22,8 @@ def verdict_fractions(
     Parameters
     ----------
     verdicts
-        Codes of the register, shape (orbits,) or (orbits, H), replicate after replicate.
+        Codes of the register, shape (orbits,) or (orbits, H), replicate after replicate.  Orbits that were not
+        followed, of code 0, do not count.
     codes
         Those that count, for example ``{REGULAR_ROTATIONAL, REGULAR_LIBRATIONAL}`` of `scanner.quantities`.
     replicates
@@ -46,8 +48,11 @@ def verdict_fractions(
     chords = np.ones(orbits) if weight is None else np.asarray(weight, dtype=np.float64)
     if chords.shape != (orbits,):
         raise ScannerError(f"weights of shape {chords.shape} must be one for each of {orbits} orbits")
-    counted = np.isin(given, list(codes))
-    columns = counted.reshape(orbits, -1).T
-    each = [ratio(np.where(column, chords, 0.0), chords, replicates).replicates for column in columns]
+    columns = given.reshape(orbits, -1).T
+    weights = [np.where(column == PENDING, 0.0, chords) for column in columns]
+    each = [
+        ratio(np.where(np.isin(column, list(codes)), own, 0.0), own, replicates).replicates
+        for column, own in zip(columns, weights, strict=True)
+    ]
     found: Floats = np.stack(each, axis=1).reshape(replicates, *given.shape[1:])
     return found

@@ -161,7 +161,7 @@ def _template(path: Path, plan: Plan) -> Iterator[Path]:
                 study=study.text,
                 tasks=len(plan.tasks),
                 tables=plan.table_count,
-                orbits=study.orbits.per_table,
+                orbits=study.orbits.room,
                 bounces=study.orbits.bounces,
                 template=seals,
                 root=(folder / ROOT_METADATA).read_text(),

@@ -40,7 +40,7 @@ class Estimate:
     faults
         The first few of these two, each with its reason.
     orbits, bounces
-        On all convex tables together.
+        On all convex tables together; of the first round only, where tables may get more.
     store_bytes
         Size of the store on disk, at most.
     tasks
@@ -48,7 +48,9 @@ class Estimate:
     nanoseconds_per_bounce
         Of one core of this machine, from the calibration; None if no table is convex.
     core_hours
-        What all bounces and tables will take on cores like this machine's.
+        What these bounces and all tables will take on cores like this machine's.
+    most_orbits, most_bounces, most_core_hours
+        The same if every table gets all the orbits it can.
     """
 
     tables: int
@@ -61,6 +63,9 @@ class Estimate:
     tasks: int
     nanoseconds_per_bounce: float | None
     core_hours: float
+    most_orbits: int
+    most_bounces: int
+    most_core_hours: float
 
 
 def estimate_cost(
@@ -96,8 +101,10 @@ def estimate_cost(
     samples = _pick_tables(plan, convex) if len(convex) else []
     pace = _calibrate(plan, samples, seconds) if samples else None
     resonances = len(convex) * _time_resonances(plan, samples)
-    orbits = len(convex) * plan.study.orbits.per_table
-    bounces = orbits * plan.study.orbits.bounces
+    fixed = building + resonances
+    asked = plan.study.orbits
+    orbits, most_orbits = len(convex) * asked.per_table, len(convex) * asked.room
+    bounces, most_bounces = orbits * asked.bounces, most_orbits * asked.bounces
     return Estimate(
         tables=plan.table_count,
         not_convex=counts["not_convex"],
@@ -108,7 +115,10 @@ def estimate_cost(
         store_bytes=store_bytes(plan),
         tasks=len(plan.tasks),
         nanoseconds_per_bounce=pace,
-        core_hours=(building + resonances + bounces * (pace or 0.0) * 1e-9) / 3600,
+        core_hours=(fixed + bounces * (pace or 0.0) * 1e-9) / 3600,
+        most_orbits=most_orbits,
+        most_bounces=most_bounces,
+        most_core_hours=(fixed + most_bounces * (pace or 0.0) * 1e-9) / 3600,
     )
 
 

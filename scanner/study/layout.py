@@ -7,9 +7,10 @@ same to the byte.  It takes a nominal cost of a bounce for that; the true one ma
 from __future__ import annotations
 
 from dataclasses import dataclass
-from math import prod
+from math import isqrt, prod
 
 from scanner.bounce.lanes import LANES
+from scanner.measure import ORBITS_AT_ONCE
 
 NOMINAL_BOUNCE = 80
 """Nanoseconds."""
@@ -26,8 +27,8 @@ STRETCHED_TASK = 60_000_000_000
 FEW_TASKS = 64
 """Tasks wanted of a small study, so that several workers finish together."""
 MOST_TASKS = 100_000
-ORBITS_AT_ONCE = 2**16
-"""Orbits of one table in one task: an orbit takes some 600 bytes while it is computed."""
+LONGEST_ROUNDS = 3_600_000_000_000
+"""Nanoseconds a task may last in which every table takes all the rounds it can get."""
 ORBITS_HELD = 2**18
 """Orbits of all tables of one task: an orbit takes some 70 bytes once it is computed."""
 
@@ -48,7 +49,9 @@ class Layout:
     orbit_chunk: int
 
 
-def lay_out(shape: tuple[int, ...], per_table: int, bounces: int, resonances: int = 0) -> Layout:
+def lay_out(
+    shape: tuple[int, ...], per_table: int, bounces: int, resonances: int = 0, most_per_table: int | None = None
+) -> Layout:
     """Choose the size of the tasks of a grid of tables.
 
     Parameters
@@ -59,16 +62,26 @@ def lay_out(shape: tuple[int, ...], per_table: int, bounces: int, resonances: in
         Orbits of a table and bounces of an orbit.
     resonances
         Rotations of a table whose periodic orbits are wanted.
+    most_per_table
+        Orbits of a table at most, if they come in rounds.  Such a table is not split, as it is known only after each
+        round whether there will be another.
     """
-    orbits_cost = per_table * bounces * NOMINAL_BOUNCE
+    # Of rounds that double, none is likelier to be the last than another: the middle one is taken.
+    orbits_cost = isqrt(per_table * (most_per_table or per_table)) * bounces * NOMINAL_BOUNCE
     table_cost = orbits_cost + NOMINAL_TABLE + resonances * NOMINAL_RESONANCE
     target = _choose_target(prod(shape) * table_cost)
+    if most_per_table is not None:
+        return Layout(_fill_box(shape, _fit(target, table_cost, most_per_table)), most_per_table)
     parts = max((2 * orbits_cost + target) // (2 * target), ceil_divide(per_table, ORBITS_AT_ONCE))
     chunk = LANES * ceil_divide(ceil_divide(per_table, parts), LANES) if parts > 1 else per_table
     if chunk < per_table:
         return Layout((1,) * len(shape), chunk)
-    budget = max(1, min(target // table_cost, ORBITS_HELD // per_table))
-    return Layout(_fill_box(shape, budget), per_table)
+    return Layout(_fill_box(shape, _fit(target, table_cost, per_table)), per_table)
+
+
+def _fit(target: int, table_cost: int, orbits: int) -> int:
+    """Count the whole tables that a task has time and room for."""
+    return max(1, min(target // table_cost, ORBITS_HELD // orbits))
 
 
 def _choose_target(total: int) -> int:

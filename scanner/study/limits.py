@@ -10,7 +10,8 @@ import numpy as np
 
 from scanner.errors import StudyError
 from scanner.quantities import ORBITS, Quantity, in_group
-from scanner.study.layout import ceil_divide
+from scanner.study.layout import LONGEST_ROUNDS, NOMINAL_BOUNCE, ceil_divide
+from scanner.study.model import Orbits
 from scanner.study.plan import Plan
 
 WORKER_BYTES = 500_000_000
@@ -64,25 +65,40 @@ def check_limits(plan: Plan, target: Path | None = None, remaining: float = 1.0)
     StudyError
         One line.
     """
-    per_table = plan.study.orbits.per_table
+    orbits = plan.study.orbits
+    key = "per_table" if orbits.most_per_table is None else "most_per_table"
     held = task_bytes(plan)
     if held > MOST_TASK_BYTES:
-        replicates = plan.study.orbits.replicates
         growth = sum(_item_bytes(entry) * prod(plan.sizes[dim] for dim in entry.dims[1:]) for entry in in_group(ORBITS))
-        fitting = (per_table - ceil_divide(held - MOST_TASK_BYTES, growth)) // replicates * replicates
+        fitting = orbits.room - ceil_divide(held - MOST_TASK_BYTES, growth)
         raise StudyError(
-            f"orbits.per_table = {per_table} makes one task hold {megabytes(held)}, must be at most "
+            f"orbits.{key} = {orbits.room} makes one task hold {megabytes(held)}, must be at most "
             f"{megabytes(MOST_TASK_BYTES)} so that a worker stays below {megabytes(WORKER_BYTES)}; "
-            f"lower per_table to {fitting} or less"
+            f"lower {key} to {fitting // orbits.replicates * orbits.replicates} or less"
         )
+    if orbits.most_per_table is not None:
+        _check_longest(prod(plan.box), orbits.most_per_table, orbits)
     if target is not None:
         needed, free = ceil(store_bytes(plan) * remaining), free_bytes(target)
         if needed > free:
             raise StudyError(
-                f"orbits.per_table = {per_table} on {plan.table_count} tables needs {megabytes(needed)} for the store, "
+                f"orbits.{key} = {orbits.room} on {plan.table_count} tables needs {megabytes(needed)} for the store, "
                 f"must be at most the {megabytes(free)} free at {target}; "
-                "lower per_table or a count, or choose another disk"
+                f"lower {key} or a count, or choose another disk"
             )
+
+
+def _check_longest(tables: int, most: int, orbits: Orbits) -> None:
+    """Refuse rounds that could keep a worker at one task for too long."""
+    orbit_cost = tables * orbits.bounces * NOMINAL_BOUNCE
+    if most * orbit_cost > LONGEST_ROUNDS:
+        fitting = LONGEST_ROUNDS // orbit_cost // orbits.replicates * orbits.replicates
+        remedy = f"lower it to {fitting} or less" if fitting >= orbits.per_table else "remove it and target_error"
+        raise StudyError(
+            f"orbits.most_per_table = {most} of {orbits.bounces} bounces could keep a worker at one task for "
+            f"{most * orbit_cost / 3.6e12:.3g} hours, must be at most {LONGEST_ROUNDS / 3.6e12:g}, as tables with a "
+            f"target_error are not split; {remedy}, or lower bounces"
+        )
 
 
 def free_bytes(target: Path) -> int:

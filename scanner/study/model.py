@@ -19,6 +19,7 @@ LARGEST_SEED = 2**63 - 1
 MOST_ORBITS = 2**30
 MOST_BOUNCES = 10_000_000
 MOST_REPLICATES = 1024
+SMALLEST_ERROR, LARGEST_ERROR = 1e-6, 0.5
 LARGEST_PERIOD = 32
 MOST_WORKERS = 100_000
 SMALLEST_MEMORY = 500_000_000
@@ -69,17 +70,53 @@ class Orbits(Section):
     replicates: int = Field(
         8, ge=2, le=MOST_REPLICATES, description=f"a whole number from 2 to {MOST_REPLICATES}", examples=[8]
     )
+    target_error: float | None = Field(
+        None,
+        ge=SMALLEST_ERROR,
+        le=LARGEST_ERROR,
+        description=f"a number from {SMALLEST_ERROR} to {LARGEST_ERROR}",
+        examples=[0.002],
+    )
+    most_per_table: int | None = Field(
+        None, ge=2, le=MOST_ORBITS, description="a whole number from 2 to 2^30", examples=[16384]
+    )
 
     @model_validator(mode="after")
-    def _check_division(self) -> Orbits:
-        share, rest = divmod(self.per_table, self.replicates)
+    def _check_together(self) -> Orbits:
+        self._check_division("per_table", self.per_table)
+        if self.most_per_table is None:
+            if self.target_error is not None:
+                raise ValueError(
+                    f"target_error = {shown(self.target_error)} needs a bound on the orbits of a table; "
+                    f"add for instance most_per_table = {16 * self.per_table}"
+                )
+            return self
+        if self.target_error is None:
+            raise ValueError(
+                f"most_per_table = {self.most_per_table} does nothing without target_error; "
+                "add for instance target_error = 0.002, or remove it"
+            )
+        self._check_division("most_per_table", self.most_per_table)
+        if self.most_per_table < self.per_table:
+            raise ValueError(
+                f"most_per_table = {self.most_per_table} must be at least per_table = {self.per_table}, "
+                "which is the first round; raise it"
+            )
+        return self
+
+    def _check_division(self, key: str, orbits: int) -> None:
+        share, rest = divmod(orbits, self.replicates)
         if rest:
             fitting = [count * self.replicates for count in (share, share + 1) if count > 0]
             raise ValueError(
-                f"per_table = {self.per_table} must be a multiple of replicates = {self.replicates}; "
-                f"write per_table = {' or '.join(map(str, fitting))}"
+                f"{key} = {orbits} must be a multiple of replicates = {self.replicates}; "
+                f"write {key} = {' or '.join(map(str, fitting))}"
             )
-        return self
+
+    @property
+    def room(self) -> int:
+        """Orbits of a table that there is room for: the most it can get."""
+        return self.most_per_table or self.per_table
 
 
 class Resonances(Section):
@@ -226,7 +263,8 @@ class Study:
     swept
         Values of every swept parameter, increasing; in the order written, which is that of the dimensions.
     orbits
-        ``per_table``, ``bounces`` and ``replicates``.
+        ``per_table``, ``bounces`` and ``replicates``; with ``target_error`` tables get more orbits than ``per_table``,
+        up to ``most_per_table``, until it is met.
     resources
         Where it runs.
     text
@@ -271,7 +309,7 @@ class Study:
             "family": self.family,
             "fixed": {**self.fixed, **self.sources},
             "swept": [[name, list(values)] for name, values in self.swept.items()],
-            "orbits": self.orbits.model_dump(),
+            "orbits": self.orbits.model_dump(exclude_none=True),
             **({"resonances": self.resonances.model_dump()} if self.resonances else {}),
         }
         return hashlib.sha256(json.dumps(deciding, sort_keys=True, allow_nan=False).encode()).hexdigest()

@@ -173,7 +173,7 @@ class Plan:
         """Size of every dimension in the store."""
         orbits = self.study.orbits
         inner = {
-            "orbit": orbits.per_table,
+            "orbit": orbits.room,
             "replicate": orbits.replicates,
             "p_bin": P_BINS,
             "direction": len(DIRECTIONS),
@@ -187,7 +187,7 @@ class Plan:
     @cached_property
     def tasks(self) -> Sequence[Task]:
         """All tasks, each made when it is asked for."""
-        return TaskList(self.shape, self.box, self.study.orbits.per_table, self.orbit_chunk, bool(self.rotations))
+        return TaskList(self.shape, self.box, self.study.orbits.room, self.orbit_chunk, bool(self.rotations))
 
     def array_dims(self, quantity: Quantity) -> tuple[str, ...]:
         """Dimensions of the array of a quantity."""
@@ -217,5 +217,6 @@ class Plan:
 def make_plan(study: Study) -> Plan:
     """Cut a study into tasks."""
     shape = tuple(len(values) for values in study.swept.values())
-    layout = lay_out(shape, study.orbits.per_table, study.orbits.bounces, len(study.rotations))
+    orbits = study.orbits
+    layout = lay_out(shape, orbits.per_table, orbits.bounces, len(study.rotations), orbits.most_per_table)
     return Plan(study, layout.box, layout.orbit_chunk)

@@ -114,6 +114,15 @@ def test_rows_of_orbits_are_those_of_the_tables_that_are_done(tmp_path, suffix):
     np.testing.assert_array_equal(one["verdict"], meanings[tree["orbits/verdict"].values[1, 0]])
 
 
+def test_orbits_that_were_not_followed_are_no_rows(tmp_path):
+    tree = invented_sweep({"amplitude": [0.0, 0.05]}, orbits=ORBITS, convex_below=9.0)
+    tree["orbits/verdict"].values[1, 5:] = 0
+    export_sweep(tree, tmp_path / "orbits.csv", rows="orbits")
+    rows = (tmp_path / "orbits.csv").read_text().splitlines()[1:]
+    assert len(rows) == ORBITS + 5
+    assert not any("pending" in row for row in rows)
+
+
 @pytest.mark.parametrize("rows", ["root", "orbits"])
 def test_columns_come_in_the_order_of_the_register_however_a_disk_lists_them(tmp_path, rows):
     tree = invented_sweep(SWEPT, orbits=ORBITS)

@@ -20,7 +20,10 @@ def test_parameters_come_in_the_order_of_the_study():
 
 def test_study_is_read_from_the_attributes():
     study = study_of(invented_sweep(SWEPT, orbits=32, title='A "quoted" \\ Größe'))
-    assert (study.title, study.bounces, study.orbits) == ('A "quoted" \\ Größe', BOUNCES, 32)
+    assert (study.title, study.bounces, study.orbits) == ('A "quoted" \\ Größe', BOUNCES, "32")
+    tree = invented_sweep(SWEPT, orbits=32)
+    tree.attrs["study"] = tree.attrs["study"].replace("per_table = 32", "per_table = 32\nmost_per_table = 512")
+    assert study_of(tree).orbits == "32 to 512"
 
 
 def test_study_that_cannot_be_read_is_empty():

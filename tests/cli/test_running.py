@@ -45,7 +45,7 @@ def test_a_queue_is_not_filled_without_a_word(call, monkeypatch, study, tmp_path
     def cheap(asked, store):
         from scanner.study.estimate import Estimate
 
-        return Estimate(3, 1, 0, (), 128, 32768, 4096, 3, 50.0, 12.0)
+        return Estimate(3, 1, 0, (), 128, 32768, 4096, 3, 50.0, 12.0, 128, 32768, 12.0)
 
     monkeypatch.setattr(running, "_estimate", cheap)
     queued = tmp_path / "queued.toml"

@@ -59,6 +59,22 @@ def test_a_client_of_the_caller_is_used_and_left_alone(client, computed_here, tm
     assert results(tmp_path / "grid.zarr") == computed_here
 
 
+def test_tables_in_rounds_are_the_same_in_any_order_and_carried_on(client, tmp_path):
+    orbits = "4\ntarget_error = 0.02\nmost_per_table = 1024"
+    study = grid(per_table="64", bounces="256", replicates=orbits)
+    plan = fill(tmp_path / "here.zarr", study)
+    fill(tmp_path / "grid.zarr", study, [len(plan.tasks) - 1])
+    report = scanner.run_study(study, tmp_path / "grid.zarr", client=client, progress=False)
+    assert report.exit_status == 0
+    assert results(tmp_path / "grid.zarr") == results(tmp_path / "here.zarr")
+    assert sweep_progress(tmp_path / "grid.zarr").orbits_settled == 10 * 1024
+    with scanner.open_sweep(tmp_path / "grid.zarr") as tree:
+        used = tree["orbits_used"].values
+        assert set(used.ravel()) > {0}
+        assert report.bounces <= used.sum() * 256
+        assert ((tree["orbits/verdict"] != 0).sum("orbit").values == used).all()
+
+
 def test_a_split_table_is_summed_up_after_its_orbits(client, tmp_path):
     study = grid(amplitude="0.05", harmonic="2", per_table="4096", bounces="4096")
     report = scanner.run_study(study, tmp_path / "one.zarr", client=client, progress=False)

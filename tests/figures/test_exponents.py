@@ -35,6 +35,18 @@ def test_every_column_of_the_map_is_the_histogram_of_a_table():
     assert len(axes.patches) == 1
 
 
+def test_orbits_that_were_not_followed_are_no_part_of_the_section():
+    tree = invented_sweep(ONE, orbits=256, convex_below=9.0)
+    for name, none in (("verdict", 0), ("lyapunov_per_bounce", np.nan)):
+        tree["orbits"][name].values[2, 100:] = none
+    one = draw_figure(tree, Request(kind="exponents", select={"amplitude": 0.05}))[0].axes[0]
+    outlines = [patch.get_data() for patch in one.patches if isinstance(patch, StepPatch) and not patch.get_fill()]
+    assert sum(data.values.sum() for data in outlines) == pytest.approx(1.0)
+    axes = draw_figure(tree, Request(kind="exponents"))[0].axes[0]
+    columns = np.ma.filled(axes.collections[0].get_array(), 0.0)
+    np.testing.assert_allclose(columns.sum(axis=0), 1.0, rtol=1e-12)
+
+
 @pytest.mark.parametrize(
     ("swept", "said"),
     [

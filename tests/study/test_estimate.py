@@ -66,6 +66,17 @@ def test_a_single_table_can_be_estimated():
     assert (estimate.tables, estimate.orbits, estimate.tasks) == (1, 64, 1)
 
 
+def test_a_study_in_rounds_costs_from_the_first_to_the_last():
+    rounds = TEXT.replace("per_table = 64", "per_table = 64\ntarget_error = 0.01\nmost_per_table = 1024")
+    estimate = estimate_cost(make_plan(parse_study(rounds)), seconds=0.05)
+    assert (estimate.orbits, estimate.most_orbits) == (24 * 64, 24 * 1024)
+    assert (estimate.bounces, estimate.most_bounces) == (24 * 64 * 256, 24 * 1024 * 256)
+    more = (estimate.most_bounces - estimate.bounces) * estimate.nanoseconds_per_bounce * 1e-9 / 3600
+    assert estimate.most_core_hours - estimate.core_hours == pytest.approx(more, rel=1e-9)
+    fixed = estimate_cost(make_plan(parse_study(TEXT)), seconds=0.05)
+    assert (fixed.most_orbits, fixed.most_bounces) == (fixed.orbits, fixed.bounces)
+
+
 def test_a_study_too_large_is_refused_before_its_tables_are_built():
     text = TEXT.replace("per_table = 64", "per_table = 4194304")
     seen: list[int] = []

@@ -98,6 +98,22 @@ def test_known_layouts(shape, per_table, bounces, box, chunk):
     assert (layout.box, layout.orbit_chunk) == (box, chunk)
 
 
+@settings(deadline=None, max_examples=100)
+@given(big_shapes, st.integers(1, 2**12), st.integers(0, 10), st.integers(64, 10**6))
+def test_tables_that_come_in_rounds_are_never_split(shape, pairs, doublings, bounces):
+    first, most = 2 * pairs, 2 * pairs * 2**doublings
+    layout = lay_out(shape, first, bounces, most_per_table=most)
+    assert layout.orbit_chunk == most
+    tables = prod(layout.box)
+    assert tables == 1 or tables * most <= ORBITS_HELD
+    # The middle round of the doublings is what a task is made for; all first rounds together take less.
+    assert tables == 1 or tables * first * bounces * NOMINAL_BOUNCE <= 3 * LONGEST_TASK
+    # With room for one round only, boxes are those of a study without a target, where that does not split tables.
+    fixed = lay_out(shape, first, bounces)
+    if fixed.orbit_chunk == first:
+        assert lay_out(shape, first, bounces, most_per_table=first) == fixed
+
+
 def test_small_studies_still_make_many_tasks_of_half_a_second():
     plan = make_plan(study_of((32, 40), 256, 2048))
     nominal = 256 * 2048 * NOMINAL_BOUNCE + NOMINAL_TABLE

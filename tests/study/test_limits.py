@@ -64,6 +64,33 @@ def test_too_many_orbits_for_memory():
     assert task_bytes(smaller) > 0.99 * MOST_TASK_BYTES
 
 
+def rounds_of(per_table: int, most: int, bounces: int):
+    text = TEXT.replace("COUNT", "2").replace("PER_TABLE", str(per_table)).replace("BOUNCES", str(bounces))
+    return make_plan(parse_study(text + f"target_error = 0.001\nmost_per_table = {most}\n"))
+
+
+def test_too_much_room_for_memory():
+    with pytest.raises(
+        StudyError, match=r"^orbits\.most_per_table = 4194304 .* lower most_per_table to (\d+)"
+    ) as caught:
+        check_limits(rounds_of(64, 2**22, 64))
+    fitting = int(str(caught.value).split("lower most_per_table to ")[1].split()[0])
+    check_limits(rounds_of(64, fitting, 64))
+
+
+def test_rounds_that_could_take_too_long():
+    """80 ns a bounce: 45 000 orbits of a million bounces take an hour."""
+    check_limits(rounds_of(64, 44992, 10**6))
+    message = (
+        r"^orbits\.most_per_table = 90000 of 1000000 bounces could keep a worker at one task for 2 hours, must be at "
+        r"most 1, .* lower it to 44992 or less, or lower bounces$"
+    )
+    with pytest.raises(StudyError, match=message):
+        check_limits(rounds_of(64, 90000, 10**6))
+    with pytest.raises(StudyError, match=r"remove it and target_error, or lower bounces$"):
+        check_limits(rounds_of(64000, 90000, 10**6))
+
+
 def test_too_little_space_on_the_disk(monkeypatch, tmp_path):
     plan = plan_of(100, 1024, 8192)
     needed = store_bytes(plan)

@@ -58,6 +58,7 @@ def test_what_decides_no_result_leaves_the_fingerprint(change):
         ("per_table = 128", "per_table = 256"),
         ("bounces = 1024", "bounces = 1025"),
         ("replicates = 4", "replicates = 2"),
+        ("replicates = 4", "replicates = 4\ntarget_error = 0.01\nmost_per_table = 1024"),
         (
             "amplitude = { start = 0.0, stop = 0.1, count = 3 }\nharmonic = { values = [2, 3] }",
             "harmonic = { values = [2, 3] }\namplitude = { start = 0.0, stop = 0.1, count = 3 }",
@@ -66,6 +67,14 @@ def test_what_decides_no_result_leaves_the_fingerprint(change):
 )
 def test_what_decides_a_result_changes_the_fingerprint(change):
     assert fingerprint(*change) != fingerprint()
+
+
+@pytest.mark.parametrize(
+    "change", [("target_error = 0.01", "target_error = 0.02"), ("most_per_table = 1024", "most_per_table = 2048")]
+)
+def test_the_target_and_its_bound_decide_results(change):
+    rounds = TEXT.replace("replicates = 4", "replicates = 4\ntarget_error = 0.01\nmost_per_table = 1024")
+    assert parse_study(rounds.replace(*change)).fingerprint != parse_study(rounds).fingerprint
 
 
 def test_a_study_and_its_plan_travel_to_workers():

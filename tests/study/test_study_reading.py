@@ -146,6 +146,31 @@ BAD = [
     ("bounces = 8192", "bounces = 10000001", r"orbits\.bounces = 10000001 must be .* lower it to 10000000 or less"),
     ("replicates = 8", "replicates = 1", r"orbits\.replicates = 1 must be .* raise it to 2 or more"),
     ("replicates = 8", "replicates = 7", r"per_table = 1024 must be a multiple of replicates = 7; .* 1022 or 1029"),
+    (
+        "replicates = 8",
+        "target_error = 0.0\nmost_per_table = 2048",
+        r"orbits\.target_error = 0\.0 must be .* raise it to",
+    ),
+    (
+        "replicates = 8",
+        "target_error = 0.002",
+        r"target_error = 0\.002 needs a bound .* add .* most_per_table = 16384$",
+    ),
+    (
+        "replicates = 8",
+        "most_per_table = 2048",
+        r"most_per_table = 2048 does nothing without target_error; add .* remove",
+    ),
+    (
+        "replicates = 8",
+        "target_error = 0.002\nmost_per_table = 512",
+        r"orbits\.most_per_table = 512 must be at least per_table = 1024, which is the first round; raise it",
+    ),
+    (
+        "replicates = 8",
+        "target_error = 0.002\nmost_per_table = 2050",
+        r"orbits\.most_per_table = 2050 must be a multiple of replicates = 8; write most_per_table = 2048 or 2056",
+    ),
     ("per_table = 1024", "per_table = 4", r"orbits\.per_table = 4 must be a multiple of replicates = 8; .* 8$"),
     ("per_table = 1024", "per_table = 0", r"orbits\.per_table = 0 must be .* raise it to 2 or more"),
     ("workers = 2", "workers = 0", r"resources\.workers = 0 must be .* raise it to 1 or more"),
