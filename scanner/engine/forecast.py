@@ -27,10 +27,12 @@ def remembered_core_hours(store: Path) -> float | None:
 def expected_core_hours(plan: Plan, store: Path) -> float | None:
     """Core-hours that were expected when a store was begun; asked for the first time, they are estimated.
 
-    None where that would take long: a host without compiled kernels, a large grid, a function of the user's own.
+    None where that would take long, as on a host without compiled kernels, for a large grid or a function of the user's
+    own, and where tables take as many rounds of orbits as their errors need.
     """
     known = remembered_core_hours(store)
-    quick = ":" not in plan.study.family and plan.table_count <= MOST_TABLES
+    orbits = plan.study.orbits
+    quick = ":" not in plan.study.family and plan.table_count <= MOST_TABLES and orbits.target_error is None
     if known is not None or not (quick and kernels_are_warm(resonances=bool(plan.rotations))):
         return known
     try:

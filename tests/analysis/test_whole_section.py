@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+import xarray as xr
 from synthetic import IMAGES, invented_sweep
 
 import scanner
@@ -90,3 +91,10 @@ def test_the_section_of_one_table_of_a_sweep():
     assert set(whole["s0"].values[:16]) == set(tree["orbits/s0"].values[1])
     with pytest.raises(ScannerError, match="select a value of amplitude first"):
         scanner.whole_section(tree)
+
+
+def test_a_sweep_that_sampled_the_whole_section_stays_as_it_is():
+    tree = invented_sweep({}, orbits=16)
+    root = tree.to_dataset().drop_vars(["symmetry_order", "mirror_s"])
+    earlier = xr.DataTree.from_dict({"/": root, "/orbits": tree["orbits"].to_dataset(inherit=False)})
+    assert scanner.whole_section(earlier)["s0"].equals(tree["orbits/s0"])
