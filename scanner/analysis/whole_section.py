@@ -37,6 +37,8 @@ def whole_section(tree: xr.DataTree) -> xr.Dataset:
     names = swept_parameters(tree)
     if names:
         raise ScannerError(f"a section is that of one table: select a value of {', '.join(names)} first")
+    if "symmetry_order" not in tree:  # of a version that sampled all of the section
+        return tree[ORBITS].to_dataset()
     return orbit_images(tree[ORBITS].to_dataset(), int(tree["symmetry_order"].item()), float(tree["mirror_s"].item()))
 
 

@@ -10,12 +10,12 @@ from bokeh.events import Tap
 from bokeh.models import ColorBar, ColumnDataSource, LinearColorMapper, Range1d
 from bokeh.palettes import Viridis256
 
+from scanner.analysis import whole_section
 from scanner.atlas.dress import TRACED, make_plot
 from scanner.atlas.words import lay_title, list_colours
 from scanner.figures.colours import GREY, VERDICT_COLOURS
 from scanner.figures.labels import VERDICTS
 from scanner.figures.request import COLOURS
-from scanner.quantities import ORBITS
 from scanner.quantities import VERDICTS as VERDICT_NAMES
 
 COLOURINGS = dict(
@@ -34,8 +34,8 @@ SNAP = 0.01
 
 
 def stored_orbits(picked: xr.DataTree) -> xr.Dataset:
-    """Read the stored orbits of the one table that is left, over the whole section, dimension ``orbit``."""
-    return picked[ORBITS].to_dataset().load()
+    """Read the stored orbits of the one table that is left, and their images all over the section."""
+    return whole_section(picked)
 
 
 class Portrait:
