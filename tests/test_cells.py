@@ -82,7 +82,11 @@ def test_tables_get_as_many_rounds_as_their_error_takes(in_rounds):
         share = used[place] // 4
         assert (verdict[place][:, :share] != PENDING).all()
         assert (verdict[place][:, share:] == PENDING).all()
-    assert result.bounces == used.sum() * 128
+    assert (
+        result.bounces
+        == result.groups[ORBITS]["bounces_used"].sum()
+        == result.groups[ROOT]["bounces_used"][[0, 0, 1], [0, 1, 0]].sum()
+    )
     unused = verdict.reshape(2, 2, 512) == PENDING
     np.testing.assert_array_equal(np.isnan(result.groups[ORBITS]["s0"]), unused)
     for task in Plan(in_rounds.study, (1, 1), 512).tasks:
