@@ -1,4 +1,4 @@
-# %%
+# %% [markdown]
 """What the thresholds of the verdicts rest on: ellipses, all regular, and mixed tables followed longer.
 
 For ellipses it prints the tails of what the thresholds are laid on: the growth of a tangent vector beyond ln(bounces),
@@ -9,6 +9,7 @@ that are clear are left early, and what that saves.
     python scripts/studies/calibrate_verdicts.py --orbits 1024
 """
 
+# %%
 from __future__ import annotations
 
 import math
@@ -121,4 +122,4 @@ def main(arguments: Sequence[str] | None = None) -> None:
 
 # %%
 if __name__ == "__main__":
-    answer(main)
+    answer(main, example=["--orbits", "256", "--bounces", "2048", "--reference", "16384"])

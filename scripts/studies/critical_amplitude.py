@@ -1,4 +1,4 @@
-# %%
+# %% [markdown]
 """The amplitude at which a quantity crosses a level, and how well it is known.
 
 By default where half of the energy shell has turned chaotic.  The interval is a bootstrap over the replicates of each
@@ -8,6 +8,7 @@ smoother line would move the value.
     python scripts/studies/critical_amplitude.py first_sweep.zarr --level 0.5
 """
 
+# %%
 from __future__ import annotations
 
 from collections.abc import Sequence
@@ -97,4 +98,4 @@ def main(arguments: Sequence[str] | None = None) -> None:
 
 # %%
 if __name__ == "__main__":
-    answer(main)
+    answer(main, example=["../../out/first_sweep.zarr"])

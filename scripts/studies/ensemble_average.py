@@ -1,4 +1,4 @@
-# %%
+# %% [markdown]
 """A quantity on average over an ensemble of tables, and how much its members differ.
 
 The scatter over the members is told apart into what the ensemble does (``between``, with an interval of 95 %) and what
@@ -8,6 +8,7 @@ the error of the mean, the light one the scatter between members.
     python scripts/studies/ensemble_average.py random_ensemble.zarr --to rough.pdf
 """
 
+# %%
 from __future__ import annotations
 
 from collections.abc import Sequence
@@ -82,4 +83,4 @@ def main(arguments: Sequence[str] | None = None) -> None:
 
 # %%
 if __name__ == "__main__":
-    answer(main)
+    answer(main, example=["../../out/random_ensemble.zarr"])

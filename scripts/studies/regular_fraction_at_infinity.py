@@ -1,4 +1,4 @@
-# %%
+# %% [markdown]
 """The fraction that is still regular after infinitely many bounces.
 
 Verdicts after an eighth, a quarter, a half and all of the bounces show how chaotic orbits that stick to islands are
@@ -9,6 +9,7 @@ first, while orbits are still undecided.
     python scripts/studies/regular_fraction_at_infinity.py first_sweep.zarr --select harmonic=2
 """
 
+# %%
 from __future__ import annotations
 
 from collections.abc import Sequence
@@ -62,4 +63,4 @@ def main(arguments: Sequence[str] | None = None) -> None:
 
 # %%
 if __name__ == "__main__":
-    answer(main)
+    answer(main, example=["../../out/first_sweep.zarr", "--select", "harmonic=2"])

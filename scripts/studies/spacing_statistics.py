@@ -1,4 +1,4 @@
-# %%
+# %% [markdown]
 """The regular part of the energy shell as a spectrum sees it and as the orbits do.
 
 The regular part rho_1 is fitted to unfolded level spacings and set against ``regular_volume_fraction`` of each table:
@@ -9,6 +9,7 @@ comparison takes.  With ``--to`` the distribution of one table's spacings is dra
     python scripts/studies/spacing_statistics.py first_sweep.zarr --select harmonic=2 --count 2000
 """
 
+# %%
 from __future__ import annotations
 
 from collections.abc import Sequence
@@ -105,4 +106,4 @@ def main(arguments: Sequence[str] | None = None) -> None:
 
 # %%
 if __name__ == "__main__":
-    answer(main)
+    answer(main, example=["../../out/first_sweep.zarr", "--select", "harmonic=2"])

@@ -28,8 +28,25 @@ class OneLineParser(argparse.ArgumentParser):
         self.exit(2, f"{self.prog}: {message}; see {self.prog} --help\n")
 
 
-def answer(main: Callable[[Sequence[str] | None], None], arguments: Sequence[str] | None = None) -> None:
-    """Run a study; an error meant for the user's eyes becomes one line on standard error and exit status 2."""
+def answer(
+    main: Callable[[Sequence[str] | None], None],
+    arguments: Sequence[str] | None = None,
+    *,
+    example: Sequence[str] | None = None,
+) -> None:
+    """Run a study; an error meant for the user's eyes becomes one line on standard error and exit status 2.
+
+    Parameters
+    ----------
+    main
+        The study.
+    arguments
+        What to run it on, by default what stands on the command line.
+    example
+        What to run it on in a notebook, whose command line is that of the kernel.
+    """
+    if arguments is None and "ipykernel" in sys.modules:
+        arguments = example
     try:
         main(arguments)
     except ScannerError as error:
