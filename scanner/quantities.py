@@ -27,6 +27,21 @@ ORBITS = "orbits"
 RESONANCES = "resonances"
 
 
+COORDINATES = {
+    "replicate": "independent scrambling of the initial conditions",
+    "horizon": "bounces after which the verdict is given",
+    "p_bin": "centre of the bin of p",
+    "period": "period q of the island",
+    "direction": "along the boundary, p > 0, or against it",
+    "orbit": "number of the orbit",
+    "bounce": "number of the bounce, 0 the start",
+    "rotation": "rounds p of the orbits with rotation p/q",
+    "resonance_period": "bounces q of the orbits with rotation p/q",
+    "curve": "rotation number of the curve",
+}
+"""What the values along dimensions mean; those of swept parameters come from the family."""
+
+
 def rotations_up_to(period_max: int) -> list[tuple[int, int]]:
     """All rotations p/q in lowest terms, 0 < p/q <= 1/2 and q up to ``period_max``, as pairs (p, q) by q, then p.
 

@@ -28,6 +28,7 @@ from scanner.bounce.orbits import bounce_block, start_block
 from scanner.compiled import kernel
 from scanner.elementary import angle_turns
 from scanner.errors import TableError
+from scanner.quantities import COORDINATES
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -158,5 +159,8 @@ def trace(table: Table, s: npt.ArrayLike, p: npt.ArrayLike, bounces: int) -> xr.
                 },
             ),
         },
-        coords={"bounce": np.arange(bounces + 1), "orbit": np.arange(s.size)},
+        coords={
+            name: (name, np.arange(size), {"long_name": COORDINATES[name], "units": "1"})
+            for name, size in (("bounce", bounces + 1), ("orbit", s.size))
+        },
     )

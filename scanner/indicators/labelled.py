@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 import numpy.typing as npt
 
-from scanner.quantities import Quantity, in_group
+from scanner.quantities import COORDINATES, Quantity, in_group
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -35,4 +35,8 @@ def label(group: str, values: Mapping[str, npt.ArrayLike], coords: Mapping[str, 
         return entry.dims, np.asarray(values[entry.name], dtype=entry.dtype), attributes
 
     found = {entry.name: variable(entry) for entry in in_group(group) if entry.name in values}
-    return xr.Dataset(found, coords=dict(coords))
+    labelled = xr.Dataset(found, coords=dict(coords))
+    for name, coordinate in labelled.coords.items():
+        units = {"units": "1"} if coordinate.dtype.kind in "if" else {}
+        coordinate.attrs = {"long_name": COORDINATES[str(name)], **units}
+    return labelled

@@ -24,7 +24,7 @@ from zarr.codecs import ZstdCodec
 
 from scanner import __version__
 from scanner.errors import StoreError
-from scanner.quantities import CURVES, DIRECTIONS, ORBITS, P_BINS, PERIODS, RESONANCES, ROOT
+from scanner.quantities import COORDINATES, CURVES, DIRECTIONS, ORBITS, P_BINS, PERIODS, RESONANCES, ROOT
 from scanner.store.durable import Seal, compare, make_way, settle, write_durably
 from scanner.store.ledger import CHARTER, LAYOUT, LEDGER, Charter, Ledger
 from scanner.store.metadata import ROOT_METADATA, enclosing_store, read_root, root_is_sound
@@ -261,24 +261,26 @@ def _coordinates(plan: Plan) -> Iterable[Coordinate]:
     for name, values in plan.study.swept.items():
         yield Coordinate(ROOT, name, name, np.array(values), meanings.get(name, name))
     sizes = plan.sizes
-    for name, numbers, meaning in (
-        ("replicate", np.arange(sizes["replicate"]), "independent scrambling of the initial conditions"),
-        ("horizon", np.array(plan.horizons), "bounces after which the verdict is given"),
-        ("p_bin", (2 * np.arange(P_BINS) + 1) / P_BINS - 1, "centre of the bin of p"),
-        ("period", np.array(PERIODS), "period q of the island"),
-        ("direction", np.array(DIRECTIONS, np.dtypes.StringDType()), "along the boundary, p > 0, or against it"),
+    for name, numbers in (
+        ("replicate", np.arange(sizes["replicate"])),
+        ("horizon", np.array(plan.horizons)),
+        ("p_bin", (2 * np.arange(P_BINS) + 1) / P_BINS - 1),
+        ("period", np.array(PERIODS)),
+        ("direction", np.array(DIRECTIONS, np.dtypes.StringDType())),
     ):
-        yield Coordinate(ROOT, name, name, numbers, meaning)
-    number = np.arange(sizes["orbit"])
-    yield Coordinate(ORBITS, "orbit", "orbit", number, "number of the orbit, replicate after replicate")
+        yield Coordinate(ROOT, name, name, numbers, COORDINATES[name])
+    yield Coordinate(ORBITS, "orbit", "orbit", np.arange(sizes["orbit"]), COORDINATES["orbit"])
     if plan.rotations:
         # Not "period": the root has a dimension of that name, whose index every group inherits, over 63 values instead
         # of these.  Plain xarray opens such a store, but then isel() of the group and the tree's HTML view fail, as the
         # index has lost its coordinate; with an index of its own the group cannot be part of the tree at all.
         p, q = np.array(plan.rotations).T
-        yield Coordinate(RESONANCES, "resonance", "rotation", p, "rounds p of the orbits with rotation p/q")
-        yield Coordinate(RESONANCES, "resonance", "resonance_period", q, "bounces q of the orbits with rotation p/q")
-        yield Coordinate(RESONANCES, "curve", "curve", np.array(CURVES), "rotation number of the curve")
+        for dim, name, numbers in (
+            ("resonance", "rotation", p),
+            ("resonance", "resonance_period", q),
+            ("curve", "curve", np.array(CURVES)),
+        ):
+            yield Coordinate(RESONANCES, dim, name, numbers, COORDINATES[name])
 
 
 def _root_attributes(plan: Plan) -> dict[str, str]:

@@ -13,6 +13,7 @@ from pydantic import Field, field_validator, model_validator
 
 from scanner.indicators.schedule import MINIMUM_BOUNCES
 from scanner.quantities import rotations_up_to
+from scanner.study.card import describe_study, study_card
 from scanner.study.messages import Section, shown
 
 LARGEST_SEED = 2**63 - 1
@@ -250,7 +251,7 @@ def _bytes_of(memory: str) -> int:
     return int(float(digits) * UNITS[memory[len(digits) :].strip()])
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, repr=False)
 class Study:
     """A valid study.
 
@@ -292,6 +293,13 @@ class Study:
     allow_code: bool
     sources: Mapping[str, str]
     resonances: Resonances | None = None
+
+    def __repr__(self) -> str:
+        """Say what is asked, without the text."""
+        return describe_study(self)
+
+    def _repr_html_(self) -> str:
+        return study_card(self)
 
     @property
     def rotations(self) -> list[tuple[int, int]]:

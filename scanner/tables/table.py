@@ -22,6 +22,7 @@ from scanner.tables.boundary import (
     turning_number,
     turns_from_arc,
 )
+from scanner.tables.card import table_card
 from scanner.tables.curve import Curve, Shape, tails
 from scanner.tables.symmetry import Symmetry, find_symmetry
 
@@ -89,6 +90,9 @@ class Table:
             f"<Table {self.family}{shown}: perimeter {self.perimeter:.6g}, area {self.area:.6g}, curvature "
             f"{self.curvature_min:.6g} to {self.curvature_max:.6g}, {self.harmonics.shape[1] - 1} harmonics, {shape}>"
         )
+
+    def _repr_html_(self) -> str:
+        return table_card(self)
 
     @property
     def mean_chord_exact(self) -> float:
