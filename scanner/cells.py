@@ -76,8 +76,17 @@ def compute(plan: Plan, task: Task) -> CellResult:
     asked = plan.study.orbits
 
     def survey(result: CellResult, place: Index, table: Table) -> None:
-        rounds = (asked.per_table, asked.bounces, asked.target_error, asked.most_per_table)
-        numbers = follow_rounds(table, plan.study.seed, asked.replicates, *rounds)
+        numbers = follow_rounds(
+            table,
+            plan.study.seed,
+            asked.replicates,
+            asked.per_table,
+            asked.bounces,
+            asked.target_error,
+            asked.most_per_table,
+            asked.exponent_bounces,
+            asked.adaptive,
+        )
         result.fill_shares(place, numbers, asked.replicates)
         result.fill(ROOT, place, table_numbers(table, numbers, asked.replicates))
         result.bounces += int(numbers["bounces_used"].sum())
@@ -85,7 +94,7 @@ def compute(plan: Plan, task: Task) -> CellResult:
     def follow(result: CellResult, place: Index, table: Table) -> None:
         share = (task.orbits.start, task.orbits.stop)
         s, p = section_points(table, plan.study.seed, asked.replicates, asked.per_table, *share)
-        numbers = orbit_numbers(table, s, p, asked.bounces)
+        numbers = orbit_numbers(table, s, p, asked.bounces, asked.exponent_bounces, asked.adaptive)
         result.fill(ORBITS, place, numbers)
         result.bounces += int(numbers["bounces_used"].sum())
 

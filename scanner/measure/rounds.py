@@ -19,6 +19,7 @@ from scanner.measure.sampling import check_shares, replicate_points
 from scanner.tables import Table
 
 Array = npt.NDArray[np.generic]
+Floats = npt.NDArray[np.float64]
 
 ORBITS_AT_ONCE = 2**16
 """Orbits of one table that are followed together: an orbit takes some 600 bytes while it is computed."""
@@ -32,6 +33,8 @@ def follow_rounds(
     bounces: int,
     target_error: float | None = None,
     most_orbits: int | None = None,
+    exponent_bounces: int | None = None,
+    adaptive: bool = True,
 ) -> dict[str, Array]:
     """Sample the section of a table and follow its orbits.
 
@@ -41,8 +44,8 @@ def follow_rounds(
         A convex table.
     seed, replicates, orbits
         As for ``section_points``; ``orbits`` is the first round, and the only one without a target.
-    bounces
-        Bounces of each orbit.
+    bounces, exponent_bounces, adaptive
+        As for ``measure_orbits``.
     target_error
         Standard error of the regular fraction of the section to go on for.
     most_orbits
@@ -61,9 +64,24 @@ def follow_rounds(
     room = check_shares(replicates, orbits if most_orbits is None else most_orbits)
     done, share = 0, check_shares(replicates, orbits)
     found: dict[str, Array] = {}
+
+    def follow(s: Floats, p: Floats) -> dict[str, Array]:
+        parts = [
+            orbit_numbers(
+                table,
+                s[start : start + ORBITS_AT_ONCE],
+                p[start : start + ORBITS_AT_ONCE],
+                bounces,
+                exponent_bounces,
+                adaptive,
+            )
+            for start in range(0, s.size, ORBITS_AT_ONCE)
+        ]
+        return {name: np.concatenate([part[name] for part in parts]) for name in parts[0]}
+
     while True:
         s, p = replicate_points(table, seed, replicates, done, share)
-        found = _append(found, _follow(table, s, p, bounces), replicates)
+        found = _append(found, follow(s, p), replicates)
         verdict = np.asarray(found["verdict"], dtype=np.int8)
         if share == room or (target_error is not None and meets_target(verdict, replicates, target_error)):
             return found
@@ -113,14 +131,6 @@ def meets_target(verdict: npt.NDArray[np.int8], replicates: int, target: float) 
     first = np.ascontiguousarray(verdict.reshape(replicates, -1)[:, :half]).reshape(-1)
     errors = regular_error(verdict, replicates), math.sqrt(0.5) * regular_error(first, replicates)
     return max(errors) <= target
-
-
-def _follow(table: Table, s: npt.NDArray[np.float64], p: npt.NDArray[np.float64], bounces: int) -> dict[str, Array]:
-    parts = [
-        orbit_numbers(table, s[start : start + ORBITS_AT_ONCE], p[start : start + ORBITS_AT_ONCE], bounces)
-        for start in range(0, s.size, ORBITS_AT_ONCE)
-    ]
-    return {name: np.concatenate([part[name] for part in parts]) for name in parts[0]}
 
 
 def _append(before: Mapping[str, Array], after: Mapping[str, Array], replicates: int) -> dict[str, Array]:

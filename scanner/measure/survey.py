@@ -35,6 +35,8 @@ def survey_table(
     seed: int = 1,
     target_error: float | None = None,
     most_orbits: int | None = None,
+    exponent_bounces: int | None = None,
+    adaptive: bool = True,
 ) -> xr.Dataset:
     """How much of one table is regular, and how chaotic the rest.
 
@@ -44,8 +46,8 @@ def survey_table(
         A convex table.
     orbits
         Initial conditions in all, a multiple of ``replicates``; scrambled low-discrepancy points of the section.
-    bounces
-        Bounces of each orbit, at least 64.
+    bounces, exponent_bounces, adaptive
+        Most bounces of an orbit, and when it is left, as for ``measure_orbits``.
     replicates
         Independent scramblings, at least 2 for error bars.
     seed
@@ -65,7 +67,8 @@ def survey_table(
         If the table is not convex or the numbers do not fit together.
     """
     check_rounds(replicates, orbits, target_error, most_orbits)
-    followed = follow_rounds(table, seed, replicates, orbits, bounces, target_error, most_orbits)
+    limits = (target_error, most_orbits, exponent_bounces, adaptive)
+    followed = follow_rounds(table, seed, replicates, orbits, bounces, *limits)
     numbers = table_numbers(table, followed, replicates)
     survey = label(ROOT, {**numbers, "table_status": DONE}, root_coordinates(bounces, replicates))
     survey.attrs.update(

@@ -8,11 +8,11 @@ from collections import Counter
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
 
-from scanner.bounce.lanes import LANES
 from scanner.bounce.resonances import resonance_numbers
 from scanner.indicators import orbit_numbers
 from scanner.measure import section_points
@@ -23,7 +23,8 @@ from scanner.study.screening import CONVEX
 from scanner.tables import Table
 
 CALIBRATION_SECONDS = 2.0
-CALIBRATION_BOUNCES = 8192
+CALIBRATION_BOUNCES = 65536
+CALIBRATION_ORBITS = 512
 CALIBRATION_TABLES = 4
 TIMED_TABLES = 8
 MOST_FAULTS = 5
@@ -40,7 +41,8 @@ class Estimate:
     faults
         The first few of these two, each with its reason.
     orbits, bounces
-        On all convex tables together; of the first round only, where tables may get more.
+        On all convex tables together; of the first round only, where tables may get more.  Bounces as expected from
+        the calibration: orbits are left when it is clear what they are.
     store_bytes
         Size of the store on disk, at most.
     tasks
@@ -104,7 +106,9 @@ def estimate_cost(
     fixed = building + resonances
     asked = plan.study.orbits
     orbits, most_orbits = len(convex) * asked.per_table, len(convex) * asked.room
-    bounces, most_bounces = orbits * asked.bounces, most_orbits * asked.bounces
+    expected = pace.bounces if pace else 0.0
+    bounces, most_bounces = round(orbits * expected), round(most_orbits * expected)
+    seconds_per_bounce = 1e-9 * pace.nanoseconds if pace else 0.0
     return Estimate(
         tables=plan.table_count,
         not_convex=counts["not_convex"],
@@ -114,11 +118,11 @@ def estimate_cost(
         bounces=bounces,
         store_bytes=store_bytes(plan),
         tasks=len(plan.tasks),
-        nanoseconds_per_bounce=pace,
-        core_hours=(fixed + bounces * (pace or 0.0) * 1e-9) / 3600,
+        nanoseconds_per_bounce=pace.nanoseconds if pace else None,
+        core_hours=(fixed + bounces * seconds_per_bounce) / 3600,
         most_orbits=most_orbits,
         most_bounces=most_bounces,
-        most_core_hours=(fixed + most_bounces * (pace or 0.0) * 1e-9) / 3600,
+        most_core_hours=(fixed + most_bounces * seconds_per_bounce) / 3600,
     )
 
 
@@ -160,26 +164,33 @@ def _time_resonances(plan: Plan, tables: Sequence[Table]) -> float:
     return (time.thread_time() - begun) / len(tables)
 
 
-def _calibrate(plan: Plan, tables: Iterable[Table], seconds: float) -> float:
-    """Nanoseconds of a core that one bounce with all its indicators takes, the mean over tables in turn."""
+class Pace(NamedTuple):
+    """What an orbit takes: nanoseconds of a core for a bounce with all its indicators, and bounces on average."""
+
+    nanoseconds: float
+    bounces: float
+
+
+def _calibrate(plan: Plan, tables: Iterable[Table], seconds: float) -> Pace:
+    """Follow a few orbits of each table in turn; orbits that are still on their way at the end are taken to go on."""
     orbits = plan.study.orbits
+    count = min(CALIBRATION_ORBITS, orbits.per_table)
     starts = [
-        (
-            table,
-            *section_points(
-                table, plan.study.seed, orbits.replicates, orbits.per_table, 0, min(LANES, orbits.per_table)
-            ),
-        )
+        (table, *section_points(table, plan.study.seed, orbits.replicates, orbits.per_table, 0, count))
         for table in tables
     ]
     bounces = min(orbits.bounces, CALIBRATION_BOUNCES)
-    for start in starts:  # compiles, or loads, every kernel that the timed rounds use: some only tables with islands do
-        orbit_numbers(*start, bounces)
+    common = min(orbits.exponent_bounces, bounces) if orbits.exponent_bounces else None
+    # Compiles, or loads, every kernel that the timed rounds use: some only tables with islands do.
+    used = [orbit_numbers(*start, bounces, common, orbits.adaptive)["bounces_used"] for start in starts]
     spent: list[float] = []
-    for table, s, p in itertools.cycle(starts):
+    for start in itertools.cycle(starts):
         begun = time.thread_time()
-        orbit_numbers(table, s, p, bounces)
-        spent.append((time.thread_time() - begun) / (len(s) * bounces))
-        if len(spent) >= len(starts) and sum(spent) * len(s) * bounces >= seconds:
+        orbit_numbers(*start, bounces, common, orbits.adaptive)
+        spent.append(time.thread_time() - begun)
+        if len(spent) >= len(starts) and len(spent) % len(starts) == 0 and sum(spent) >= seconds:
             break
-    return 1e9 * sum(spent) / len(spent)
+    all_used = np.concatenate(used)
+    rounds = len(spent) / len(starts)
+    going_on = np.where(all_used == bounces, orbits.bounces, all_used)
+    return Pace(1e9 * sum(spent) / (rounds * float(all_used.sum())), float(going_on.mean()))

@@ -14,6 +14,8 @@ from scanner.measure import ORBITS_AT_ONCE
 
 NOMINAL_BOUNCE = 80
 """Nanoseconds."""
+NOMINAL_SHARE = 4
+"""Orbits that are left as soon as it is clear what they are take about this part of the bounces they might."""
 NOMINAL_TABLE = 20_000_000
 """Nanoseconds to build a table and to sum up its orbits."""
 NOMINAL_RESONANCE = 3_000_000

@@ -81,10 +81,27 @@ class Orbits(Section):
     most_per_table: int | None = Field(
         None, ge=2, le=MOST_ORBITS, description="a whole number from 2 to 2^30", examples=[16384]
     )
+    adaptive: bool = Field(True, description="true or false", examples=[True])
+    exponent_bounces: int | None = Field(
+        None,
+        ge=MINIMUM_BOUNCES,
+        le=MOST_BOUNCES,
+        description=f"a whole number from {MINIMUM_BOUNCES} to {MOST_BOUNCES}",
+        examples=[2048],
+    )
 
     @model_validator(mode="after")
     def _check_together(self) -> Orbits:
         self._check_division("per_table", self.per_table)
+        if self.exponent_bounces is not None and not self.adaptive:
+            raise ValueError(
+                f"exponent_bounces = {self.exponent_bounces} does nothing with adaptive = false, where every orbit "
+                "gets all the bounces; remove one of them"
+            )
+        if self.exponent_bounces is not None and self.exponent_bounces > self.bounces:
+            raise ValueError(
+                f"exponent_bounces = {self.exponent_bounces} must be at most bounces = {self.bounces}; lower it"
+            )
         if self.most_per_table is None:
             if self.target_error is not None:
                 raise ValueError(

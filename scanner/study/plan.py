@@ -11,7 +11,7 @@ from typing import Literal, overload
 
 from scanner.indicators.schedule import horizons
 from scanner.quantities import CURVES, DIRECTIONS, ORBITS, P_BINS, PERIODS, REGISTER, RESONANCES, ROOT, Quantity
-from scanner.study.layout import ceil_divide, lay_out
+from scanner.study.layout import NOMINAL_SHARE, ceil_divide, lay_out
 from scanner.study.model import Study, Value
 
 Kind = Literal["survey", "orbits", "reduce"]
@@ -218,5 +218,8 @@ def make_plan(study: Study) -> Plan:
     """Cut a study into tasks."""
     shape = tuple(len(values) for values in study.swept.values())
     orbits = study.orbits
-    layout = lay_out(shape, orbits.per_table, orbits.bounces, len(study.rotations), orbits.most_per_table)
+    bounces = orbits.bounces
+    if orbits.adaptive:
+        bounces = max(bounces // NOMINAL_SHARE, orbits.exponent_bounces or 1)
+    layout = lay_out(shape, orbits.per_table, bounces, len(study.rotations), orbits.most_per_table)
     return Plan(study, layout.box, layout.orbit_chunk)

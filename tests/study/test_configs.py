@@ -18,7 +18,9 @@ def test_config_is_estimated(path):
     plan = make_plan(load_study(path))
     estimate = estimate_cost(plan, seconds=0.1)
     assert estimate.failed == 0
-    assert estimate.bounces > 1e9
+    assert estimate.most_bounces > 1e8
+    # Orbits are left early: a quarter of the bounces on average, and less where there are more of them.
+    assert estimate.bounces < 0.35 * estimate.orbits * plan.study.orbits.bounces
     assert estimate.not_convex < estimate.tables / 2
     assert len(plan.tasks) >= 64
     assert path.read_text().startswith("# ")

@@ -1,5 +1,6 @@
 """What a study will cost, against what is known of it."""
 
+import numpy as np
 import pytest
 from sweeps import check_all
 
@@ -96,9 +97,10 @@ def test_what_is_compiled_on_the_way_is_not_timed(monkeypatch):
     """A clock that runs 1 us a bounce, and a minute whenever a table is met for the first time."""
     clock, met = [0.0], set()
 
-    def orbit_numbers(table, s, p, bounces):
+    def orbit_numbers(table, s, p, bounces, *limits):
         clock[0] += 1e-6 * len(s) * bounces + (0.0 if table.identity in met else 60.0)
         met.add(table.identity)
+        return {"bounces_used": np.full(len(s), bounces)}
 
     monkeypatch.setattr(estimate_module.time, "thread_time", lambda: clock[0])
     monkeypatch.setattr(estimate_module, "orbit_numbers", orbit_numbers)

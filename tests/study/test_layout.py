@@ -163,6 +163,6 @@ def test_tables_of_a_task_are_those_of_its_box():
 
 def test_a_million_tables_are_planned_lazily():
     plan = make_plan(study_of((1000, 1000), 1024, 8192))
-    assert len(plan.tasks) > 10_000
+    assert len(plan.tasks) >= 10_000
     assert plan.tasks[len(plan.tasks) - 1].box[0].stop == 1000
     assert next(plan.tables())[0] == (0, 0)

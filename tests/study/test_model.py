@@ -56,6 +56,8 @@ def test_what_decides_no_result_leaves_the_fingerprint(change):
         ("{ values = [2, 3] }", "2"),
         ("{ values = [2, 3] }", "{ values = [2] }"),
         ("per_table = 128", "per_table = 256"),
+        ("replicates = 4", "replicates = 4\nadaptive = false"),
+        ("replicates = 4", "replicates = 4\nexponent_bounces = 512"),
         ("bounces = 1024", "bounces = 1025"),
         ("replicates = 4", "replicates = 2"),
         ("replicates = 4", "replicates = 4\ntarget_error = 0.01\nmost_per_table = 1024"),

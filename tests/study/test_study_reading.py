@@ -171,6 +171,17 @@ BAD = [
         "target_error = 0.002\nmost_per_table = 2050",
         r"orbits\.most_per_table = 2050 must be a multiple of replicates = 8; write most_per_table = 2048 or 2056",
     ),
+    (
+        "replicates = 8",
+        "exponent_bounces = 16384",
+        r"exponent_bounces = 16384 must be at most bounces = 8192; lower it",
+    ),
+    (
+        "replicates = 8",
+        "adaptive = false\nexponent_bounces = 2048",
+        r"exponent_bounces = 2048 does nothing with adaptive = false.*; remove one of them",
+    ),
+    ("replicates = 8", "adaptive = 1", r"orbits\.adaptive = 1 must be true or false"),
     ("per_table = 1024", "per_table = 4", r"orbits\.per_table = 4 must be a multiple of replicates = 8; .* 8$"),
     ("per_table = 1024", "per_table = 0", r"orbits\.per_table = 0 must be .* raise it to 2 or more"),
     ("workers = 2", "workers = 0", r"resources\.workers = 0 must be .* raise it to 1 or more"),
