@@ -1,15 +1,23 @@
 """Where the next chord ends, for a block of orbits at once.
 
 Write t0 and t1 for the boundary parameters of the two ends, h = (t1 - t0) / 2 for half the advance and
-v = exp(i h).  With n the unit normal of the ray, the cross product of the ray and the chord is
+v = exp(i h).  With n the unit normal of the ray, half the cross product of the ray and the chord is
 
-    n . (w(t1) - w(t0)) = 2 sin(h) g(h),        g(h) = Re sum_j B_j v^(2 j - 1),
+    n . (w(t1) - w(t0)) / 2 = G(h) = sum_k sin(k h) Re(C_k v^k),
 
-where B_j is the sum over k >= j of i F_k exp(i k t0) and F_k the k-th Fourier coefficient of n . w.  The trivial
-root h = 0 is divided out exactly, term by term, so that g keeps its full accuracy for glancing chords.  On a convex
-table g has one zero in 0 < h < pi: the chord's direction turns from the tangent to its opposite.
+where C_k is i F_k exp(i k t0) and F_k the k-th Fourier coefficient of n . w: a sum over the harmonics that there are.
+Each sine is had from the power v^k and is as exact, relative to itself, as h: dividing by sin(h), which takes the
+trivial root h = 0 out, leaves g(h) = G(h) / sin(h) with its full accuracy for glancing chords.  On a convex table g
+has one zero in 0 < h < pi: the chord's direction turns from the tangent to its opposite.
 
-For an ellipse the sum has one term and the zero is v ~ i conj(B_1): the first guess for every other table.
+The derivatives of G are what they are at h = 0, known from the boundary at t0, and sums of the same products:
+
+    G'   = n . w'(t0)     - 2 sum_k k   sin(k h) Im(C_k v^k)
+    G''  = 2 n . w''(t0)  - 4 sum_k k^2 sin(k h) Re(C_k v^k)
+    G''' = 4 n . w'''(t0) + 8 sum_k k^3 sin(k h) Im(C_k v^k)
+
+For an ellipse the sum has one term and the zero is v ~ i conj(C_1): the first guess for every other table.  It is
+corrected by steps of fourth order on g.
 """
 
 from __future__ import annotations
@@ -22,34 +30,45 @@ import numpy.typing as npt
 from scanner.bounce.bracket import bracket_half_advance
 from scanner.bounce.lanes import (
     COSINE,
-    FACTOR_IM,
-    FACTOR_RE,
     FAILED,
     HALF_COS,
     HALF_SIN,
     LANES,
+    LAST_STEP,
     MOMENTUM,
+    PART_0,
+    PART_1,
+    PART_2,
+    PART_3,
     POWER_IM,
     POWER_RE,
     RAY_X,
     RAY_Y,
     SETTLED,
-    SUM_0,
-    SUM_1,
+    START_1,
+    START_2,
+    START_3,
     SUM_2,
     SUM_3,
+    SUM_4,
+    SUM_5,
     TANGENT_X,
     TANGENT_Y,
 )
-from scanner.compiled import inlined
+from scanner.bounce.series import Gaps, Plan, Terms, product, raise_to_gaps, same
+from scanner.compiled import inlined, kernel
 
 Floats = npt.NDArray[np.float64]
 
-STEP_RELATIVE = 5e-6
-"""A correction this small against sin(h) is the last one: the method is of fourth order, what remains is its
-fourth power, below 1e-21 times a constant that the harmonics in use keep below 1e5."""
+REMAINDER = 1e-16
+"""What may remain of h, relative to sin(h), after the last step.  One of fourth order of relative size r leaves c r^4;
+the step before it, of size r0, left r = c r0^4, which tells c."""
+LONGEST_LAST_STEP = 2e-4
+"""Whatever the step before, which may be long by chance, and even if it is rounding: next to h = 0 all steps are."""
+FIRST_REACH = 3e-3
+"""Size of step that stands for the one before the first: the guess is kept if it is right to 6e-6."""
 STEP_ABSOLUTE = 1e-14
-"""Corrections below this are rounding."""
+"""Corrections below this are rounding, where they are short against sin(h) too."""
 MOST_CORRECTIONS = 6
 """Blocks that need more leave the remaining orbits to bisection."""
 
@@ -67,24 +86,34 @@ def aim(state: Floats) -> None:
 
 
 @inlined
-def divide_out_start(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats) -> None:
-    """Fill ``quotient`` with the coefficients B_j (rows 2 j and 2 j + 1) of the cross product over its trivial root."""
-    highest = harmonics.shape[1] - 1
+def project(harmonics: Floats, plan: Plan, state: Floats, terms: Terms) -> None:
+    """Turn the powers of exp(i t0) into the coefficients C_k, and begin the derivatives of the cross product."""
+    orders = plan.orders
+    term_re, term_im = terms
     for j in range(LANES):
-        quotient[2 * highest + 2, j] = 0.0
-        quotient[2 * highest + 3, j] = 0.0
-    for k in range(highest, 0, -1):
+        rx = state[RAY_X, j]
+        ry = state[RAY_Y, j]
+        state[START_1, j] = rx * state[SUM_3, j] - ry * state[SUM_2, j]
+        state[START_2, j] = 2.0 * (rx * state[SUM_5, j] - ry * state[SUM_4, j])
+        state[START_3, j] = 0.0
+    for i in range(orders.shape[0]):
+        k = orders[i]
         xc = harmonics[0, k]
         xs = harmonics[1, k]
         yc = harmonics[2, k]
         ys = harmonics[3, k]
+        order = float(k)
+        cube = 4.0 * order * order * order
         for j in range(LANES):
-            even = state[RAY_X, j] * yc - state[RAY_Y, j] * xc
-            odd = state[RAY_X, j] * ys - state[RAY_Y, j] * xs
-            re = powers[2 * k, j]
-            im = powers[2 * k + 1, j]
-            quotient[2 * k, j] = quotient[2 * k + 2, j] + (odd * re - even * im)
-            quotient[2 * k + 1, j] = quotient[2 * k + 3, j] + (even * re + odd * im)
+            rx = state[RAY_X, j]
+            ry = state[RAY_Y, j]
+            even = rx * yc - ry * xc
+            odd = rx * ys - ry * xs
+            re = odd * term_re[i, j] - even * term_im[i, j]
+            im = even * term_re[i, j] + odd * term_im[i, j]
+            term_re[i, j] = re
+            term_im[i, j] = im
+            state[START_3, j] -= cube * re
 
 
 @inlined
@@ -111,86 +140,143 @@ def guess_by_ellipse(harmonics: Floats, state: Floats, powers: Floats) -> None:
         state[HALF_COS, j] = along * scale
         state[HALF_SIN, j] = across * scale
         state[SETTLED, j] = 0.0
+        state[LAST_STEP, j] = FIRST_REACH
 
 
 @inlined
-def correct_once(harmonics: Floats, state: Floats, quotient: Floats) -> int:
-    """One Householder step of fourth order on g; returns how many orbits moved by more than the last step may."""
-    highest = harmonics.shape[1] - 1
+def add_harmonics(plan: Plan, state: Floats, terms: Terms, gaps: Gaps) -> None:
+    """Sum the cross product and its first three derivatives at v, less what these are at the near end."""
+    orders, gap_of, _ = plan
+    term_re, term_im = terms
+    gap_re, gap_im = gaps
     for j in range(LANES):
         vr = state[HALF_COS, j]
         vi = state[HALF_SIN, j]
-        re = quotient[2, j] * vr - quotient[3, j] * vi
-        im = quotient[2, j] * vi + quotient[3, j] * vr
-        state[SUM_0, j] = re
-        state[SUM_1, j] = -im
-        state[SUM_2, j] = -re
-        state[SUM_3, j] = im
-        state[FACTOR_RE, j] = vr * vr - vi * vi
-        state[FACTOR_IM, j] = 2.0 * vr * vi
+        gap_re[0, j] = same(vr, vi)
+        gap_im[0, j] = same(vi, vr)
         state[POWER_RE, j] = vr
         state[POWER_IM, j] = vi
-    for k in range(2, highest + 1):
-        order = 2.0 * k - 1.0
+        even = vi * (term_re[0, j] * vr - term_im[0, j] * vi)
+        odd = vi * (term_re[0, j] * vi + term_im[0, j] * vr)
+        state[PART_0, j] = even
+        state[PART_1, j] = odd
+        state[PART_2, j] = even
+        state[PART_3, j] = odd
+    raise_to_gaps(plan, gaps)
+    for i in range(1, orders.shape[0]):
+        gap = gap_of[i]
+        order = float(orders[i])
         square = order * order
         cube = square * order
         for j in range(LANES):
-            fr = state[FACTOR_RE, j]
-            fi = state[FACTOR_IM, j]
-            vr = state[POWER_RE, j] * fr - state[POWER_IM, j] * fi
-            vi = state[POWER_RE, j] * fi + state[POWER_IM, j] * fr
-            state[POWER_RE, j] = vr
-            state[POWER_IM, j] = vi
-            re = quotient[2 * k, j] * vr - quotient[2 * k + 1, j] * vi
-            im = quotient[2 * k, j] * vi + quotient[2 * k + 1, j] * vr
-            state[SUM_0, j] += re
-            state[SUM_1, j] -= order * im
-            state[SUM_2, j] -= square * re
-            state[SUM_3, j] += cube * im
+            re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
+            state[POWER_RE, j] = re
+            state[POWER_IM, j] = im
+            even = im * (term_re[i, j] * re - term_im[i, j] * im)
+            odd = im * (term_re[i, j] * im + term_im[i, j] * re)
+            state[PART_0, j] += even
+            state[PART_1, j] += order * odd
+            state[PART_2, j] += square * even
+            state[PART_3, j] += cube * odd
+
+
+@inlined
+def correct_once(state: Floats) -> int:
+    """One Householder step of fourth order on g; returns how many orbits are not found yet.
+
+    With x for the step over s = sin(h), the derivatives of g enter as those by x, times s: s^(m + 1) g^(m).
+    """
     moving = 0
     for j in range(LANES):
-        g = state[SUM_0, j]
-        g1 = state[SUM_1, j]
-        g2 = state[SUM_2, j]
-        settled = state[SETTLED, j] > 0.0
-        step = -g * (6.0 * g1 * g1 - 3.0 * g * g2) / (6.0 * g1 * (g1 * g1 - g * g2) + g * g * state[SUM_3, j])
+        c = state[HALF_COS, j]
+        s = state[HALF_SIN, j]
+        square = s * s
+        g0 = state[PART_0, j]
+        slope = state[START_1, j] - 2.0 * state[PART_1, j]
+        bend = state[START_2, j] - 4.0 * state[PART_2, j]
+        twist = state[START_3, j] + 8.0 * state[PART_3, j]
+        g1 = s * slope - c * g0
+        g2 = square * (bend + g0) - 2.0 * c * g1
+        g3 = square * (s * twist + c * g0 + 3.0 * g1) - 3.0 * c * g2
+        slope_square = g1 * g1
+        product_02 = g0 * g2
+        step = g0 * (3.0 * product_02 - 6.0 * slope_square)
+        step /= 6.0 * g1 * (slope_square - product_02) + g0 * g0 * g3
         # A settled lane takes no further step, so that an orbit does not depend on its neighbours by a rounding.
+        settled = state[SETTLED, j] > 0.0
         step = 0.0 if settled else step
-        small = abs(step) < STEP_RELATIVE * state[HALF_SIN, j] + STEP_ABSOLUTE
+        size = abs(step)
+        last = state[LAST_STEP, j] * state[LAST_STEP, j]
+        now = step * step
+        small = (now * now * size < REMAINDER * last * last) | (size * s < STEP_ABSOLUTE)
+        small = small & (size < LONGEST_LAST_STEP) & (s > 0.0)
+        state[LAST_STEP, j] = size
         state[SETTLED, j] = 1.0 if small else 0.0
         moving += 0 if small else 1
         # exp(i step) with unit modulus whatever the step: the tangent of half of it to fifth order.
-        half = 0.5 * step
+        half = 0.5 * step * s
         tangent = half * (1.0 + half * half * (1.0 / 3.0))
         scale = 1.0 / (1.0 + tangent * tangent)
         cr = (1.0 - tangent * tangent) * scale
         ci = 2.0 * tangent * scale
-        vr = state[HALF_COS, j]
-        vi = state[HALF_SIN, j]
-        state[HALF_COS, j] = vr * cr - vi * ci
-        state[HALF_SIN, j] = vr * ci + vi * cr
+        state[HALF_COS, j] = c * cr - s * ci
+        state[HALF_SIN, j] = c * ci + s * cr
     return moving
 
 
 @inlined
-def find_half_advance(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats) -> None:
+def find_half_advance(
+    harmonics: Floats,
+    plan: Plan,
+    state: Floats,
+    powers: Floats,
+    quotient: Floats,
+    terms: Terms,
+    gaps: Gaps,
+) -> None:
     """Solve for v = exp(i h) in every lane: guess, correct, and bisect where that has not settled."""
     guess_by_ellipse(harmonics, state, powers)
-    highest = harmonics.shape[1] - 1
-    if highest > 1:
-        divide_out_start(harmonics, state, powers, quotient)
+    if plan.orders.shape[0] > 1:
+        project(harmonics, plan, state, terms)
         moving = LANES
         corrections = 0
         while moving > 0 and corrections < MOST_CORRECTIONS:
-            moving = correct_once(harmonics, state, quotient)
+            add_harmonics(plan, state, terms, gaps)
+            moving = correct_once(state)
             corrections += 1
         if moving > 0:
-            bisect_lost_lanes(highest, state, quotient)
+            bisect_lost_lanes(harmonics, state, powers, quotient)
 
 
-@inlined
-def bisect_lost_lanes(highest: int, state: Floats, quotient: Floats) -> None:
+@kernel
+def divide_out_start(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats) -> None:
+    """Divide the cross product by its trivial root: g(h) = Re sum_j B_j v^(2 j - 1), B_j the sum of C_k over k >= j.
+
+    Fills rows 2 j and 2 j + 1 of ``quotient`` with B_j, and ``powers`` with those of exp(i t0).
+    """
+    highest = harmonics.shape[1] - 1
+    for k in range(2, highest + 1):
+        for j in range(LANES):
+            powers[2 * k, j] = powers[2 * k - 2, j] * powers[2, j] - powers[2 * k - 1, j] * powers[3, j]
+            powers[2 * k + 1, j] = powers[2 * k - 2, j] * powers[3, j] + powers[2 * k - 1, j] * powers[2, j]
+    for j in range(LANES):
+        quotient[2 * highest + 2, j] = 0.0
+        quotient[2 * highest + 3, j] = 0.0
+    for k in range(highest, 0, -1):
+        for j in range(LANES):
+            even = state[RAY_X, j] * harmonics[2, k] - state[RAY_Y, j] * harmonics[0, k]
+            odd = state[RAY_X, j] * harmonics[3, k] - state[RAY_Y, j] * harmonics[1, k]
+            re = powers[2 * k, j]
+            im = powers[2 * k + 1, j]
+            quotient[2 * k, j] = quotient[2 * k + 2, j] + (odd * re - even * im)
+            quotient[2 * k + 1, j] = quotient[2 * k + 3, j] + (even * re + odd * im)
+
+
+@kernel
+def bisect_lost_lanes(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats) -> None:
     """Hand to bisection every lane that has not settled."""
+    divide_out_start(harmonics, state, powers, quotient)
+    highest = harmonics.shape[1] - 1
     for j in range(LANES):
         if state[SETTLED, j] > 0.0:
             continue

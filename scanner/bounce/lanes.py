@@ -31,20 +31,26 @@ BUFFER = 16
     RAY_Y,
     HALF_COS,  # cosine and sine of half the advance of the boundary parameter
     HALF_SIN,
-    SUM_0,  # running sums over the harmonics
+    SUM_0,  # sums over the harmonics at the last bounce: point, first and second derivative
     SUM_1,
     SUM_2,
     SUM_3,
     SUM_4,
     SUM_5,
-    POWER_RE,  # running power of a unit complex number, and the factor from one to the next
+    POWER_RE,  # running power of a unit complex number
     POWER_IM,
-    FACTOR_RE,
-    FACTOR_IM,
+    PART_0,  # running sums of the cross product and its derivatives
+    PART_1,
+    PART_2,
+    PART_3,
+    START_1,  # what these derivatives are at the near end of the chord
+    START_2,
+    START_3,
+    LAST_STEP,  # size of the last correction, over that of the chord
     SETTLED,  # 1 once the chord in hand is found: its lane is left alone while others are corrected
     FAILED,  # 0, or 1 once a chord of this orbit could not be found
-) = range(23)
-STATE_ROWS = 23
+) = range(29)
+STATE_ROWS = 29
 
 # Rows of the buffer, each of shape (BUFFER, LANES).
 ADVANCE, P_AFTER, CHORD, D_SS, D_SP, D_PS, D_PP = range(7)

@@ -35,6 +35,8 @@ from scanner.bounce.lanes import (
     P_AFTER,
     POINT_X,
     POINT_Y,
+    POWER_IM,
+    POWER_RE,
     RAY_X,
     RAY_Y,
     STATE_ROWS,
@@ -47,6 +49,7 @@ from scanner.bounce.lanes import (
     TANGENT_X,
     TANGENT_Y,
 )
+from scanner.bounce.series import Gaps, Plan, Terms, prepare_series, product, raise_to_gaps, same
 from scanner.compiled import inlined, kernel
 from scanner.elementary import angle_turns, cos_sin_turns
 
@@ -54,8 +57,32 @@ Floats = npt.NDArray[np.float64]
 
 
 @inlined
-def evaluate_boundary(harmonics: Floats, state: Floats, powers: Floats) -> None:
-    """Sum point, tangent and second derivative at exp(i t) of every lane, and refill the powers of exp(i t)."""
+def fill_powers(plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: Gaps) -> None:
+    """Fill in the powers of exp(i t) of every harmonic."""
+    orders, gap_of, _ = plan
+    term_re, term_im = terms
+    gap_re, gap_im = gaps
+    # The number of lanes as the compiler does not know it: else it makes this loop one of the widest registers.
+    for j in range(powers.shape[1]):
+        re = same(powers[2, j], powers[3, j])
+        im = same(powers[3, j], powers[2, j])
+        gap_re[0, j] = term_re[0, j] = state[POWER_RE, j] = re
+        gap_im[0, j] = term_im[0, j] = state[POWER_IM, j] = im
+    raise_to_gaps(plan, gaps)
+    for i in range(1, orders.shape[0]):
+        gap = gap_of[i]
+        for j in range(LANES):
+            re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
+            state[POWER_RE, j] = term_re[i, j] = re
+            state[POWER_IM, j] = term_im[i, j] = im
+
+
+@inlined
+def evaluate_boundary(harmonics: Floats, plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: Gaps) -> None:
+    """Sum point, tangent and second derivative at exp(i t) of every lane, and keep the powers of exp(i t)."""
+    orders, gap_of, _ = plan
+    term_re, term_im = terms
+    gap_re, gap_im = gaps
     xc = harmonics[0, 1]
     xs = harmonics[1, 1]
     yc = harmonics[2, 1]
@@ -71,7 +98,10 @@ def evaluate_boundary(harmonics: Floats, state: Floats, powers: Floats) -> None:
         state[SUM_3, j] = ys * re - yc * im
         state[SUM_4, j] = -x
         state[SUM_5, j] = -y
-    for k in range(2, harmonics.shape[1]):
+    raise_to_gaps(plan, gaps)
+    for i in range(1, orders.shape[0]):
+        k = orders[i]
+        gap = gap_of[i]
         xc = harmonics[0, k]
         xs = harmonics[1, k]
         yc = harmonics[2, k]
@@ -79,12 +109,13 @@ def evaluate_boundary(harmonics: Floats, state: Floats, powers: Floats) -> None:
         order = float(k)
         square = order * order
         for j in range(LANES):
-            re = powers[2 * k - 2, j] * powers[2, j] - powers[2 * k - 1, j] * powers[3, j]
-            im = powers[2 * k - 2, j] * powers[3, j] + powers[2 * k - 1, j] * powers[2, j]
-            powers[2 * k, j] = re
-            powers[2 * k + 1, j] = im
+            re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
+            state[POWER_RE, j] = re
+            state[POWER_IM, j] = im
             x = xc * re + xs * im
             y = yc * re + ys * im
+            term_re[i, j] = re
+            term_im[i, j] = im
             state[SUM_0, j] += x
             state[SUM_1, j] += y
             state[SUM_2, j] += order * (xs * re - xc * im)
@@ -96,9 +127,14 @@ def evaluate_boundary(harmonics: Floats, state: Floats, powers: Floats) -> None:
 @kernel
 def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats, powers: Floats) -> None:
     """Set up a block at boundary parameters ``turns`` and momenta ``momenta``, both of shape (LANES,)."""
+    plan, terms, gaps = prepare_series(harmonics)
+    term_re, term_im = terms
+    gap_re, gap_im = gaps
     for j in range(LANES):
-        powers[2, j], powers[3, j] = cos_sin_turns(turns[j])
-    evaluate_boundary(harmonics, state, powers)
+        re, im = cos_sin_turns(turns[j])
+        powers[2, j] = term_re[0, j] = gap_re[0, j] = state[POWER_RE, j] = re
+        powers[3, j] = term_im[0, j] = gap_im[0, j] = state[POWER_IM, j] = im
+    evaluate_boundary(harmonics, plan, state, powers, terms, gaps)
     for j in range(LANES):
         x1 = state[SUM_2, j]
         y1 = state[SUM_3, j]
@@ -114,8 +150,10 @@ def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats
 
 
 @inlined
-def move_to_end(state: Floats, powers: Floats, buffer: Floats, row: int) -> None:
-    """Turn exp(i t) by the full advance, and note the advance in turns."""
+def move_to_end(state: Floats, powers: Floats, terms: Terms, gaps: Gaps, buffer: Floats, row: int) -> None:
+    """Turn exp(i t) by the full advance, begin its powers there, and note the advance in turns."""
+    term_re, term_im = terms
+    gap_re, gap_im = gaps
     for j in range(LANES):
         vr = state[HALF_COS, j]
         vi = state[HALF_SIN, j]
@@ -128,8 +166,10 @@ def move_to_end(state: Floats, powers: Floats, buffer: Floats, row: int) -> None
         re = powers[2, j] * ur - powers[3, j] * ui
         im = powers[2, j] * ui + powers[3, j] * ur
         unit = 1.5 - 0.5 * (re * re + im * im)
-        powers[2, j] = re * unit
-        powers[3, j] = im * unit
+        re *= unit
+        im *= unit
+        powers[2, j] = term_re[0, j] = gap_re[0, j] = state[POWER_RE, j] = re
+        powers[3, j] = term_im[0, j] = gap_im[0, j] = state[POWER_IM, j] = im
 
 
 @inlined
@@ -190,11 +230,13 @@ def bounce_lanes(
     The arrays must be made in the kernel this is copied into: then their rows have a length that the compiler knows
     and cannot overlap, and the loops over lanes become vector instructions.
     """
+    plan, terms, gaps = prepare_series(harmonics)
+    fill_powers(plan, state, powers, terms, gaps)
     for row in range(count):
         aim(state)
-        find_half_advance(harmonics, state, powers, quotient)
-        move_to_end(state, powers, buffer, row)
-        evaluate_boundary(harmonics, state, powers)
+        find_half_advance(harmonics, plan, state, powers, quotient, terms, gaps)
+        move_to_end(state, powers, terms, gaps, buffer, row)
+        evaluate_boundary(harmonics, plan, state, powers, terms, gaps)
         reflect(state, buffer, row)
 
 

@@ -1,0 +1,136 @@
+"""Which harmonics of a boundary do not vanish, and how the powers of exp(i t) are reached without the others.
+
+A boundary with a centre of symmetry has odd harmonics only, one with a single radial harmonic m has three: 1, m - 1 and
+m + 1.  The sums over harmonics go over those that there are; from one to the next the power is multiplied by that of
+the gap between their orders, of which a boundary has few different ones.
+"""
+
+from __future__ import annotations
+
+from typing import NamedTuple
+
+import numpy as np
+import numpy.typing as npt
+
+from scanner.bounce.lanes import LANES
+from scanner.compiled import inlined, kernel
+
+Floats = npt.NDArray[np.float64]
+Whole = npt.NDArray[np.int64]
+
+
+class Plan(NamedTuple):
+    """Which harmonics to sum, n of them, and how to come from the power of one to that of the next.
+
+    Attributes
+    ----------
+    orders
+        Shape (n,): their orders, increasing, the first being 1.
+    gap_of
+        Shape (n,): number of the power that leads to each order from the one before.
+    chain
+        Shape (m, 2): each such power is the product of two earlier ones, given by number; number 0 is the first power.
+    """
+
+    orders: Whole
+    gap_of: Whole
+    chain: Whole
+
+
+class Terms(NamedTuple):
+    """Powers of exp(i t0) at the near end of the chord; once the ray is known, the coefficients C_k in their place.
+
+    Real and imaginary parts, of shape (n, LANES).
+    """
+
+    re: Floats
+    im: Floats
+
+
+class Gaps(NamedTuple):
+    """Powers of a unit number that the plan's chain makes, real and imaginary parts of shape (m, LANES)."""
+
+    re: Floats
+    im: Floats
+
+
+@kernel
+def harmonic_orders(harmonics: Floats) -> Whole:
+    """Orders of the harmonics that do not vanish, increasing; the first is there in any case."""
+    orders = np.empty(harmonics.shape[1] - 1, dtype=np.int64)
+    orders[0] = 1
+    count = 1
+    for k in range(2, harmonics.shape[1]):
+        if harmonics[0, k] != 0.0 or harmonics[1, k] != 0.0 or harmonics[2, k] != 0.0 or harmonics[3, k] != 0.0:
+            orders[count] = k
+            count += 1
+    return orders[:count]
+
+
+@kernel
+def plan_gaps(orders: Whole) -> tuple[Whole, Whole]:
+    """Reach the powers of all gaps between the orders by few multiplications: ``gap_of`` and ``chain`` of the plan."""
+    widest = 1
+    for i in range(1, orders.size):
+        widest = max(widest, orders[i] - orders[i - 1])
+    place = np.zeros(widest + 1, dtype=np.int64)
+    for i in range(1, orders.size):
+        place[orders[i] - orders[i - 1]] = 1
+    for gap in range(widest, 1, -1):
+        if place[gap] > 0:
+            place[gap // 2] = place[gap - gap // 2] = 1
+    place[1] = 0
+    chain = np.zeros((widest, 2), dtype=np.int64)
+    count = 1
+    for gap in range(2, widest + 1):
+        if place[gap] > 0:
+            place[gap] = count
+            chain[count, 0] = place[gap // 2]
+            chain[count, 1] = place[gap - gap // 2]
+            count += 1
+    gap_of = np.zeros(orders.size, dtype=np.int64)
+    for i in range(1, orders.size):
+        gap_of[i] = place[orders[i] - orders[i - 1]]
+    return gap_of, chain[:count]
+
+
+@inlined
+def product(a_re: float, a_im: float, b_re: float, b_im: float) -> tuple[float, float]:
+    """Product of two complex numbers."""
+    return a_re * b_re - a_im * b_im, a_re * b_im + a_im * b_re
+
+
+@inlined
+def prepare_series(harmonics: Floats) -> tuple[Plan, Terms, Gaps]:
+    """Plan the sums over the harmonics of a boundary, and make room for them in the kernel this is copied into."""
+    orders = harmonic_orders(harmonics)
+    gap_of, chain = plan_gaps(orders)
+    count = orders.shape[0]
+    size = chain.shape[0]
+    terms = Terms(np.empty((count, LANES)), np.empty((count, LANES)))
+    gaps = Gaps(np.empty((size, LANES)), np.empty((size, LANES)))
+    return Plan(orders, gap_of, chain), terms, gaps
+
+
+@inlined
+def same(value: float, other: float) -> float:
+    """Give the value back by arithmetic that is exact for finite numbers.
+
+    A loop that copies one array to another becomes a block move in the widest registers of the processor, and some
+    run all else slower while these are in use.
+    """
+    return value - 0.0 * other
+
+
+@inlined
+def raise_to_gaps(plan: Plan, gaps: Gaps) -> None:
+    """Fill the powers of all gaps from the first one."""
+    chain = plan.chain
+    gap_re, gap_im = gaps
+    for number in range(1, chain.shape[0]):
+        left = chain[number, 0]
+        right = chain[number, 1]
+        for j in range(LANES):
+            re, im = product(gap_re[left, j], gap_im[left, j], gap_re[right, j], gap_im[right, j])
+            gap_re[number, j] = re
+            gap_im[number, j] = im
