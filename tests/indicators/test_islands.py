@@ -45,9 +45,10 @@ def test_windings_over_a_whole_ellipse() -> None:
     )
     error = np.abs(found.island_winding.values[island] - np.abs(2 * rho - np.rint(2 * rho)))
     assert np.isfinite(error).mean() > 0.99
-    # Where the two halves agree on seven digits the whole is better; next to the separatrix they do not.
+    # Where the two halves agree on seven digits the whole is better.  Next to the separatrix they do not, nor where
+    # the orbit was left after few bounces.
     settled = found.frequency_diffusion.values[island] < -7
-    assert settled.mean() > 0.8
+    assert settled.mean() > 0.7
     assert error[settled].max() < 1e-7
     assert np.nanmedian(error) < 1e-9
 
