@@ -127,7 +127,7 @@ def _cat_map() -> Iterator[Check]:
     running = np.empty((RUNNING_ROWS, LANES))
     start_running(running)
     for first in range(0, steps, BUFFER):
-        absorb(buffer, BUFFER, first, schedule.windows, schedule.weights, averages, running)
+        absorb(buffer, BUFFER, first, schedule.windows, schedule.weights, averages, running, LANES)
     exponent = math.log((3 + math.sqrt(5)) / 2)
     # the vector needs a few steps to turn: an error of order 1 in the sum over all of them
     yield Check("cat map, Lyapunov exponent", float(running[GROWTH, 0]) / steps, exponent, 1 / steps)

@@ -33,7 +33,6 @@ from scanner.bounce.lanes import (
     FAILED,
     HALF_COS,
     HALF_SIN,
-    LANES,
     LAST_STEP,
     MOMENTUM,
     PART_0,
@@ -74,9 +73,9 @@ MOST_CORRECTIONS = 6
 
 
 @inlined
-def aim(state: Floats) -> None:
+def aim(state: Floats, lanes: int) -> None:
     """Turn the tangent by the angle of the outgoing ray."""
-    for j in range(LANES):
+    for j in range(lanes):
         p = state[MOMENTUM, j]
         c = state[COSINE, j]
         tx = state[TANGENT_X, j]
@@ -86,11 +85,11 @@ def aim(state: Floats) -> None:
 
 
 @inlined
-def project(harmonics: Floats, plan: Plan, state: Floats, terms: Terms) -> None:
+def project(harmonics: Floats, plan: Plan, state: Floats, terms: Terms, lanes: int) -> None:
     """Turn the powers of exp(i t0) into the coefficients C_k, and begin the derivatives of the cross product."""
     orders = plan.orders
     term_re, term_im = terms
-    for j in range(LANES):
+    for j in range(lanes):
         rx = state[RAY_X, j]
         ry = state[RAY_Y, j]
         state[START_1, j] = rx * state[SUM_3, j] - ry * state[SUM_2, j]
@@ -104,7 +103,7 @@ def project(harmonics: Floats, plan: Plan, state: Floats, terms: Terms) -> None:
         ys = harmonics[3, k]
         order = float(k)
         cube = 4.0 * order * order * order
-        for j in range(LANES):
+        for j in range(lanes):
             rx = state[RAY_X, j]
             ry = state[RAY_Y, j]
             even = rx * yc - ry * xc
@@ -117,13 +116,13 @@ def project(harmonics: Floats, plan: Plan, state: Floats, terms: Terms) -> None:
 
 
 @inlined
-def guess_by_ellipse(harmonics: Floats, state: Floats, powers: Floats) -> None:
+def guess_by_ellipse(harmonics: Floats, state: Floats, powers: Floats, lanes: int) -> None:
     """Chord of the first-harmonic ellipse at the same parameter and angle: 0 < h < pi, small when glancing."""
     xc = harmonics[0, 1]
     xs = harmonics[1, 1]
     yc = harmonics[2, 1]
     ys = harmonics[3, 1]
-    for j in range(LANES):
+    for j in range(lanes):
         re = powers[2, j]
         im = powers[3, j]
         tx = xs * re - xc * im
@@ -144,12 +143,12 @@ def guess_by_ellipse(harmonics: Floats, state: Floats, powers: Floats) -> None:
 
 
 @inlined
-def add_harmonics(plan: Plan, state: Floats, terms: Terms, gaps: Gaps) -> None:
+def add_harmonics(plan: Plan, state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
     """Sum the cross product and its first three derivatives at v, less what these are at the near end."""
     orders, gap_of, _ = plan
     term_re, term_im = terms
     gap_re, gap_im = gaps
-    for j in range(LANES):
+    for j in range(lanes):
         vr = state[HALF_COS, j]
         vi = state[HALF_SIN, j]
         gap_re[0, j] = same(vr, vi)
@@ -162,13 +161,13 @@ def add_harmonics(plan: Plan, state: Floats, terms: Terms, gaps: Gaps) -> None:
         state[PART_1, j] = odd
         state[PART_2, j] = even
         state[PART_3, j] = odd
-    raise_to_gaps(plan, gaps)
+    raise_to_gaps(plan, gaps, lanes)
     for i in range(1, orders.shape[0]):
         gap = gap_of[i]
         order = float(orders[i])
         square = order * order
         cube = square * order
-        for j in range(LANES):
+        for j in range(lanes):
             re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
             state[POWER_RE, j] = re
             state[POWER_IM, j] = im
@@ -181,13 +180,13 @@ def add_harmonics(plan: Plan, state: Floats, terms: Terms, gaps: Gaps) -> None:
 
 
 @inlined
-def correct_once(state: Floats) -> int:
+def correct_once(state: Floats, lanes: int) -> int:
     """One Householder step of fourth order on g; returns how many orbits are not found yet.
 
     With x for the step over s = sin(h), the derivatives of g enter as those by x, times s: s^(m + 1) g^(m).
     """
     moving = 0
-    for j in range(LANES):
+    for j in range(lanes):
         c = state[HALF_COS, j]
         s = state[HALF_SIN, j]
         square = s * s
@@ -226,44 +225,38 @@ def correct_once(state: Floats) -> int:
 
 @inlined
 def find_half_advance(
-    harmonics: Floats,
-    plan: Plan,
-    state: Floats,
-    powers: Floats,
-    quotient: Floats,
-    terms: Terms,
-    gaps: Gaps,
+    harmonics: Floats, plan: Plan, state: Floats, powers: Floats, quotient: Floats, terms: Terms, gaps: Gaps, lanes: int
 ) -> None:
     """Solve for v = exp(i h) in every lane: guess, correct, and bisect where that has not settled."""
-    guess_by_ellipse(harmonics, state, powers)
+    guess_by_ellipse(harmonics, state, powers, lanes)
     if plan.orders.shape[0] > 1:
-        project(harmonics, plan, state, terms)
-        moving = LANES
+        project(harmonics, plan, state, terms, lanes)
+        moving = lanes
         corrections = 0
         while moving > 0 and corrections < MOST_CORRECTIONS:
-            add_harmonics(plan, state, terms, gaps)
-            moving = correct_once(state)
+            add_harmonics(plan, state, terms, gaps, lanes)
+            moving = correct_once(state, lanes)
             corrections += 1
         if moving > 0:
-            bisect_lost_lanes(harmonics, state, powers, quotient)
+            bisect_lost_lanes(harmonics, state, powers, quotient, lanes)
 
 
 @kernel
-def divide_out_start(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats) -> None:
+def divide_out_start(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats, lanes: int) -> None:
     """Divide the cross product by its trivial root: g(h) = Re sum_j B_j v^(2 j - 1), B_j the sum of C_k over k >= j.
 
     Fills rows 2 j and 2 j + 1 of ``quotient`` with B_j, and ``powers`` with those of exp(i t0).
     """
     highest = harmonics.shape[1] - 1
     for k in range(2, highest + 1):
-        for j in range(LANES):
+        for j in range(lanes):
             powers[2 * k, j] = powers[2 * k - 2, j] * powers[2, j] - powers[2 * k - 1, j] * powers[3, j]
             powers[2 * k + 1, j] = powers[2 * k - 2, j] * powers[3, j] + powers[2 * k - 1, j] * powers[2, j]
-    for j in range(LANES):
+    for j in range(lanes):
         quotient[2 * highest + 2, j] = 0.0
         quotient[2 * highest + 3, j] = 0.0
     for k in range(highest, 0, -1):
-        for j in range(LANES):
+        for j in range(lanes):
             even = state[RAY_X, j] * harmonics[2, k] - state[RAY_Y, j] * harmonics[0, k]
             odd = state[RAY_X, j] * harmonics[3, k] - state[RAY_Y, j] * harmonics[1, k]
             re = powers[2 * k, j]
@@ -273,11 +266,11 @@ def divide_out_start(harmonics: Floats, state: Floats, powers: Floats, quotient:
 
 
 @kernel
-def bisect_lost_lanes(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats) -> None:
+def bisect_lost_lanes(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats, lanes: int) -> None:
     """Hand to bisection every lane that has not settled."""
-    divide_out_start(harmonics, state, powers, quotient)
+    divide_out_start(harmonics, state, powers, quotient, lanes)
     highest = harmonics.shape[1] - 1
-    for j in range(LANES):
+    for j in range(lanes):
         if state[SETTLED, j] > 0.0:
             continue
         found, half_cos, half_sin = bracket_half_advance(highest, quotient, j, state[HALF_COS, j], state[HALF_SIN, j])

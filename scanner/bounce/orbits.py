@@ -57,7 +57,7 @@ Floats = npt.NDArray[np.float64]
 
 
 @inlined
-def fill_powers(plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: Gaps) -> None:
+def fill_powers(plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
     """Fill in the powers of exp(i t) of every harmonic."""
     orders, gap_of, _ = plan
     term_re, term_im = terms
@@ -68,17 +68,19 @@ def fill_powers(plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: G
         im = same(powers[3, j], powers[2, j])
         gap_re[0, j] = term_re[0, j] = state[POWER_RE, j] = re
         gap_im[0, j] = term_im[0, j] = state[POWER_IM, j] = im
-    raise_to_gaps(plan, gaps)
+    raise_to_gaps(plan, gaps, lanes)
     for i in range(1, orders.shape[0]):
         gap = gap_of[i]
-        for j in range(LANES):
+        for j in range(lanes):
             re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
             state[POWER_RE, j] = term_re[i, j] = re
             state[POWER_IM, j] = term_im[i, j] = im
 
 
 @inlined
-def evaluate_boundary(harmonics: Floats, plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: Gaps) -> None:
+def evaluate_boundary(
+    harmonics: Floats, plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: Gaps, lanes: int
+) -> None:
     """Sum point, tangent and second derivative at exp(i t) of every lane, and keep the powers of exp(i t)."""
     orders, gap_of, _ = plan
     term_re, term_im = terms
@@ -87,7 +89,7 @@ def evaluate_boundary(harmonics: Floats, plan: Plan, state: Floats, powers: Floa
     xs = harmonics[1, 1]
     yc = harmonics[2, 1]
     ys = harmonics[3, 1]
-    for j in range(LANES):
+    for j in range(lanes):
         re = powers[2, j]
         im = powers[3, j]
         x = xc * re + xs * im
@@ -98,7 +100,7 @@ def evaluate_boundary(harmonics: Floats, plan: Plan, state: Floats, powers: Floa
         state[SUM_3, j] = ys * re - yc * im
         state[SUM_4, j] = -x
         state[SUM_5, j] = -y
-    raise_to_gaps(plan, gaps)
+    raise_to_gaps(plan, gaps, lanes)
     for i in range(1, orders.shape[0]):
         k = orders[i]
         gap = gap_of[i]
@@ -108,7 +110,7 @@ def evaluate_boundary(harmonics: Floats, plan: Plan, state: Floats, powers: Floa
         ys = harmonics[3, k]
         order = float(k)
         square = order * order
-        for j in range(LANES):
+        for j in range(lanes):
             re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
             state[POWER_RE, j] = re
             state[POWER_IM, j] = im
@@ -134,7 +136,7 @@ def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats
         re, im = cos_sin_turns(turns[j])
         powers[2, j] = term_re[0, j] = gap_re[0, j] = state[POWER_RE, j] = re
         powers[3, j] = term_im[0, j] = gap_im[0, j] = state[POWER_IM, j] = im
-    evaluate_boundary(harmonics, plan, state, powers, terms, gaps)
+    evaluate_boundary(harmonics, plan, state, powers, terms, gaps, LANES)
     for j in range(LANES):
         x1 = state[SUM_2, j]
         y1 = state[SUM_3, j]
@@ -150,11 +152,11 @@ def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats
 
 
 @inlined
-def move_to_end(state: Floats, powers: Floats, terms: Terms, gaps: Gaps, buffer: Floats, row: int) -> None:
+def move_to_end(state: Floats, powers: Floats, terms: Terms, gaps: Gaps, buffer: Floats, row: int, lanes: int) -> None:
     """Turn exp(i t) by the full advance, begin its powers there, and note the advance in turns."""
     term_re, term_im = terms
     gap_re, gap_im = gaps
-    for j in range(LANES):
+    for j in range(lanes):
         vr = state[HALF_COS, j]
         vi = state[HALF_SIN, j]
         unit = 1.5 - 0.5 * (vr * vr + vi * vi)
@@ -185,9 +187,9 @@ def tangent_map(k0: float, c0: float, k1: float, c1: float, length: float) -> tu
 
 
 @inlined
-def reflect(state: Floats, buffer: Floats, row: int) -> None:
+def reflect(state: Floats, buffer: Floats, row: int, lanes: int) -> None:
     """Reflect at the new point: momentum, chord and tangent map of this bounce."""
-    for j in range(LANES):
+    for j in range(lanes):
         x1 = state[SUM_2, j]
         y1 = state[SUM_3, j]
         over_speed = 1.0 / math.sqrt(x1 * x1 + y1 * y1)
@@ -223,21 +225,22 @@ def reflect(state: Floats, buffer: Floats, row: int) -> None:
 
 @inlined
 def bounce_lanes(
-    harmonics: Floats, state: Floats, powers: Floats, quotient: Floats, buffer: Floats, count: int
+    harmonics: Floats, state: Floats, powers: Floats, quotient: Floats, buffer: Floats, count: int, lanes: int
 ) -> None:
     """Bounce every orbit of a block ``count`` times (at most BUFFER) and fill as many rows of the buffer.
 
-    The arrays must be made in the kernel this is copied into: then their rows have a length that the compiler knows
-    and cannot overlap, and the loops over lanes become vector instructions.
+    Only the first ``lanes`` orbits are followed, a multiple of 16.  The arrays must be made in the kernel this is copied
+    into: then their rows have a length that the compiler knows and cannot overlap, and the loops over lanes become
+    vector instructions.
     """
     plan, terms, gaps = prepare_series(harmonics)
-    fill_powers(plan, state, powers, terms, gaps)
+    fill_powers(plan, state, powers, terms, gaps, lanes)
     for row in range(count):
-        aim(state)
-        find_half_advance(harmonics, plan, state, powers, quotient, terms, gaps)
-        move_to_end(state, powers, terms, gaps, buffer, row)
-        evaluate_boundary(harmonics, plan, state, powers, terms, gaps)
-        reflect(state, buffer, row)
+        aim(state, lanes)
+        find_half_advance(harmonics, plan, state, powers, quotient, terms, gaps, lanes)
+        move_to_end(state, powers, terms, gaps, buffer, row, lanes)
+        evaluate_boundary(harmonics, plan, state, powers, terms, gaps, lanes)
+        reflect(state, buffer, row, lanes)
 
 
 @inlined
@@ -269,7 +272,7 @@ def bounce_block(harmonics: Floats, state: Floats, powers: Floats, buffer: Float
     copy_rows(powers, turning)
     quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
     seen = np.empty((BUFFER_ROWS, BUFFER, LANES))
-    bounce_lanes(harmonics, here, turning, quotient, seen, count)
+    bounce_lanes(harmonics, here, turning, quotient, seen, count, LANES)
     copy_rows(here, state)
     copy_rows(turning, powers)
     for kind in range(BUFFER_ROWS):

@@ -123,14 +123,14 @@ def same(value: float, other: float) -> float:
 
 
 @inlined
-def raise_to_gaps(plan: Plan, gaps: Gaps) -> None:
+def raise_to_gaps(plan: Plan, gaps: Gaps, lanes: int) -> None:
     """Fill the powers of all gaps from the first one."""
     chain = plan.chain
     gap_re, gap_im = gaps
     for number in range(1, chain.shape[0]):
         left = chain[number, 0]
         right = chain[number, 1]
-        for j in range(LANES):
+        for j in range(lanes):
             re, im = product(gap_re[left, j], gap_im[left, j], gap_re[right, j], gap_im[right, j])
             gap_re[number, j] = re
             gap_im[number, j] = im

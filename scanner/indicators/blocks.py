@@ -31,6 +31,8 @@ Floats = npt.NDArray[np.float64]
 Whole = npt.NDArray[np.int64]
 Mask = npt.NDArray[np.bool_]
 
+GRAIN = 16
+"""The last block of a batch is not filled up: only so many lanes at a time are left idle."""
 RECORDED = 2048
 """Last bounces of an orbit whose advance and p are kept, for the motion inside islands."""
 
@@ -102,6 +104,7 @@ def follow_blocks(
     marks: Whole,
     start: int,
     record_from: int,
+    size: int,
     state: Floats,
     powers: Floats,
     running: Floats,
@@ -126,12 +129,13 @@ def follow_blocks(
         take_columns(powers, block, turning)
         take_columns(running, block, tangent)
         take_columns(averages, block, sums)
+        lanes = GRAIN * min(LANES // GRAIN, (size - block + GRAIN - 1) // GRAIN)
         first = start
         for mark in range(marks.shape[0]):
             while first < marks[mark]:
                 count = min(BUFFER, marks[mark] - first)
-                bounce_lanes(harmonics, here, turning, quotient, buffer, count)
-                absorb(buffer, count, first, windows, weights, sums, tangent)
+                bounce_lanes(harmonics, here, turning, quotient, buffer, count, lanes)
+                absorb(buffer, count, first, windows, weights, sums, tangent, lanes)
                 for row in range(max(record_from - first, 0), count):
                     for j in range(LANES):
                         record[first + row - record_from, 0, block + j] = buffer[ADVANCE, row, j]
@@ -197,6 +201,7 @@ class Batch:
             schedule.marks[among],
             start,
             record_from,
+            self.orbits.size,
             self._state,
             self._powers,
             self._running,

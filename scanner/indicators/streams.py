@@ -8,7 +8,7 @@ from __future__ import annotations
 import numpy as np
 import numpy.typing as npt
 
-from scanner.bounce.lanes import CHORD, D_PP, D_PS, D_SP, D_SS, LANES, OBSERVABLES
+from scanner.bounce.lanes import CHORD, D_PP, D_PS, D_SP, D_SS, OBSERVABLES
 from scanner.compiled import kernel
 from scanner.elementary import log
 
@@ -32,7 +32,7 @@ def start_running(running: Floats) -> None:
 
 @kernel
 def add_to_averages(
-    buffer: Floats, count: int, first: int, windows: Integers, weights: Floats, averages: Floats
+    buffer: Floats, count: int, first: int, windows: Integers, weights: Floats, averages: Floats, lanes: int
 ) -> None:
     """Add bounces ``first`` to ``first + count`` to the weighted averages of every window they fall in.
 
@@ -52,7 +52,7 @@ def add_to_averages(
             w3 = weights[shift + number + 3]
             row = number - first
             for q in range(OBSERVABLES):
-                for j in range(LANES):
+                for j in range(lanes):
                     total = averages[w * OBSERVABLES + q, j]
                     total += w0 * buffer[q, row, j]
                     total += w1 * buffer[q, row + 1, j]
@@ -63,25 +63,25 @@ def add_to_averages(
         while number < high:
             weight = weights[shift + number]
             for q in range(OBSERVABLES):
-                for j in range(LANES):
+                for j in range(lanes):
                     averages[w * OBSERVABLES + q, j] += weight * buffer[q, number - first, j]
             number += 1
 
 
 @kernel
-def grow_tangent(buffer: Floats, count: int, running: Floats) -> None:
+def grow_tangent(buffer: Floats, count: int, running: Floats, lanes: int) -> None:
     """Carry the tangent vector through ``count`` bounces, then bring it back to unit size and note the growth.
 
     A bounce stretches by at most about 1 / cos of the angle from the normal: 16 of them cannot overflow.
     """
     for row in range(count):
-        for j in range(LANES):
+        for j in range(lanes):
             s = running[VECTOR_S, j]
             p = running[VECTOR_P, j]
             running[VECTOR_S, j] = buffer[D_SS, row, j] * s + buffer[D_SP, row, j] * p
             running[VECTOR_P, j] = buffer[D_PS, row, j] * s + buffer[D_PP, row, j] * p
             running[PATH, j] += buffer[CHORD, row, j]
-    for j in range(LANES):
+    for j in range(lanes):
         size = abs(running[VECTOR_S, j]) + abs(running[VECTOR_P, j])
         running[GROWTH, j] += log(size)
         running[VECTOR_S, j] /= size
@@ -97,7 +97,8 @@ def absorb(
     weights: Floats,
     averages: Floats,
     running: Floats,
+    lanes: int,
 ) -> None:
     """Feed all indicators with ``count`` bounces, the first of which has number ``first``."""
-    add_to_averages(buffer, count, first, windows, weights, averages)
-    grow_tangent(buffer, count, running)
+    add_to_averages(buffer, count, first, windows, weights, averages, lanes)
+    grow_tangent(buffer, count, running, lanes)

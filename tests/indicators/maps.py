@@ -86,7 +86,7 @@ def run_map(fill: Step, x: np.ndarray, p: np.ndarray, steps: int) -> tuple[list[
             while first < mark:
                 count = min(BUFFER, int(mark) - first)
                 fill(xs, ps, buffer, count)
-                absorb(buffer, count, first, schedule.windows, schedule.weights, block, running)
+                absorb(buffer, count, first, schedule.windows, schedule.weights, block, running, LANES)
                 first += count
             growth[number, lanes] = running[GROWTH]
             path[number, lanes] = running[PATH]
