@@ -107,17 +107,18 @@ def measure_scalar(harmonics: Floats, turns: Floats, p: Floats, horizons: Sequen
     growth = np.zeros((windows.marks.size, turns.size))
     path = np.zeros(turns.size)
     _follow_each(harmonics, turns, p, windows.spans, windows.weights, windows.marks, averages, growth, path)
-    return _read(windows, averages, growth, path)
+    return read_windows(windows, averages, growth, path)
 
 
 def measure_vectorised(harmonics: Floats, turns: Floats, p: Floats, horizons: Sequence[int]) -> dict[str, Floats]:
     """Measure n orbits at once in arrays; arguments and result as of ``measure_scalar``."""
     windows = lay_out_windows(horizons)
     averages, growth, path = _follow_all(harmonics, turns, p, windows)
-    return _read(windows, averages, growth, path)
+    return read_windows(windows, averages, growth, path)
 
 
-def _read(windows: Windows, averages: Floats, growth: Floats, path: Floats) -> dict[str, Floats]:
+def read_windows(windows: Windows, averages: Floats, growth: Floats, path: Floats) -> dict[str, Floats]:
+    """What the measures of this module and of the others return, from sums over bounces."""
     place = {int(mark): number for number, mark in enumerate(windows.marks)}
     scale = (path.mean() / windows.horizons[-1]) if path.size else 1.0
     found: dict[str, list[Floats]] = {

@@ -1,23 +1,23 @@
-"""Speed of the package: the measurement of orbits beside two baselines, and whole sweeps.
+"""Speed of the package: the measurement of orbits beside three baselines, and whole sweeps.
 
 The package and the baselines measure the same orbits of the same tables in one run, taking turns, so that they see
-the same machine.  Processor time counts, the median of the repeats; ratios are of medians: how many times longer the
-baseline takes.
+the same machine.  Processor time counts, the least of the repeats, which other work on the machine disturbs least.
 """
 
 from __future__ import annotations
 
-import statistics
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from functools import partial
+from pathlib import Path
 from typing import Any
 
 import click
 import numpy as np
+from baseline_c import c_targets, measure_in_c
 from baselines import measure_scalar, measure_vectorised
 from bench_scale import many_tables, many_workers, scheduling_alone
-from bench_sweep import compare_workers
+from bench_sweep import compare_memory, compare_workers
 
 from scanner.indicators import orbit_numbers
 from scanner.indicators.blocks import stream_orbits
@@ -29,11 +29,16 @@ from scanner.tables import Table, build_table
 
 TABLES: dict[str, dict[str, Any]] = {
     "ellipse": {"eccentricity": 0.6},
+    "limacon": {"quadratic": 0.15},
     "radial_harmonic 2": {"amplitude": 0.05, "harmonic": 2},
     "radial_harmonic 3": {"amplitude": 0.03, "harmonic": 3},
     "radial_harmonic 4": {"amplitude": 0.02, "harmonic": 4},
-    "limacon": {"quadratic": 0.15},
+    "radial_harmonic 7": {"amplitude": 0.005, "harmonic": 7},
+    "curvature_harmonic 4": {"amplitude": 0.3, "harmonic": 4},
+    "support_harmonic 3": {"eccentricity": 0.3, "amplitude": 0.01, "harmonic": 3, "phase": 0.2},
     "normal_harmonic 4": {"eccentricity": 0.6, "amplitude": 0.01, "harmonic": 4, "phase": 0.0},
+    "normal_harmonic 3": {"eccentricity": 0.6, "amplitude": 0.01, "harmonic": 3, "phase": 0.4},
+    "confocal_harmonic 4": {"eccentricity": 0.6, "amplitude": 0.01, "harmonic": 4, "phase": 1.0},
     "random_harmonic": {
         "eccentricity": 0.5,
         "amplitude": 0.01,
@@ -43,29 +48,47 @@ TABLES: dict[str, dict[str, Any]] = {
     },
 }
 
+C_COLUMNS = {"native": "C", "avx2": "C, AVX2"}
+COLUMNS = ("package", *C_COLUMNS.values(), "NumPy", "scalar")
 
-def interleaved_medians(rivals: dict[str, Callable[[], object]], repeats: int) -> dict[str, float]:
-    """Median processor seconds of each rival over rounds in which each has one turn, after one that warms up."""
-    seconds: dict[str, list[float]] = {name: [] for name in rivals}
+
+def interleaved_least(rivals: dict[str, Callable[[], object]], repeats: int) -> dict[str, float]:
+    """Least processor seconds of each rival over rounds in which each has one turn, after one that warms up."""
+    seconds = dict.fromkeys(rivals, np.inf)
     for number in range(repeats + 1):
         for name, run in rivals.items():
             start = time.process_time()
             run()
             if number > 0:
-                seconds[name].append(time.process_time() - start)
-    return {name: statistics.median(values) for name, values in seconds.items()}
+                seconds[name] = min(seconds[name], time.process_time() - start)
+    return seconds
 
 
 def rivals_on(table: Table, orbits: int, bounces: int) -> dict[str, Callable[[], object]]:
-    """Make the package and the baselines ready to measure the same orbits of a table."""
+    """Make the package and the baselines ready to measure the same orbits of a table: the first pass over them."""
     s, p = section_points(table, seed=1, replicates=1, orbits=orbits)
     turns = np.asarray(table.turns_from_arc(s))
     ends = horizons(bounces)
-    return {
-        "package": partial(orbit_numbers, table, s, p, bounces),
-        "numpy": partial(measure_vectorised, table.harmonics, turns, p, ends),
-        "scalar": partial(measure_scalar, table.harmonics, turns, p, ends),
+    found: dict[str, Callable[[], object]] = {
+        "package": partial(stream_orbits, table.harmonics, turns, p, make_schedule(bounces))
     }
+    for target in c_targets():
+        found[C_COLUMNS[target]] = partial(measure_in_c, table.harmonics, turns, p, ends, target)
+    for name, measure in (("NumPy", measure_vectorised), ("scalar", measure_scalar)):
+        found[name] = partial(measure, table.harmonics, turns, p, ends)
+    return found
+
+
+def measured_rows(per_table: int, bounces: int, repeats: int) -> Iterator[list[str]]:
+    """Rows of the comparison: table, harmonics, nanoseconds a bounce of each rival, and both C over the package."""
+    for name, parameters in TABLES.items():
+        table = build_table(name.split()[0], **parameters)
+        there = int(table.harmonics[:, 1:].any(axis=0).sum())
+        seconds = interleaved_least(rivals_on(table, per_table, bounces), repeats)
+        spent = {rival: least / (per_table * bounces) * 1e9 for rival, least in seconds.items()}
+        cells = [f"{spent[rival]:.0f}" if rival in spent else "-" for rival in COLUMNS]
+        ratios = [f"{spent[c] / spent['package']:.2f}" if c in spent else "-" for c in C_COLUMNS.values()]
+        yield [name, f"{there} of {table.harmonics.shape[1] - 1}", *cells, *ratios]
 
 
 @click.group(invoke_without_command=True)
@@ -78,21 +101,23 @@ def main(context: click.Context) -> None:
 
 @main.command()
 @click.option("--per-table", default=512, show_default=True, help="Orbits per table.")
-@click.option("--bounces", default=8192, show_default=True, help="Bounces per orbit.")
-@click.option("--repeats", default=3, show_default=True, help="Rounds that count.")
-def orbits(per_table: int, bounces: int, repeats: int) -> None:
-    """Compare with a vectorised NumPy version and a plain compiled loop: nanoseconds per bounce on one core."""
-    print(f"{per_table} orbits of {bounces} bounces, median of {repeats}; ns per bounce on one core")
-    print(f"{'table':<20}{'K':>4}{'package':>10}{'NumPy':>10}{'scalar':>10}{'NumPy/package':>16}{'scalar/package':>16}")
-    for name, parameters in TABLES.items():
-        table = build_table(name.split()[0], **parameters)
-        seconds = interleaved_medians(rivals_on(table, per_table, bounces), repeats)
-        package, vectorised, scalar = (seconds[rival] / (per_table * bounces) * 1e9 for rival in seconds)
-        print(
-            f"{name:<20}{table.harmonics.shape[1] - 1:>4}{package:>10.1f}{vectorised:>10.1f}{scalar:>10.1f}"
-            f"{vectorised / package:>16.1f}{scalar / package:>16.1f}",
-            flush=True,
-        )
+@click.option("--bounces", default=1024, show_default=True, help="Bounces per orbit.")
+@click.option("--repeats", default=7, show_default=True, help="Rounds that count.")
+@click.option("--to", type=click.Path(dir_okay=False, path_type=Path), help="Write the table there, as Markdown.")
+def orbits(per_table: int, bounces: int, repeats: int, to: Path | None) -> None:
+    """Compare with C, NumPy and a plain compiled loop: nanoseconds per bounce on one core."""
+    if not c_targets():
+        print("no gcc or clang here: the columns of the baseline in C stay empty")
+    print(f"{per_table} orbits of {bounces} bounces, least of {repeats}; ns per bounce on one core")
+    titles = ["table", "harmonics", *COLUMNS, "C ratio", "AVX2 ratio"]
+    print(f"{titles[0]:<22}{titles[1]:>12}" + "".join(f"{title:>12}" for title in titles[2:]))
+    lines = [f"| {' | '.join(titles)} |", "|---|" + "---:|" * (len(titles) - 1)]
+    for row in measured_rows(per_table, bounces, repeats):
+        print(f"{row[0]:<22}{row[1]:>12}" + "".join(f"{cell:>12}" for cell in row[2:]), flush=True)
+        lines.append(f"| {' | '.join(row)} |")
+    if to is not None:
+        to.write_text("\n".join(lines) + "\n")
+        print(f"written to {to}")
 
 
 @main.command()
@@ -101,7 +126,7 @@ def orbits(per_table: int, bounces: int, repeats: int) -> None:
 @click.option("--repeats", default=5, show_default=True, help="Rounds that count.")
 def extras(per_table: int, bounces: int, repeats: int) -> None:
     """Time what comes on top of the first pass over the orbits: islands, periodic orbits."""
-    print(f"{per_table} orbits of {bounces} bounces, median of {repeats}; ns per bounce on one core")
+    print(f"{per_table} orbits of {bounces} bounces, least of {repeats}; ns per bounce on one core")
     print(f"{'table':<20}{'islands':>10}{'first pass':>12}{'whole':>10}{'added':>10}{'periods <= 8':>16}")
     schedule = make_schedule(bounces)
     for name in ("ellipse", "radial_harmonic 2", "limacon", "normal_harmonic 4"):
@@ -114,7 +139,7 @@ def extras(per_table: int, bounces: int, repeats: int) -> None:
             "whole": partial(orbit_numbers, table, s, p, bounces),
             "resonances": partial(survey_resonances, table, 8),
         }
-        seconds = interleaved_medians(rivals, repeats)
+        seconds = interleaved_least(rivals, repeats)
         first, whole = (seconds[rival] / (per_table * bounces) * 1e9 for rival in ("first", "whole"))
         print(
             f"{name:<20}{inside:>10.0%}{first:>12.1f}{whole:>10.1f}{whole / first - 1:>10.0%}"
@@ -127,8 +152,9 @@ def extras(per_table: int, bounces: int, repeats: int) -> None:
 @click.option("--tables", default=64, show_default=True, help="Tables of 1024 orbits.")
 @click.option("--bounces", default=16384, show_default=True, help="Bounces per orbit.")
 def sweep(tables: int, bounces: int) -> None:
-    """Time one study with one worker and with two: speed, what comes on top of the bounces, memory."""
+    """Time one study with one worker and with two: speed, what comes on top of the bounces, memory by tables."""
     compare_workers(tables, bounces)
+    compare_memory(max(tables // 4, 1))
 
 
 @main.command()

@@ -29,10 +29,12 @@ harmonic = 2
 amplitude = {{ start = 0.0, stop = 0.1, count = {tables} }}
 
 [orbits]
-per_table = 1024
+per_table = {orbits}
 bounces = {bounces}
 replicates = 8
 """
+FEW_BOUNCES = 256
+"""Bounces of the runs that look at memory alone."""
 LONG_TASK = 10.0
 """Seconds of a task in a study of some length."""
 
@@ -105,12 +107,23 @@ def writing_seconds(study: Path, store: Path, repeats: int = 5) -> float:
     return statistics.median(seconds)
 
 
+def compare_memory(tables: int) -> None:
+    """Run studies of ever more tables and print the most memory that a process had."""
+    with tempfile.TemporaryDirectory() as name:
+        folder = Path(name)
+        for number in (tables, 8 * tables, 64 * tables):
+            study = folder / f"{number}.toml"
+            study.write_text(STUDY.format(tables=number, orbits=64, bounces=FEW_BOUNCES))
+            run = run_once(study, folder / f"{number}.zarr", workers=1)
+            print(f"{number:>8} tables of 64 orbits: at most {run.memory / 1e6:.0f} MB a process, {run.whole:.1f} s")
+
+
 def compare_workers(tables: int, bounces: int) -> None:
     """Run one study with one worker and with two and print what it cost."""
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
         study = folder / "study.toml"
-        study.write_text(STUDY.format(tables=tables, bounces=bounces))
+        study.write_text(STUDY.format(tables=tables, orbits=1024, bounces=bounces))
         writing = writing_seconds(study, folder / "written.zarr")
         one, two = (run_once(study, folder / f"{workers}.zarr", workers) for workers in (1, 2))
 

@@ -1,7 +1,8 @@
-"""The two baselines against closed forms, and against each other."""
+"""The baselines against closed forms, and against each other."""
 
 import math
 
+import baseline_c
 import baselines
 import numpy as np
 import pytest
@@ -16,6 +17,11 @@ from scanner.tables import build_table
 MEASURES = [
     pytest.param(baselines.measure_scalar, id="scalar"),
     pytest.param(baselines.measure_vectorised, id="vectorised"),
+    pytest.param(
+        baseline_c.measure_in_c,
+        id="c",
+        marks=pytest.mark.skipif(not baseline_c.c_targets(), reason="no C compiler to make the baseline with"),
+    ),
 ]
 HORIZONS = (256, 512, 1024, 2048)
 
@@ -80,12 +86,13 @@ def test_exponent_of_the_major_axis(measure):
     np.testing.assert_allclose(found["mean_chord"], 2.0, rtol=1e-9)
 
 
-def test_both_agree_on_a_table_with_chaos():
+@pytest.mark.parametrize("measure", MEASURES[1:])
+def test_they_agree_on_a_table_with_chaos(measure):
     """Same work: over a few bounces rounding has no time to grow, and all numbers agree."""
     rng = np.random.default_rng(1)
     turns, p = rng.random(200), rng.uniform(-0.999, 0.999, 200)
     first = baselines.measure_scalar(limacon(0.2), turns, p, (8, 16))
-    second = baselines.measure_vectorised(limacon(0.2), turns, p, (8, 16))
+    second = measure(limacon(0.2), turns, p, (8, 16))
     assert first.keys() == second.keys()
     # Rounding grows by at most e a bounce here: 1e-16 e^16 = 1e-9.
     for name in ("rotation_number", "lyapunov_per_bounce", "mean_chord"):
@@ -107,6 +114,16 @@ def test_mean_chord_of_a_section():
     assert np.average(chords, weights=arc) == pytest.approx(exact, rel=2e-3)
 
 
+@pytest.mark.skipif(len(baseline_c.c_targets()) < 2, reason="no C compiler, or a processor without AVX2")
+def test_both_builds_in_c_agree():
+    """They differ in the rounding of products alone."""
+    rng = np.random.default_rng(2)
+    turns, p = rng.random(100), rng.uniform(-0.999, 0.999, 100)
+    first, second = (baseline_c.measure_in_c(limacon(0.2), turns, p, (8, 16), target) for target in baseline_c.TARGETS)
+    # As above: 1e-16 e^16 = 1e-9.
+    np.testing.assert_allclose(first["rotation_number"], second["rotation_number"], rtol=0, atol=1e-8)
+
+
 @pytest.mark.parametrize(
     ("family", "parameters"),
     [
@@ -116,13 +133,14 @@ def test_mean_chord_of_a_section():
         ("normal_harmonic", {"eccentricity": 0.6, "amplitude": 0.003, "harmonic": 4, "phase": 0.5}),
     ],
 )
-def test_package_agrees_with_the_plain_loop(family, parameters):
-    """The package's lanes, polynomials and closed forms against libm, Newton and one orbit at a time."""
+@pytest.mark.parametrize("measure", [MEASURES[0], MEASURES[2]])
+def test_package_agrees_with_the_baselines(measure, family, parameters):
+    """The package's lanes, polynomials and closed forms against libm, Newton and one orbit at a time, and against C."""
     table = build_table(family, **parameters)
     bounces = 64
     s, p = section_points(table, seed=3, replicates=1, orbits=128)
     mine = orbit_numbers(table, s, p, bounces)
-    plain = baselines.measure_scalar(table.harmonics, table.turns_from_arc(s), p, horizons(bounces))
+    plain = measure(table.harmonics, table.turns_from_arc(s), p, horizons(bounces))
     # Rounding, about 1e-15 a bounce, grows by about e^0.1 a bounce at most on these: to 1e-12 after 64, with a
     # thousandfold margin for passages near unstable orbits.
     calm = plain["lyapunov_per_bounce"][-1] < 0.1
