@@ -14,18 +14,21 @@ from typing import Any
 
 import click
 import numpy as np
+import numpy.typing as npt
 from baseline_c import c_targets, measure_in_c
 from baselines import measure_scalar, measure_vectorised
 from bench_scale import many_tables, many_workers, scheduling_alone
 from bench_sweep import compare_memory, compare_workers
 
 from scanner.indicators import orbit_numbers
-from scanner.indicators.blocks import stream_orbits
+from scanner.indicators.blocks import Batch
 from scanner.indicators.schedule import horizons, make_schedule
 from scanner.measure import section_points
 from scanner.measure.resonances import survey_resonances
 from scanner.quantities import REGULAR_LIBRATIONAL
 from scanner.tables import Table, build_table
+
+Floats = npt.NDArray[np.float64]
 
 TABLES: dict[str, dict[str, Any]] = {
     "ellipse": {"eccentricity": 0.6},
@@ -64,14 +67,20 @@ def interleaved_least(rivals: dict[str, Callable[[], object]], repeats: int) -> 
     return seconds
 
 
+def follow_all(table: Table, turns: Floats, p: Floats, bounces: int) -> None:
+    """Follow orbits to the last horizon with all their averages: what the baselines do, without any verdict."""
+    schedule = make_schedule(bounces, adaptive=False)
+    batch = Batch(table.harmonics, turns, p, schedule)
+    for number in range(len(schedule.horizons)):
+        batch.advance(number)
+
+
 def rivals_on(table: Table, orbits: int, bounces: int) -> dict[str, Callable[[], object]]:
     """Make the package and the baselines ready to measure the same orbits of a table: the first pass over them."""
     s, p = section_points(table, seed=1, replicates=1, orbits=orbits)
     turns = np.asarray(table.turns_from_arc(s))
     ends = horizons(bounces)
-    found: dict[str, Callable[[], object]] = {
-        "package": partial(stream_orbits, table.harmonics, turns, p, make_schedule(bounces))
-    }
+    found: dict[str, Callable[[], object]] = {"package": partial(follow_all, table, turns, p, bounces)}
     for target in c_targets():
         found[C_COLUMNS[target]] = partial(measure_in_c, table.harmonics, turns, p, ends, target)
     for name, measure in (("NumPy", measure_vectorised), ("scalar", measure_scalar)):
@@ -125,27 +134,31 @@ def orbits(per_table: int, bounces: int, repeats: int, to: Path | None) -> None:
 @click.option("--bounces", default=8192, show_default=True, help="Bounces per orbit.")
 @click.option("--repeats", default=5, show_default=True, help="Rounds that count.")
 def extras(per_table: int, bounces: int, repeats: int) -> None:
-    """Time what comes on top of the first pass over the orbits: islands, periodic orbits."""
-    print(f"{per_table} orbits of {bounces} bounces, least of {repeats}; ns per bounce on one core")
-    print(f"{'table':<20}{'islands':>10}{'first pass':>12}{'whole':>10}{'added':>10}{'periods <= 8':>16}")
-    schedule = make_schedule(bounces)
-    for name in ("ellipse", "radial_harmonic 2", "limacon", "normal_harmonic 4"):
+    """Time what orbits that are left early save, at the same error, and what periodic orbits cost."""
+    print(f"{per_table} orbits of up to {bounces} bounces, least of {repeats}; seconds a table on one core")
+    titles = ("islands", "all", "left early", "ratio", "bounces", "ns each", "periods <= 8")
+    print(f"{'table':<22}" + "".join(f"{title:>13}" for title in titles))
+    for name in ("ellipse", "radial_harmonic 2", "radial_harmonic 3", "limacon", "normal_harmonic 4"):
         table = build_table(name.split()[0], **TABLES[name])
         s, p = section_points(table, seed=1, replicates=1, orbits=per_table)
-        turns = np.asarray(table.turns_from_arc(s))
-        inside = np.mean(orbit_numbers(table, s, p, bounces)["verdict"] == REGULAR_LIBRATIONAL)
+        found = orbit_numbers(table, s, p, bounces)
         rivals: dict[str, Callable[[], object]] = {
-            "first": partial(stream_orbits, table.harmonics, turns, p, schedule),
-            "whole": partial(orbit_numbers, table, s, p, bounces),
+            "all": partial(orbit_numbers, table, s, p, bounces, adaptive=False),
+            "early": partial(orbit_numbers, table, s, p, bounces),
             "resonances": partial(survey_resonances, table, 8),
         }
         seconds = interleaved_least(rivals, repeats)
-        first, whole = (seconds[rival] / (per_table * bounces) * 1e9 for rival in ("first", "whole"))
-        print(
-            f"{name:<20}{inside:>10.0%}{first:>12.1f}{whole:>10.1f}{whole / first - 1:>10.0%}"
-            f"{seconds['resonances'] * 1e3:>13.1f} ms",
-            flush=True,
+        used = np.asarray(found["bounces_used"])
+        cells = (
+            f"{np.mean(found['verdict'] == REGULAR_LIBRATIONAL):.0%}",
+            f"{seconds['all']:.3f}",
+            f"{seconds['early']:.3f}",
+            f"{seconds['all'] / seconds['early']:.1f}",
+            f"{used.mean():.0f}",
+            f"{seconds['early'] / used.sum() * 1e9:.0f}",
+            f"{seconds['resonances'] * 1e3:.1f} ms",
         )
+        print(f"{name:<22}" + "".join(f"{cell:>13}" for cell in cells), flush=True)
 
 
 @main.command()
