@@ -89,6 +89,8 @@ family = "{{ family }}"
 per_table = 1024              # initial conditions, evenly spread over the section: more of them for smaller errors
 bounces = 8192                # the horizon: more of them where the summary's drift is larger than its error
 replicates = 8                # independent scramblings of the initial conditions: the error bars
+# target_error = 0.005        # go on, with twice as many orbits in all, until the regular area is known to this error
+# most_per_table = 16384      #   or up to this many
 
 # [resonances]                # periodic orbits up to this period
 # period_max = 8
