@@ -54,7 +54,7 @@ HARMS = {
     "a broken link": put_broken_link,
 }
 CHARTER = f"{LEDGER}/charter.json"
-METADATA = {"amplitude/c.0", "orbits/s0/zarr.json", "orbits/zarr.json", "zarr.json"}
+METADATA = ("amplitude/c.0", "orbits/s0/zarr.json", "orbits/zarr.json", "zarr.json")
 FILES = ["table_status/c.1.0", "area/c.0.0", "orbits/s0/c.2.0.0", f"{LEDGER}/receipts/000003.json", *METADATA, CHARTER]
 TASKS = 5
 
