@@ -77,13 +77,14 @@ seed = 1                      # another whole number draws other initial conditi
 
 [table]                       # each parameter is a number or swept; swept ones make a grid, in the order written
 # {{ formula }}
-# convex {{ convexity }}; tables beyond are recorded as such and cost nothing
+# convex {{ convexity }}
 family = "{{ family }}"
 {%- for name, value, meaning in entries %}
 # {{ name }}: {{ meaning }}
 {{ name }} = {{ value }}
 {%- endfor %}
-# a range is { start = ..., stop = ..., count = ... }, with spacing = "log" if wanted; a list is { values = [...] }
+# Tables that are not convex are recorded as such and cost nothing.
+# A range is { start = ..., stop = ..., count = ... }, with spacing = "log" if wanted; a list is { values = [...] }
 
 [orbits]
 per_table = 1024              # initial conditions, evenly spread over the section: more of them for smaller errors
