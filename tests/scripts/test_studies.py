@@ -159,7 +159,7 @@ def test_the_outline_is_what_its_script_draws():
     np.testing.assert_allclose(points, trace_outline().T, rtol=0.0, atol=0.0101)  # the last digit may round either way
 
 
-@pytest.mark.parametrize("name", [path.stem for path in STUDIES.glob("*.py") if path.stem != "study_tools"])
+@pytest.mark.parametrize("name", [path.stem for path in sorted(STUDIES.glob("*.py")) if path.stem != "study_tools"])
 def test_each_study_starts_as_a_notebook(name, monkeypatch):
     """Its cells run one by one, a text first; the last one takes its example for the command line of the kernel."""
     monkeypatch.syspath_prepend(str(STUDIES))
