@@ -81,8 +81,8 @@ def test_bisection_finds_what_newton_finds() -> None:
     state, highest = np.empty((STATE_ROWS, LANES)), harmonics.shape[1] - 1
     powers, quotient = np.empty((2 * highest + 2, LANES)), np.empty((2 * highest + 4, LANES))
     start_block(harmonics, turns, p, state, powers)
-    aim(state)
-    divide_out_start(harmonics, state, powers, quotient)
+    aim(state, LANES)
+    divide_out_start(harmonics, state, powers, quotient, LANES)
     fast = follow(harmonics, turns, p, 1)[1]
     for lane in range(LANES):
         # The estimate handed over lies outside (0, pi), so that nothing of it can be kept.
