@@ -225,16 +225,23 @@ def reflect(state: Floats, buffer: Floats, row: int, lanes: int) -> None:
 
 @inlined
 def bounce_lanes(
-    harmonics: Floats, state: Floats, powers: Floats, quotient: Floats, buffer: Floats, count: int, lanes: int
+    harmonics: Floats,
+    plan: Plan,
+    state: Floats,
+    powers: Floats,
+    quotient: Floats,
+    terms: Terms,
+    gaps: Gaps,
+    buffer: Floats,
+    count: int,
+    lanes: int,
 ) -> None:
     """Bounce every orbit of a block ``count`` times (at most BUFFER) and fill as many rows of the buffer.
 
-    Only the first ``lanes`` orbits are followed, a multiple of 16.  The arrays must be made in the kernel this is copied
-    into: then their rows have a length that the compiler knows and cannot overlap, and the loops over lanes become
-    vector instructions.
+    Only the first ``lanes`` orbits are followed, a multiple of 16; ``fill_powers`` must have gone before.  The arrays
+    must be made in the kernel this is copied into: then their rows have a length that the compiler knows and cannot
+    overlap, and the loops over lanes become vector instructions.
     """
-    plan, terms, gaps = prepare_series(harmonics)
-    fill_powers(plan, state, powers, terms, gaps, lanes)
     for row in range(count):
         aim(state, lanes)
         find_half_advance(harmonics, plan, state, powers, quotient, terms, gaps, lanes)
@@ -272,7 +279,9 @@ def bounce_block(harmonics: Floats, state: Floats, powers: Floats, buffer: Float
     copy_rows(powers, turning)
     quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
     seen = np.empty((BUFFER_ROWS, BUFFER, LANES))
-    bounce_lanes(harmonics, here, turning, quotient, seen, count, LANES)
+    plan, terms, gaps = prepare_series(harmonics)
+    fill_powers(plan, here, turning, terms, gaps, LANES)
+    bounce_lanes(harmonics, plan, here, turning, quotient, terms, gaps, seen, count, LANES)
     copy_rows(here, state)
     copy_rows(turning, powers)
     for kind in range(BUFFER_ROWS):

@@ -21,7 +21,8 @@ from scanner.bounce.lanes import (
     STATE_ROWS,
     fill_up,
 )
-from scanner.bounce.orbits import bounce_lanes, start_block
+from scanner.bounce.orbits import bounce_lanes, fill_powers, start_block
+from scanner.bounce.series import prepare_series, same
 from scanner.compiled import kernel
 from scanner.elementary import angle_array
 from scanner.indicators.schedule import Schedule
@@ -59,9 +60,9 @@ class Streams:
 
 @dataclass(frozen=True)
 class Recording:
-    """Advance (turns) and p of every bounce of a stage from number ``first`` on, shape (bounces, 2, columns).
+    """Advance (turns) and p of every bounce of a stage from number ``first`` on, shape (blocks, bounces, 2, LANES).
 
-    ``columns`` has the column of each orbit; it means nothing for those that had been left before.
+    ``columns`` has the place of each orbit, block after block; it means nothing for those that had been left before.
     """
 
     first: int
@@ -116,7 +117,7 @@ def follow_blocks(
     """Follow every block from bounce ``start`` to the last of ``marks``.
 
     The arrays from ``state`` on have a column an orbit and are updated; ``growth`` and ``path`` get a row a mark,
-    ``record`` (bounces, 2, orbits) the advance and p of the bounces from ``record_from`` on.
+    ``record`` (blocks, bounces, 2, LANES) the advance and p of the bounces from ``record_from`` on.
     """
     here = np.empty((STATE_ROWS, LANES))
     turning = np.empty((2 * harmonics.shape[1], LANES))
@@ -124,9 +125,12 @@ def follow_blocks(
     buffer = np.zeros((BUFFER_ROWS, BUFFER, LANES))
     tangent = np.empty((RUNNING_ROWS, LANES))
     sums = np.empty((averages.shape[0], LANES))
-    for block in range(0, state.shape[1], LANES):
+    plan, terms, gaps = prepare_series(harmonics)
+    for number in range(record.shape[0]):
+        block = number * LANES
         take_columns(state, block, here)
         take_columns(powers, block, turning)
+        fill_powers(plan, here, turning, terms, gaps, LANES)
         take_columns(running, block, tangent)
         take_columns(averages, block, sums)
         lanes = GRAIN * min(LANES // GRAIN, (size - block + GRAIN - 1) // GRAIN)
@@ -134,12 +138,12 @@ def follow_blocks(
         for mark in range(marks.shape[0]):
             while first < marks[mark]:
                 count = min(BUFFER, marks[mark] - first)
-                bounce_lanes(harmonics, here, turning, quotient, buffer, count, lanes)
+                bounce_lanes(harmonics, plan, here, turning, quotient, terms, gaps, buffer, count, lanes)
                 absorb(buffer, count, first, windows, weights, sums, tangent, lanes)
                 for row in range(max(record_from - first, 0), count):
                     for j in range(LANES):
-                        record[first + row - record_from, 0, block + j] = buffer[ADVANCE, row, j]
-                        record[first + row - record_from, 1, block + j] = buffer[P_AFTER, row, j]
+                        record[number, first + row - record_from, 0, j] = same(buffer[ADVANCE, row, j], tangent[0, j])
+                        record[number, first + row - record_from, 1, j] = same(buffer[P_AFTER, row, j], tangent[0, j])
                 first += count
             for j in range(LANES):
                 growth[mark, block + j] = tangent[GROWTH, j]
@@ -193,7 +197,7 @@ class Batch:
         stage = np.flatnonzero((schedule.marks > start) & (schedule.marks <= end))
         among = slice(stage[0], stage[-1] + 1)
         record_from = max(start, end - RECORDED)
-        record = np.empty((end - record_from, 2, self._state.shape[1]))
+        record = np.empty((self._state.shape[1] // LANES, end - record_from, 2, LANES))
         follow_blocks(
             self.harmonics,
             schedule.windows,
@@ -212,7 +216,7 @@ class Batch:
         )
         columns = np.zeros(self.orbits[-1] + 1, dtype=np.int64)
         columns[self.orbits] = np.arange(self.orbits.size)
-        earlier = [part for part in self._recordings if part.first + len(part.rows) > end - RECORDED]
+        earlier = [part for part in self._recordings if part.first + part.rows.shape[1] > end - RECORDED]
         self._recordings = [*earlier, Recording(record_from, record, columns)]
         size = self.orbits.size
         return Streams(

@@ -12,6 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
+from scanner.bounce.lanes import LANES
 from scanner.bounce.return_map import ReturnMap, find_fixed_points
 from scanner.compiled import kernel
 from scanner.elementary import angle_turns
@@ -83,16 +84,18 @@ def pick_returns(
     ``waits`` counts down to the next return, ``places`` is where it goes, -1 before the first; ``travelled`` is the
     advance since the first return.  All the arrays but the first four are updated.
     """
-    for row in range(rows.shape[0]):
+    for row in range(rows.shape[1]):
         for j in range(columns.size):
+            block = columns[j] // LANES
+            lane = columns[j] % LANES
             if places[j] >= 0:
-                travelled[j] += rows[row, 0, columns[j]]
+                travelled[j] += rows[block, row, 0, lane]
             waits[j] -= 1
             if waits[j] == 0:
                 waits[j] = periods[j]
                 places[j] += 1
                 shifts[j, places[j]] = travelled[j] - rotations[j] * places[j]
-                returned_p[j, places[j]] = rows[row, 1, columns[j]]
+                returned_p[j, places[j]] = rows[block, row, 1, lane]
 
 
 def wind_orbits(
@@ -111,7 +114,7 @@ def wind_orbits(
     periods, rotations
         q and p of each orbit's island, shape (n,).
     """
-    length = sum(len(part.rows) for part in recordings)
+    length = sum(part.rows.shape[1] for part in recordings)
     shifts = np.empty((turns.size, length // 2 + 1))
     returned_p = np.empty((turns.size, length // 2 + 1))
     # A whole number of q-fold maps from the start of the orbit, so that the centre is that of the start's part.
