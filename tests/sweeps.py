@@ -19,7 +19,7 @@ amplitude = { start = 0.0, stop = 0.24, count = 5 }
 harmonic = { values = [2, 3] }
 [orbits]
 per_table = 256
-bounces = 8192
+bounces = 32768
 replicates = 4
 """
 """Ten tables, four of them not convex, in five tasks of some tens of milliseconds."""

@@ -29,7 +29,7 @@ def test_summary_prints_aligned_columns(call, store):
     assert heading.split()[:2] == ["amplitude", "status"]
     assert len(rows) == 3
     assert {len(row) for row in rows} == {len(heading)}
-    assert rows[0].split()[:5] == ["0", "done", "1.0000", "±", "0.0000"]
+    assert rows[0].split()[:5] == ["0", "done", "1.0000", "±", "0.0156"]
     assert rows[2].split() == ["0.3", "not", "convex", *["-"] * 6]
     assert "3 tables: 2 done, 1 not convex" in output
 
@@ -100,7 +100,7 @@ def test_narrow_terminals_lose_columns_not_digits(call, store, terminal, width):
     _, output, _ = call("summary", store)
     table = output.split("\n\n")[1].splitlines()
     assert len(table[0]) <= width
-    assert table[1].split()[:5] == ["0", "done", "1.0000", "±", "0.0000"]
+    assert table[1].split()[:5] == ["0", "done", "1.0000", "±", "0.0156"]
     assert "no room for diffusion" in output
 
 
@@ -159,7 +159,8 @@ def test_figure_follows_orbits_anew(call, store, tmp_path):
     arguments = ["figure", store, "--to", target, "--select", "amplitude=0.05", "--bounces"]
     status, _, complaint = call(*arguments, 100_000)
     assert status == 2
-    assert "ask for 31250 bounces or fewer" in complaint
+    # 64 orbits and their images: eight of each on a table with two mirror lines.
+    assert f"ask for {2_000_000 // (64 * 8)} bounces or fewer" in complaint
     assert call(*arguments, 20)[0] == 0
 
 

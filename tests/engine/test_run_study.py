@@ -77,7 +77,7 @@ def test_tables_in_rounds_are_the_same_in_any_order_and_carried_on(client, tmp_p
 
 
 def test_a_split_table_is_summed_up_after_its_orbits(client, tmp_path):
-    study = grid(amplitude="0.05", harmonic="2", per_table="4096", bounces="4096")
+    study = grid(amplitude="0.05", harmonic="2", per_table="4096", bounces="16384")
     report = scanner.run_study(study, tmp_path / "one.zarr", client=client, progress=False)
     fill(tmp_path / "here.zarr", study)
     assert sweep_progress(tmp_path / "one.zarr").tasks > 2

@@ -44,7 +44,7 @@ def test_coordinates_are_those_of_the_study(empty):
     with scanner.open_sweep(empty) as tree:
         assert tree["amplitude"].values.tolist() == pytest.approx([0, 0.06, 0.12, 0.18, 0.24], abs=1e-15)
         assert tree["harmonic"].values.tolist() == [2, 3]
-        assert tree["horizon"].values.tolist() == [512, 1024, 2048, 4096, 8192]
+        assert tree["horizon"].values.tolist() == [512 << doubling for doubling in range(7)]
         assert tree["p_bin"].values[[0, -1]].tolist() == pytest.approx([-0.95, 0.95], abs=1e-15)
         assert tree["period"].values[[0, -1]].tolist() == [2, 64]
         assert tree["direction"].values.tolist() == ["forward", "backward"]

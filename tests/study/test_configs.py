@@ -22,7 +22,7 @@ def test_config_is_estimated(path):
     # Orbits are left early: a quarter of the bounces on average, and less where there are more of them.
     assert estimate.bounces < 0.35 * estimate.orbits * plan.study.orbits.bounces
     assert estimate.not_convex < estimate.tables / 2
-    assert len(plan.tasks) >= 64
+    assert len(plan.tasks) >= min(64, plan.table_count)
     assert path.read_text().startswith("# ")
 
 
