@@ -55,7 +55,7 @@ def test_a_study_shows_its_first_and_last_table():
     assert points[0].shape == points[1].shape
     assert last.get("stroke-dasharray")  # amplitude 0.24 of harmonic 3 is not convex
     assert facts["amplitude"] == "0, 0.06, 0.12, 0.18, 0.24"
-    assert facts["orbits"] == "256 a table, of 8192 bounces, in 4 replicates"
+    assert facts["orbits"] == "256 a table, of 32768 bounces, in 4 replicates"
 
 
 def test_what_others_wrote_is_escaped():
@@ -77,7 +77,7 @@ def test_a_study_whose_tables_cannot_be_built_still_shows_its_facts():
 def test_a_study_is_one_line():
     assert repr(grid()) == (
         "<Study 'Grid': radial_harmonic, amplitude: 0, 0.06, 0.12, 0.18, 0.24, harmonic: 2, 3; "
-        "256 orbits of 8192 bounces, 4 replicates, seed 5>"
+        "256 orbits of 32768 bounces, 4 replicates, seed 5>"
     )
 
 

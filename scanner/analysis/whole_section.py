@@ -39,7 +39,9 @@ def whole_section(tree: xr.DataTree) -> xr.Dataset:
         raise ScannerError(f"a section is that of one table: select a value of {', '.join(names)} first")
     if "symmetry_order" not in tree:  # of a version that sampled all of the section
         return tree[ORBITS].to_dataset()
-    return orbit_images(tree[ORBITS].to_dataset(), int(tree["symmetry_order"].item()), float(tree["mirror_s"].item()))
+    order = float(tree["symmetry_order"].item())
+    # A table without numbers has no orbits that need images.
+    return orbit_images(tree[ORBITS].to_dataset(), int(order) if order > 0 else 1, float(tree["mirror_s"].item()))
 
 
 def orbit_images(orbits: xr.Dataset, symmetry_order: int, mirror_s: float = math.nan) -> xr.Dataset:
