@@ -79,7 +79,7 @@ def test_tables_get_as_many_rounds_as_their_error_takes(in_rounds):
     assert len({used[place] for place in convex}) > 1
     for place in convex:
         assert used[place] == 512 or stderr[place] <= 0.03
-        share = used[place] // 4
+        share = int(used[place]) // 4
         assert (verdict[place][:, :share] != PENDING).all()
         assert (verdict[place][:, share:] == PENDING).all()
     assert (
