@@ -35,8 +35,9 @@ def jobs(slurm):
 def test_a_job_that_is_cancelled_is_replaced(slurm, undisturbed, tmp_path):
     study = write_study(tmp_path, RESOURCES)
     impatient = {"DASK_DISTRIBUTED__DEPLOY__LOST_WORKER_TIMEOUT": "1s"}
-    sweep = Sweep(study, tmp_path / "slow.zarr", "--yes", seconds_a_table=0.1, **slurm, **impatient)
+    sweep = Sweep(study, tmp_path / "slow.zarr", "--yes", seconds_a_table=0.2, **slurm, **impatient)
     sweep.await_receipts(1)
+    wait_until(lambda: sweep.log().count("has joined") == 2)
     first = jobs(slurm)
     assert len(first) == 2
     ask(slurm, "scancel", first[0])
