@@ -1,6 +1,7 @@
 import signal
 from contextlib import contextmanager
 
+import numpy as np
 import pytest
 from distributed import Client, LocalCluster
 from sweeps import everything, fill, grid, results
@@ -71,9 +72,11 @@ def test_tables_in_rounds_are_the_same_in_any_order_and_carried_on(client, tmp_p
     assert sweep_progress(tmp_path / "grid.zarr").orbits_settled == 10 * 1024
     with scanner.open_sweep(tmp_path / "grid.zarr") as tree:
         used = tree["orbits_used"].values
-        assert set(used.ravel()) > {0}
-        assert report.bounces <= used.sum() * 256
-        assert ((tree["orbits/verdict"] != 0).sum("orbit").values == used).all()
+        # Four of the ten tables are not convex, and the others take different numbers of rounds.
+        assert np.isnan(used).sum() == 4
+        assert len(np.unique(used[np.isfinite(used)])) > 1
+        assert report.bounces <= np.nansum(used) * 256
+        assert ((tree["orbits/verdict"] != 0).sum("orbit").values == np.nan_to_num(used)).all()
 
 
 def test_a_split_table_is_summed_up_after_its_orbits(client, tmp_path):
