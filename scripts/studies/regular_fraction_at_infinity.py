@@ -19,14 +19,16 @@ from study_tools import DoneTable, answer, done_tables, open_selected, print_row
 from scanner.quantities import REGULAR_LIBRATIONAL, REGULAR_ROTATIONAL, UNDECIDED
 from scanner.statistics import EXPONENT_RANGE, extrapolate_fraction, verdict_fractions
 
+LATE = 4
+"""Horizons that count, from an eighth of the bounces on: before, orbits are found out that do not stick at all."""
+
 
 # %%
 def row_of(table: DoneTable, codes: set[int], section: bool, exponents: tuple[float, float]) -> dict[str, object]:
     """Extrapolate one table."""
-    fractions = verdict_fractions(
-        table.orbits["verdict_by_horizon"].values, codes, table.replicates, None if section else table.chords
-    )
-    found = extrapolate_fraction(table.root["horizon"].values, fractions, exponents=exponents)
+    verdicts = table.orbits["verdict_by_horizon"].values[:, -LATE:]
+    fractions = verdict_fractions(verdicts, codes, table.replicates, None if section else table.chords)
+    found = extrapolate_fraction(table.root["horizon"].values[-LATE:], fractions, exponents=exponents)
     return {
         **table.parameters,
         "last": found.last,
