@@ -102,6 +102,7 @@ def _curve(name: str, long_name: str) -> Quantity:
 _SANTALO = "Santalo, Integral Geometry and Geometric Probability, 1976; Chernov, J. Stat. Phys. 88:1, 1997"
 _WEIGHTED = "Das, Saiki, Sander and Yorke, Nonlinearity 30:4111, 2017"
 _LASKAR = "Laskar, Icarus 88:266, 1990"
+_HANN = "Laskar, Frequency map analysis and quasiperiodic decompositions, 2003"
 _BERRY_ROBNIK = "Berry and Robnik, J. Phys. A 17:2413, 1984"
 
 _BIRKHOFF = "Birkhoff, Acta Math. 50:359, 1927"
@@ -167,8 +168,10 @@ _QUANTITIES = (
     _orbit("s0", "arc length at the start as a fraction of the perimeter"),
     _orbit("p0", "sine of the angle from the inward normal at the start"),
     Quantity("bounces_used", ORBITS, ("orbit",), "int64", "1", "bounces after which it was clear what the orbit is"),
-    _orbit("lyapunov_per_bounce", "finite-time Lyapunov exponent per bounce"),
-    _orbit("rotation_number", "mean advance along the boundary per bounce, in perimeters", reference=_WEIGHTED),
+    _orbit(
+        "lyapunov_per_bounce", "finite-time Lyapunov exponent per bounce, of all chaotic orbits over as many bounces"
+    ),
+    _orbit("rotation_number", "mean advance along the boundary per bounce, in perimeters", reference=_HANN),
     _orbit(
         "frequency_diffusion",
         "log10 of the change of the leading frequency between two halves: rotation number, or winding in an island",
@@ -192,9 +195,7 @@ _QUANTITIES = (
     ),
     Quantity("island_period", ORBITS, ("orbit",), "int16", "1", "q of the island p/q the orbit is in, 0 outside"),
     Quantity("island_rotation", ORBITS, ("orbit",), "int16", "1", "p of the island p/q the orbit is in, 0 outside"),
-    _orbit(
-        "island_winding", "turns of the q-fold map about the island's centre, folded to [0, 1/2]", reference=_WEIGHTED
-    ),
+    _orbit("island_winding", "turns of the q-fold map about the island's centre, folded to [0, 1/2]", reference=_HANN),
     _orbit("island_centre_s", "arc length of the island's centre, in its part where the orbit starts"),
     _orbit("island_centre_p", "p of the island's centre, in its part where the orbit starts"),
     _resonance("length_maximal", "length of the longest polygon with q vertices and p rounds", "length", _BIRKHOFF),

@@ -28,7 +28,7 @@ def test_librational_winding_of_an_ellipse(a: float, b: float, lam: float, rho: 
     assert found.island_winding.values == pytest.approx(abs(2 * rho - round(2 * rho)), abs=1e-9)
     assert found.island_centre_s.values == pytest.approx([0.25, 0.75], abs=1e-12)
     assert found.island_centre_p.values == pytest.approx(0.0, abs=1e-12)
-    # Both halves of the second pass agree on nine digits at least.
+    # Both halves of the last bounces agree on nine digits at least.
     assert np.all(found.frequency_diffusion < -9)
 
 
