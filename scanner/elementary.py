@@ -14,7 +14,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from scanner.compiled import inlined, kernel
+from scanner.compiled import fused, inlined, kernel
 
 FloatArray = NDArray[np.float64]
 
@@ -84,11 +84,17 @@ def angle_turns(y: float, x: float) -> float:
     bottom = low + high if wide else high
     slope = top / (1.0 if bottom == 0.0 else bottom)
     square = slope * slope
-    tail = -0.008093077387038777 + square * (0.006241985651407801 + square * -0.0030497379878334507)
-    tail = 0.012242488736289614 + square * (-0.010606884708709996 + square * (0.009323405996267038 + square * tail))
-    tail = 0.017683882412101896 + square * (-0.014468623962907377 + square * tail)
-    tail = -0.05305164769729844 + square * (0.03183098861837187 + square * (-0.022736420440018033 + square * tail))
-    angle = slope * _TURNS_PER_RADIAN + slope * square * tail
+    tail = fused(square, -0.0030497379878334507, 0.006241985651407801)
+    tail = fused(square, tail, -0.008093077387038777)
+    tail = fused(square, tail, 0.009323405996267038)
+    tail = fused(square, tail, -0.010606884708709996)
+    tail = fused(square, tail, 0.012242488736289614)
+    tail = fused(square, tail, -0.014468623962907377)
+    tail = fused(square, tail, 0.017683882412101896)
+    tail = fused(square, tail, -0.022736420440018033)
+    tail = fused(square, tail, 0.03183098861837187)
+    tail = fused(square, tail, -0.05305164769729844)
+    angle = fused(slope, _TURNS_PER_RADIAN, slope * square * tail)
     # The offset, an exact number of eighths, is added last: one rounding.
     offset = 0.125 if wide else 0.0
     angle = -angle if steep else angle

@@ -13,7 +13,7 @@ from scanner.bounce.lanes import BUFFER, BUFFER_ROWS, D_PP, D_PS, D_SP, D_SS, LA
 from scanner.bounce.trace import T_PP, T_PS, T_SP, T_SS, follow, trace
 from scanner.indicators import measure_orbits
 from scanner.indicators.schedule import make_schedule
-from scanner.indicators.streams import GROWTH, RUNNING_ROWS, absorb, start_running
+from scanner.indicators.streams import GROWTH, RUNNING_ROWS, absorb_block, start_running
 from scanner.measure import section_points, survey_table
 from scanner.tables import Table, build_table
 
@@ -127,7 +127,7 @@ def _cat_map() -> Iterator[Check]:
     running = np.empty((RUNNING_ROWS, LANES))
     start_running(running)
     for first in range(0, steps, BUFFER):
-        absorb(buffer, BUFFER, first, schedule.windows, schedule.weights, averages, running, LANES)
+        absorb_block(buffer, BUFFER, first, schedule.windows, schedule.weights, averages, running)
     exponent = math.log((3 + math.sqrt(5)) / 2)
     # the vector needs a few steps to turn: an error of order 1 in the sum over all of them
     yield Check("cat map, Lyapunov exponent", float(running[GROWTH, 0]) / steps, exponent, 1 / steps)

@@ -7,6 +7,7 @@ import numpy as np
 import pytest
 
 from scanner import elementary
+from scanner.compiled import fused
 
 mpmath.mp.dps = 40
 
@@ -104,4 +105,19 @@ def test_bits_are_those_of_every_other_processor():
     x = np.arange(1, 4001) / 997
     results = [*elementary.cos_sin_array(x), elementary.angle_array(x - 2, x - 1), elementary.log_array(x)]
     digest = hashlib.sha256(b"".join(result.tobytes() for result in [*results, elementary.exp_array(x)]))
-    assert digest.hexdigest()[:16] == "d0cafd4b1605aeb3"
+    assert digest.hexdigest()[:16] == "c1d79c799b91ce4c"
+
+
+def test_products_are_fused_with_sums_where_that_is_asked_for():
+    @numba.njit
+    def in_one_rounding(a, b, c):
+        return fused(a, b, c)
+
+    @numba.njit
+    def in_two_roundings(a, b, c):
+        return a * b + c
+
+    small = 2.0**-30
+    # (1 + small) (1 - small) - 1 is -small^2, which the product alone rounds away
+    assert in_one_rounding(1.0 + small, 1.0 - small, -1.0) == -(small**2)
+    assert in_two_roundings(1.0 + small, 1.0 - small, -1.0) == 0.0

@@ -33,6 +33,7 @@ from scanner.bounce.lanes import (
     FAILED,
     HALF_COS,
     HALF_SIN,
+    LANES,
     LAST_STEP,
     MOMENTUM,
     PART_0,
@@ -53,9 +54,19 @@ from scanner.bounce.lanes import (
     SUM_5,
     TANGENT_X,
     TANGENT_Y,
+    TURN_IM,
+    TURN_RE,
 )
-from scanner.bounce.series import Gaps, Plan, Terms, product, raise_to_gaps, same
-from scanner.compiled import inlined, kernel
+from scanner.bounce.series import (
+    Gaps,
+    Plan,
+    Terms,
+    difference_of_products,
+    product,
+    raise_to_gaps,
+    sum_of_products,
+)
+from scanner.compiled import fused, kernel, pasted
 
 Floats = npt.NDArray[np.float64]
 
@@ -72,7 +83,7 @@ MOST_CORRECTIONS = 6
 """Blocks that need more leave the remaining orbits to bisection."""
 
 
-@inlined
+@pasted
 def aim(state: Floats, lanes: int) -> None:
     """Turn the tangent by the angle of the outgoing ray."""
     for j in range(lanes):
@@ -80,11 +91,10 @@ def aim(state: Floats, lanes: int) -> None:
         c = state[COSINE, j]
         tx = state[TANGENT_X, j]
         ty = state[TANGENT_Y, j]
-        state[RAY_X, j] = tx * p - ty * c
-        state[RAY_Y, j] = tx * c + ty * p
+        state[RAY_X, j], state[RAY_Y, j] = product(tx, ty, p, c)
 
 
-@inlined
+@pasted
 def project(harmonics: Floats, plan: Plan, state: Floats, terms: Terms, lanes: int) -> None:
     """Turn the powers of exp(i t0) into the coefficients C_k, and begin the derivatives of the cross product."""
     orders = plan.orders
@@ -92,8 +102,8 @@ def project(harmonics: Floats, plan: Plan, state: Floats, terms: Terms, lanes: i
     for j in range(lanes):
         rx = state[RAY_X, j]
         ry = state[RAY_Y, j]
-        state[START_1, j] = rx * state[SUM_3, j] - ry * state[SUM_2, j]
-        state[START_2, j] = 2.0 * (rx * state[SUM_5, j] - ry * state[SUM_4, j])
+        state[START_1, j] = difference_of_products(rx, state[SUM_3, j], ry, state[SUM_2, j])
+        state[START_2, j] = 2.0 * difference_of_products(rx, state[SUM_5, j], ry, state[SUM_4, j])
         state[START_3, j] = 0.0
     for i in range(orders.shape[0]):
         k = orders[i]
@@ -106,80 +116,77 @@ def project(harmonics: Floats, plan: Plan, state: Floats, terms: Terms, lanes: i
         for j in range(lanes):
             rx = state[RAY_X, j]
             ry = state[RAY_Y, j]
-            even = rx * yc - ry * xc
-            odd = rx * ys - ry * xs
-            re = odd * term_re[i, j] - even * term_im[i, j]
-            im = even * term_re[i, j] + odd * term_im[i, j]
+            even = difference_of_products(rx, yc, ry, xc)
+            odd = difference_of_products(rx, ys, ry, xs)
+            re, im = product(odd, even, term_re[i, j], term_im[i, j])
             term_re[i, j] = re
             term_im[i, j] = im
-            state[START_3, j] -= cube * re
+            state[START_3, j] = fused(-cube, re, state[START_3, j])
 
 
-@inlined
-def guess_by_ellipse(harmonics: Floats, state: Floats, powers: Floats, lanes: int) -> None:
+@pasted
+def guess_by_ellipse(harmonics: Floats, state: Floats, lanes: int) -> None:
     """Chord of the first-harmonic ellipse at the same parameter and angle: 0 < h < pi, small when glancing."""
     xc = harmonics[0, 1]
     xs = harmonics[1, 1]
     yc = harmonics[2, 1]
     ys = harmonics[3, 1]
     for j in range(lanes):
-        re = powers[2, j]
-        im = powers[3, j]
-        tx = xs * re - xc * im
-        ty = ys * re - yc * im
-        p = state[MOMENTUM, j]
-        c = state[COSINE, j]
-        rx = tx * p - ty * c
-        ry = tx * c + ty * p
-        even = rx * yc - ry * xc
-        odd = rx * ys - ry * xs
-        along = even * re + odd * im
-        across = odd * re - even * im
-        scale = math.copysign(1.0 / math.sqrt(along * along + across * across), across)
+        re = state[TURN_RE, j]
+        im = state[TURN_IM, j]
+        tx = difference_of_products(xs, re, xc, im)
+        ty = difference_of_products(ys, re, yc, im)
+        rx, ry = product(tx, ty, state[MOMENTUM, j], state[COSINE, j])
+        even = difference_of_products(rx, yc, ry, xc)
+        odd = difference_of_products(rx, ys, ry, xs)
+        across, along = product(odd, even, re, im)
+        scale = math.copysign(1.0 / math.sqrt(sum_of_products(along, along, across, across)), across)
         state[HALF_COS, j] = along * scale
         state[HALF_SIN, j] = across * scale
         state[SETTLED, j] = 0.0
         state[LAST_STEP, j] = FIRST_REACH
 
 
-@inlined
-def add_harmonics(plan: Plan, state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
-    """Sum the cross product and its first three derivatives at v, less what these are at the near end."""
-    orders, gap_of, _ = plan
+@pasted
+def add_harmonics(plan: Plan, count: int, state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
+    """Sum the first ``count`` harmonics of the cross product and its derivatives at v, less these at the near end."""
+    orders = plan.orders
+    gap_of = plan.gap_of
     term_re, term_im = terms
     gap_re, gap_im = gaps
     for j in range(lanes):
         vr = state[HALF_COS, j]
         vi = state[HALF_SIN, j]
-        gap_re[0, j] = same(vr, vi)
-        gap_im[0, j] = same(vi, vr)
+        gap_re[0, j] = vr
+        gap_im[0, j] = vi
         state[POWER_RE, j] = vr
         state[POWER_IM, j] = vi
-        even = vi * (term_re[0, j] * vr - term_im[0, j] * vi)
-        odd = vi * (term_re[0, j] * vi + term_im[0, j] * vr)
+        re, im = product(term_re[0, j], term_im[0, j], vr, vi)
+        even = vi * re
+        odd = vi * im
         state[PART_0, j] = even
         state[PART_1, j] = odd
         state[PART_2, j] = even
         state[PART_3, j] = odd
     raise_to_gaps(plan, gaps, lanes)
-    for i in range(1, orders.shape[0]):
+    for i in range(1, count):
         gap = gap_of[i]
         order = float(orders[i])
         square = order * order
-        cube = square * order
         for j in range(lanes):
             re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
             state[POWER_RE, j] = re
             state[POWER_IM, j] = im
-            even = im * (term_re[i, j] * re - term_im[i, j] * im)
-            odd = im * (term_re[i, j] * im + term_im[i, j] * re)
+            even, odd = product(term_re[i, j], term_im[i, j], re, im)
+            even *= im
+            odd *= order * im
             state[PART_0, j] += even
-            state[PART_1, j] += order * odd
-            state[PART_2, j] += square * even
-            state[PART_3, j] += cube * odd
+            state[PART_1, j] += odd
+            state[PART_2, j] = fused(square, even, state[PART_2, j])
+            state[PART_3, j] = fused(square, odd, state[PART_3, j])
 
 
-@inlined
+@pasted
 def correct_once(state: Floats, lanes: int) -> int:
     """One Householder step of fourth order on g; returns how many orbits are not found yet.
 
@@ -191,16 +198,16 @@ def correct_once(state: Floats, lanes: int) -> int:
         s = state[HALF_SIN, j]
         square = s * s
         g0 = state[PART_0, j]
-        slope = state[START_1, j] - 2.0 * state[PART_1, j]
-        bend = state[START_2, j] - 4.0 * state[PART_2, j]
-        twist = state[START_3, j] + 8.0 * state[PART_3, j]
-        g1 = s * slope - c * g0
-        g2 = square * (bend + g0) - 2.0 * c * g1
-        g3 = square * (s * twist + c * g0 + 3.0 * g1) - 3.0 * c * g2
+        slope = fused(-2.0, state[PART_1, j], state[START_1, j])
+        bend = fused(-4.0, state[PART_2, j], state[START_2, j])
+        twist = fused(8.0, state[PART_3, j], state[START_3, j])
+        g1 = difference_of_products(s, slope, c, g0)
+        g2 = fused(square, bend + g0, -2.0 * c * g1)
+        g3 = fused(square, fused(s, twist, fused(c, g0, 3.0 * g1)), -3.0 * c * g2)
         slope_square = g1 * g1
         product_02 = g0 * g2
-        step = g0 * (3.0 * product_02 - 6.0 * slope_square)
-        step /= 6.0 * g1 * (slope_square - product_02) + g0 * g0 * g3
+        step = g0 * fused(3.0, product_02, -6.0 * slope_square)
+        step /= fused(6.0 * g1, slope_square - product_02, g0 * g0 * g3)
         # A settled lane takes no further step, so that an orbit does not depend on its neighbours by a rounding.
         settled = state[SETTLED, j] > 0.0
         step = 0.0 if settled else step
@@ -214,44 +221,58 @@ def correct_once(state: Floats, lanes: int) -> int:
         moving += 0 if small else 1
         # exp(i step) with unit modulus whatever the step: the tangent of half of it to fifth order.
         half = 0.5 * step * s
-        tangent = half * (1.0 + half * half * (1.0 / 3.0))
-        scale = 1.0 / (1.0 + tangent * tangent)
-        cr = (1.0 - tangent * tangent) * scale
+        tangent = half * fused(half * half, 1.0 / 3.0, 1.0)
+        scale = 1.0 / fused(tangent, tangent, 1.0)
+        cr = fused(-tangent, tangent, 1.0) * scale
         ci = 2.0 * tangent * scale
-        state[HALF_COS, j] = c * cr - s * ci
-        state[HALF_SIN, j] = c * ci + s * cr
+        state[HALF_COS, j], state[HALF_SIN, j] = product(c, s, cr, ci)
     return moving
 
 
-@inlined
-def find_half_advance(
-    harmonics: Floats, plan: Plan, state: Floats, powers: Floats, quotient: Floats, terms: Terms, gaps: Gaps, lanes: int
-) -> None:
+@pasted
+def take_as_guess(state: Floats, lanes: int) -> None:
+    """Let no lane be settled by a step that left harmonics out, nor the next one be judged by how short that was."""
+    for j in range(lanes):
+        state[SETTLED, j] = 0.0
+        state[LAST_STEP, j] = max(state[LAST_STEP, j], FIRST_REACH)
+
+
+@pasted
+def find_half_advance(harmonics: Floats, plan: Plan, state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
     """Solve for v = exp(i h) in every lane: guess, correct, and bisect where that has not settled."""
-    guess_by_ellipse(harmonics, state, powers, lanes)
+    guess_by_ellipse(harmonics, state, lanes)
     if plan.orders.shape[0] > 1:
         project(harmonics, plan, state, terms, lanes)
+        if plan.strong < plan.orders.shape[0]:
+            add_harmonics(plan, plan.strong, state, terms, gaps, lanes)
+            correct_once(state, lanes)
+            take_as_guess(state, lanes)
         moving = lanes
         corrections = 0
         while moving > 0 and corrections < MOST_CORRECTIONS:
-            add_harmonics(plan, state, terms, gaps, lanes)
+            add_harmonics(plan, plan.orders.shape[0], state, terms, gaps, lanes)
             moving = correct_once(state, lanes)
             corrections += 1
         if moving > 0:
-            bisect_lost_lanes(harmonics, state, powers, quotient, lanes)
+            bisect_lost_lanes(harmonics, state, lanes)
 
 
 @kernel
-def divide_out_start(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats, lanes: int) -> None:
+def divide_out_start(harmonics: Floats, state: Floats, quotient: Floats, lanes: int) -> None:
     """Divide the cross product by its trivial root: g(h) = Re sum_j B_j v^(2 j - 1), B_j the sum of C_k over k >= j.
 
-    Fills rows 2 j and 2 j + 1 of ``quotient`` with B_j, and ``powers`` with those of exp(i t0).
+    Fills rows 2 j and 2 j + 1 of ``quotient``, of shape (2 K + 4, LANES), with B_j.
     """
     highest = harmonics.shape[1] - 1
+    powers = np.empty((2 * highest + 2, lanes))
+    for j in range(lanes):
+        powers[2, j] = state[TURN_RE, j]
+        powers[3, j] = state[TURN_IM, j]
     for k in range(2, highest + 1):
         for j in range(lanes):
-            powers[2 * k, j] = powers[2 * k - 2, j] * powers[2, j] - powers[2 * k - 1, j] * powers[3, j]
-            powers[2 * k + 1, j] = powers[2 * k - 2, j] * powers[3, j] + powers[2 * k - 1, j] * powers[2, j]
+            powers[2 * k, j], powers[2 * k + 1, j] = product(
+                powers[2 * k - 2, j], powers[2 * k - 1, j], powers[2, j], powers[3, j]
+            )
     for j in range(lanes):
         quotient[2 * highest + 2, j] = 0.0
         quotient[2 * highest + 3, j] = 0.0
@@ -266,10 +287,11 @@ def divide_out_start(harmonics: Floats, state: Floats, powers: Floats, quotient:
 
 
 @kernel
-def bisect_lost_lanes(harmonics: Floats, state: Floats, powers: Floats, quotient: Floats, lanes: int) -> None:
+def bisect_lost_lanes(harmonics: Floats, state: Floats, lanes: int) -> None:
     """Hand to bisection every lane that has not settled."""
-    divide_out_start(harmonics, state, powers, quotient, lanes)
     highest = harmonics.shape[1] - 1
+    quotient = np.empty((2 * highest + 4, LANES))
+    divide_out_start(harmonics, state, quotient, lanes)
     for j in range(lanes):
         if state[SETTLED, j] > 0.0:
             continue

@@ -27,6 +27,8 @@ BUFFER = 16
     CURVATURE,
     POINT_X,
     POINT_Y,
+    TURN_RE,  # exp(i t) at the last bounce
+    TURN_IM,
     RAY_X,  # unit vector of the outgoing ray
     RAY_Y,
     HALF_COS,  # cosine and sine of half the advance of the boundary parameter
@@ -49,8 +51,8 @@ BUFFER = 16
     LAST_STEP,  # size of the last correction, over that of the chord
     SETTLED,  # 1 once the chord in hand is found: its lane is left alone while others are corrected
     FAILED,  # 0, or 1 once a chord of this orbit could not be found
-) = range(29)
-STATE_ROWS = 29
+) = range(31)
+STATE_ROWS = 31
 
 # Rows of the buffer, each of shape (BUFFER, LANES).
 ADVANCE, P_AFTER, CHORD, D_SS, D_SP, D_PS, D_PP = range(7)

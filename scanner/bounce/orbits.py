@@ -48,28 +48,47 @@ from scanner.bounce.lanes import (
     SUM_5,
     TANGENT_X,
     TANGENT_Y,
+    TURN_IM,
+    TURN_RE,
 )
-from scanner.bounce.series import Gaps, Plan, Terms, prepare_series, product, raise_to_gaps, same
-from scanner.compiled import inlined, kernel
+from scanner.bounce.series import (
+    Gaps,
+    Plan,
+    Terms,
+    difference_of_products,
+    make_plan,
+    make_room,
+    product,
+    raise_to_gaps,
+    sum_of_products,
+)
+from scanner.compiled import fused, inlined, kernel, pasted, stack_array
 from scanner.elementary import angle_turns, cos_sin_turns
 
 Floats = npt.NDArray[np.float64]
 
 
-@inlined
-def fill_powers(plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
-    """Fill in the powers of exp(i t) of every harmonic."""
-    orders, gap_of, _ = plan
+@pasted
+def begin_powers(state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
+    """Begin the powers of exp(i t) with the first one."""
     term_re, term_im = terms
     gap_re, gap_im = gaps
-    # The number of lanes as the compiler does not know it: else it makes this loop one of the widest registers.
-    for j in range(powers.shape[1]):
-        re = same(powers[2, j], powers[3, j])
-        im = same(powers[3, j], powers[2, j])
+    for j in range(lanes):
+        re = state[TURN_RE, j]
+        im = state[TURN_IM, j]
         gap_re[0, j] = term_re[0, j] = state[POWER_RE, j] = re
         gap_im[0, j] = term_im[0, j] = state[POWER_IM, j] = im
+
+
+@pasted
+def fill_powers(plan: Plan, state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
+    """Fill in the powers of exp(i t) of every harmonic."""
+    gap_of = plan.gap_of
+    term_re, term_im = terms
+    gap_re, gap_im = gaps
+    begin_powers(state, terms, gaps, lanes)
     raise_to_gaps(plan, gaps, lanes)
-    for i in range(1, orders.shape[0]):
+    for i in range(1, gap_of.shape[0]):
         gap = gap_of[i]
         for j in range(lanes):
             re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
@@ -77,12 +96,11 @@ def fill_powers(plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: G
             state[POWER_IM, j] = term_im[i, j] = im
 
 
-@inlined
-def evaluate_boundary(
-    harmonics: Floats, plan: Plan, state: Floats, powers: Floats, terms: Terms, gaps: Gaps, lanes: int
-) -> None:
+@pasted
+def evaluate_boundary(harmonics: Floats, plan: Plan, state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
     """Sum point, tangent and second derivative at exp(i t) of every lane, and keep the powers of exp(i t)."""
-    orders, gap_of, _ = plan
+    orders = plan.orders
+    gap_of = plan.gap_of
     term_re, term_im = terms
     gap_re, gap_im = gaps
     xc = harmonics[0, 1]
@@ -90,14 +108,14 @@ def evaluate_boundary(
     yc = harmonics[2, 1]
     ys = harmonics[3, 1]
     for j in range(lanes):
-        re = powers[2, j]
-        im = powers[3, j]
-        x = xc * re + xs * im
-        y = yc * re + ys * im
+        re = state[TURN_RE, j]
+        im = state[TURN_IM, j]
+        x = sum_of_products(xc, re, xs, im)
+        y = sum_of_products(yc, re, ys, im)
         state[SUM_0, j] = harmonics[0, 0] + x
         state[SUM_1, j] = harmonics[2, 0] + y
-        state[SUM_2, j] = xs * re - xc * im
-        state[SUM_3, j] = ys * re - yc * im
+        state[SUM_2, j] = difference_of_products(xs, re, xc, im)
+        state[SUM_3, j] = difference_of_products(ys, re, yc, im)
         state[SUM_4, j] = -x
         state[SUM_5, j] = -y
     raise_to_gaps(plan, gaps, lanes)
@@ -114,29 +132,27 @@ def evaluate_boundary(
             re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
             state[POWER_RE, j] = re
             state[POWER_IM, j] = im
-            x = xc * re + xs * im
-            y = yc * re + ys * im
+            x = sum_of_products(xc, re, xs, im)
+            y = sum_of_products(yc, re, ys, im)
             term_re[i, j] = re
             term_im[i, j] = im
             state[SUM_0, j] += x
             state[SUM_1, j] += y
-            state[SUM_2, j] += order * (xs * re - xc * im)
-            state[SUM_3, j] += order * (ys * re - yc * im)
-            state[SUM_4, j] -= square * x
-            state[SUM_5, j] -= square * y
+            state[SUM_2, j] = fused(order, difference_of_products(xs, re, xc, im), state[SUM_2, j])
+            state[SUM_3, j] = fused(order, difference_of_products(ys, re, yc, im), state[SUM_3, j])
+            state[SUM_4, j] = fused(-square, x, state[SUM_4, j])
+            state[SUM_5, j] = fused(-square, y, state[SUM_5, j])
 
 
 @kernel
-def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats, powers: Floats) -> None:
+def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats) -> None:
     """Set up a block at boundary parameters ``turns`` and momenta ``momenta``, both of shape (LANES,)."""
-    plan, terms, gaps = prepare_series(harmonics)
-    term_re, term_im = terms
-    gap_re, gap_im = gaps
+    plan = make_plan(harmonics)
+    terms, gaps = make_room(plan)
     for j in range(LANES):
-        re, im = cos_sin_turns(turns[j])
-        powers[2, j] = term_re[0, j] = gap_re[0, j] = state[POWER_RE, j] = re
-        powers[3, j] = term_im[0, j] = gap_im[0, j] = state[POWER_IM, j] = im
-    evaluate_boundary(harmonics, plan, state, powers, terms, gaps, LANES)
+        state[TURN_RE, j], state[TURN_IM, j] = cos_sin_turns(turns[j])
+    begin_powers(state, terms, gaps, LANES)
+    evaluate_boundary(harmonics, plan, state, terms, gaps, LANES)
     for j in range(LANES):
         x1 = state[SUM_2, j]
         y1 = state[SUM_3, j]
@@ -152,58 +168,55 @@ def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats
 
 
 @inlined
-def move_to_end(state: Floats, powers: Floats, terms: Terms, gaps: Gaps, buffer: Floats, row: int, lanes: int) -> None:
+def to_unit(x: float, y: float) -> tuple[float, float]:
+    """Bring a vector that is of unit length but for rounding to unit length."""
+    scale = fused(-0.5, sum_of_products(x, x, y, y), 1.5)
+    return x * scale, y * scale
+
+
+@pasted
+def move_to_end(state: Floats, terms: Terms, gaps: Gaps, buffer: Floats, row: int, lanes: int) -> None:
     """Turn exp(i t) by the full advance, begin its powers there, and note the advance in turns."""
     term_re, term_im = terms
     gap_re, gap_im = gaps
     for j in range(lanes):
-        vr = state[HALF_COS, j]
-        vi = state[HALF_SIN, j]
-        unit = 1.5 - 0.5 * (vr * vr + vi * vi)
-        vr *= unit
-        vi *= unit
+        vr, vi = to_unit(state[HALF_COS, j], state[HALF_SIN, j])
         buffer[ADVANCE, row, j] = 2.0 * angle_turns(vi, vr)
-        ur = vr * vr - vi * vi
+        ur = fused(vr, vr, -(vi * vi))
         ui = 2.0 * vr * vi
-        re = powers[2, j] * ur - powers[3, j] * ui
-        im = powers[2, j] * ui + powers[3, j] * ur
-        unit = 1.5 - 0.5 * (re * re + im * im)
-        re *= unit
-        im *= unit
-        powers[2, j] = term_re[0, j] = gap_re[0, j] = state[POWER_RE, j] = re
-        powers[3, j] = term_im[0, j] = gap_im[0, j] = state[POWER_IM, j] = im
+        re, im = product(state[TURN_RE, j], state[TURN_IM, j], ur, ui)
+        re, im = to_unit(re, im)
+        state[TURN_RE, j] = term_re[0, j] = gap_re[0, j] = state[POWER_RE, j] = re
+        state[TURN_IM, j] = term_im[0, j] = gap_im[0, j] = state[POWER_IM, j] = im
 
 
 @inlined
 def tangent_map(k0: float, c0: float, k1: float, c1: float, length: float) -> tuple[float, float, float, float]:
     """Tangent map of one bounce, row by row, from curvatures and cosines at both ends and the chord's length."""
     over_both = 1.0 / (c0 * c1)
+    bend = fused(k0, length, -c0)
     return (
-        (k0 * length - c0) * (c0 * over_both),
+        bend * (c0 * over_both),
         -length * over_both,
-        k0 * c1 + k1 * c0 - k0 * k1 * length,
-        (k1 * length - c1) * (c1 * over_both),
+        difference_of_products(k0, c1, k1, bend),
+        fused(k1, length, -c1) * (c1 * over_both),
     )
 
 
-@inlined
+@pasted
 def reflect(state: Floats, buffer: Floats, row: int, lanes: int) -> None:
     """Reflect at the new point: momentum, chord and tangent map of this bounce."""
     for j in range(lanes):
         x1 = state[SUM_2, j]
         y1 = state[SUM_3, j]
-        over_speed = 1.0 / math.sqrt(x1 * x1 + y1 * y1)
+        over_speed = 1.0 / math.sqrt(sum_of_products(x1, x1, y1, y1))
         tx = x1 * over_speed
         ty = y1 * over_speed
-        k1 = (x1 * state[SUM_5, j] - y1 * state[SUM_4, j]) * over_speed * over_speed * over_speed
+        k1 = difference_of_products(x1, state[SUM_5, j], y1, state[SUM_4, j]) * over_speed * over_speed * over_speed
         rx = state[RAY_X, j]
         ry = state[RAY_Y, j]
-        length = (state[SUM_0, j] - state[POINT_X, j]) * rx + (state[SUM_1, j] - state[POINT_Y, j]) * ry
-        p = tx * rx + ty * ry
-        c1 = ty * rx - tx * ry
-        unit = 1.5 - 0.5 * (p * p + c1 * c1)
-        p *= unit
-        c1 *= unit
+        length = fused(state[SUM_0, j] - state[POINT_X, j], rx, (state[SUM_1, j] - state[POINT_Y, j]) * ry)
+        p, c1 = to_unit(sum_of_products(tx, rx, ty, ry), difference_of_products(ty, rx, tx, ry))
         c0 = state[COSINE, j]
         k0 = state[CURVATURE, j]
         ss, sp, ps, pp = tangent_map(k0, c0, k1, c1, length)
@@ -223,13 +236,11 @@ def reflect(state: Floats, buffer: Floats, row: int, lanes: int) -> None:
         state[POINT_Y, j] = state[SUM_1, j]
 
 
-@inlined
+@pasted
 def bounce_lanes(
     harmonics: Floats,
     plan: Plan,
     state: Floats,
-    powers: Floats,
-    quotient: Floats,
     terms: Terms,
     gaps: Gaps,
     buffer: Floats,
@@ -239,18 +250,18 @@ def bounce_lanes(
     """Bounce every orbit of a block ``count`` times (at most BUFFER) and fill as many rows of the buffer.
 
     Only the first ``lanes`` orbits are followed, a multiple of 16; ``fill_powers`` must have gone before.  The arrays
-    must be made in the kernel this is copied into: then their rows have a length that the compiler knows and cannot
-    overlap, and the loops over lanes become vector instructions.
+    must be on the stack of the kernel this is copied into: then the compiler knows the length of their rows and that
+    none overlap, and the loops over lanes become vector instructions.
     """
     for row in range(count):
         aim(state, lanes)
-        find_half_advance(harmonics, plan, state, powers, quotient, terms, gaps, lanes)
-        move_to_end(state, powers, terms, gaps, buffer, row, lanes)
-        evaluate_boundary(harmonics, plan, state, powers, terms, gaps, lanes)
+        find_half_advance(harmonics, plan, state, terms, gaps, lanes)
+        move_to_end(state, terms, gaps, buffer, row, lanes)
+        evaluate_boundary(harmonics, plan, state, terms, gaps, lanes)
         reflect(state, buffer, row, lanes)
 
 
-@inlined
+@pasted
 def copy_rows(source: Floats, target: Floats) -> None:
     """Copy a block's rows by a loop: numba's own assignment of slices takes seconds to compile."""
     for row in range(source.shape[0]):
@@ -259,31 +270,28 @@ def copy_rows(source: Floats, target: Floats) -> None:
 
 
 @kernel
-def bounce_block(harmonics: Floats, state: Floats, powers: Floats, buffer: Floats, count: int) -> None:
+def bounce_block(harmonics: Floats, state: Floats, buffer: Floats, count: int) -> None:
     """Bounce every orbit of a block ``count`` times: for callers that need not be as fast as can be.
 
     Parameters
     ----------
     harmonics
         Boundary, shape (4, K + 1).
-    state, powers
-        Shapes (STATE_ROWS, LANES) and (2 K + 2, LANES): where the orbits are, set up by ``start_block``; updated.
+    state
+        Shape (STATE_ROWS, LANES): where the orbits are, set up by ``start_block``; updated.
     buffer
         Shape (BUFFER_ROWS, BUFFER, LANES): advance, p, chord and tangent map of each bounce.
     count
         Bounces to make, at most BUFFER.
     """
-    here = np.empty((STATE_ROWS, LANES))
+    plan = make_plan(harmonics)
+    here = stack_array((STATE_ROWS, LANES))
+    seen = stack_array((BUFFER_ROWS, BUFFER, LANES))
+    terms, gaps = make_room(plan)
     copy_rows(state, here)
-    turning = np.empty((2 * harmonics.shape[1], LANES))
-    copy_rows(powers, turning)
-    quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
-    seen = np.empty((BUFFER_ROWS, BUFFER, LANES))
-    plan, terms, gaps = prepare_series(harmonics)
-    fill_powers(plan, here, turning, terms, gaps, LANES)
-    bounce_lanes(harmonics, plan, here, turning, quotient, terms, gaps, seen, count, LANES)
+    fill_powers(plan, here, terms, gaps, LANES)
+    bounce_lanes(harmonics, plan, here, terms, gaps, seen, count, LANES)
     copy_rows(here, state)
-    copy_rows(turning, powers)
     for kind in range(BUFFER_ROWS):
         for row in range(count):
             for j in range(LANES):

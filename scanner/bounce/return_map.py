@@ -71,16 +71,15 @@ def return_block(
 ) -> None:
     """Follow each orbit of a block for its own number of bounces; fills the last three arrays."""
     state = np.empty((STATE_ROWS, LANES))
-    powers = np.empty((2 * harmonics.shape[1], LANES))
     buffer = np.empty((BUFFER_ROWS, BUFFER, LANES))
-    start_block(harmonics, turns, momenta, state, powers)
+    start_block(harmonics, turns, momenta, state)
     for j in range(LANES):
         shift[j] = 0.0
         p[j] = momenta[j]
         matrix[0, 0, j] = matrix[1, 1, j] = 1.0
         matrix[0, 1, j] = matrix[1, 0, j] = 0.0
     for first in range(0, periods.max(), BUFFER):
-        bounce_block(harmonics, state, powers, buffer, BUFFER)
+        bounce_block(harmonics, state, buffer, BUFFER)
         for j in range(LANES):
             for row in range(min(BUFFER, periods[j] - first)):
                 shift[j] += buffer[ADVANCE, row, j]

@@ -13,10 +13,13 @@ import numpy as np
 import numpy.typing as npt
 
 from scanner.bounce.lanes import LANES
-from scanner.compiled import inlined, kernel
+from scanner.compiled import fused, inlined, kernel, pasted, stack_array
 
 Floats = npt.NDArray[np.float64]
 Whole = npt.NDArray[np.int64]
+
+WEAK = 1e-7
+"""Harmonics that together turn tangents by less are left out of the first correction of a chord."""
 
 
 class Plan(NamedTuple):
@@ -30,11 +33,14 @@ class Plan(NamedTuple):
         Shape (n,): number of the power that leads to each order from the one before.
     chain
         Shape (m, 2): each such power is the product of two earlier ones, given by number; number 0 is the first power.
+    strong
+        So many of them are enough to come close: the others turn no tangent by more than ``WEAK``.
     """
 
     orders: Whole
     gap_of: Whole
     chain: Whole
+    strong: int
 
 
 class Terms(NamedTuple):
@@ -68,6 +74,22 @@ def harmonic_orders(harmonics: Floats) -> Whole:
 
 
 @kernel
+def count_strong(harmonics: Floats, orders: Whole) -> int:
+    """How many harmonics there are up to where all further ones together are weak."""
+    allowed = WEAK * (abs(harmonics[1, 1]) + abs(harmonics[0, 1]))
+    count = orders.size
+    rest = 0.0
+    while count > 1:
+        k = orders[count - 1]
+        for row in range(4):
+            rest += k * abs(harmonics[row, k])
+        if rest > allowed:
+            break
+        count -= 1
+    return count
+
+
+@kernel
 def plan_gaps(orders: Whole) -> tuple[Whole, Whole]:
     """Reach the powers of all gaps between the orders by few multiplications: ``gap_of`` and ``chain`` of the plan."""
     widest = 1
@@ -95,34 +117,41 @@ def plan_gaps(orders: Whole) -> tuple[Whole, Whole]:
 
 
 @inlined
+def sum_of_products(a: float, b: float, c: float, d: float) -> float:
+    """Sum a b + c d."""
+    return fused(a, b, c * d)
+
+
+@inlined
+def difference_of_products(a: float, b: float, c: float, d: float) -> float:
+    """Difference a b - c d."""
+    return fused(a, b, -(c * d))
+
+
+@inlined
 def product(a_re: float, a_im: float, b_re: float, b_im: float) -> tuple[float, float]:
     """Product of two complex numbers."""
-    return a_re * b_re - a_im * b_im, a_re * b_im + a_im * b_re
+    return difference_of_products(a_re, b_re, a_im, b_im), sum_of_products(a_re, b_im, a_im, b_re)
 
 
-@inlined
-def prepare_series(harmonics: Floats) -> tuple[Plan, Terms, Gaps]:
-    """Plan the sums over the harmonics of a boundary, and make room for them in the kernel this is copied into."""
+@kernel
+def make_plan(harmonics: Floats) -> Plan:
+    """Plan the sums over the harmonics of a boundary."""
     orders = harmonic_orders(harmonics)
     gap_of, chain = plan_gaps(orders)
-    count = orders.shape[0]
-    size = chain.shape[0]
-    terms = Terms(np.empty((count, LANES)), np.empty((count, LANES)))
-    gaps = Gaps(np.empty((size, LANES)), np.empty((size, LANES)))
-    return Plan(orders, gap_of, chain), terms, gaps
+    return Plan(orders, gap_of, chain, count_strong(harmonics, orders))
 
 
-@inlined
-def same(value: float, other: float) -> float:
-    """Give the value back by arithmetic that is exact for finite numbers.
+@pasted
+def make_room(plan: Plan) -> tuple[Terms, Gaps]:
+    """Make room for the sums of a plan, on the stack."""
+    count = plan.orders.shape[0]
+    size = plan.chain.shape[0]
+    terms = Terms(stack_array((count, LANES)), stack_array((count, LANES)))
+    return terms, Gaps(stack_array((size, LANES)), stack_array((size, LANES)))
 
-    A loop that copies one array to another becomes a block move in the widest registers of the processor, and some
-    run all else slower while these are in use.
-    """
-    return value - 0.0 * other
 
-
-@inlined
+@pasted
 def raise_to_gaps(plan: Plan, gaps: Gaps, lanes: int) -> None:
     """Fill the powers of all gaps from the first one."""
     chain = plan.chain

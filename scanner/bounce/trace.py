@@ -22,6 +22,8 @@ from scanner.bounce.lanes import (
     POINT_X,
     POINT_Y,
     STATE_ROWS,
+    TURN_IM,
+    TURN_RE,
     fill_up,
 )
 from scanner.bounce.orbits import bounce_block, start_block
@@ -45,14 +47,13 @@ TRACE_ROWS = 11
 def trace_block(harmonics: Floats, turns: Floats, momenta: Floats, found: Floats) -> None:
     """Fill ``found``, of shape (bounces + 1, TRACE_ROWS, LANES); row 0 is the start."""
     state = np.empty((STATE_ROWS, LANES))
-    powers = np.empty((2 * harmonics.shape[1], LANES))
     buffer = np.full((BUFFER_ROWS, BUFFER, LANES), np.nan)
-    start_block(harmonics, turns, momenta, state, powers)
+    start_block(harmonics, turns, momenta, state)
     for bounce in range(found.shape[0]):
         if bounce > 0:
-            bounce_block(harmonics, state, powers, buffer, 1)
+            bounce_block(harmonics, state, buffer, 1)
         for j in range(LANES):
-            angle = angle_turns(powers[3, j], powers[2, j])
+            angle = angle_turns(state[TURN_IM, j], state[TURN_RE, j])
             found[bounce, T_TURNS, j] = angle if angle >= 0.0 else angle + 1.0
             found[bounce, T_P, j] = state[MOMENTUM, j]
             found[bounce, T_X, j] = state[POINT_X, j]

@@ -19,11 +19,13 @@ from scanner.bounce.lanes import (
     OBSERVABLES,
     P_AFTER,
     STATE_ROWS,
+    TURN_IM,
+    TURN_RE,
     fill_up,
 )
 from scanner.bounce.orbits import bounce_lanes, fill_powers, start_block
-from scanner.bounce.series import prepare_series, same
-from scanner.compiled import kernel
+from scanner.bounce.series import make_plan, make_room
+from scanner.compiled import kernel, stack_array
 from scanner.elementary import angle_array
 from scanner.indicators.schedule import Schedule
 from scanner.indicators.streams import GROWTH, PATH, RUNNING_ROWS, absorb, start_running
@@ -71,14 +73,12 @@ class Recording:
 
 
 @kernel
-def start_blocks(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats, powers: Floats) -> None:
-    """Set up all blocks; the last two arrays have a column an orbit."""
+def start_blocks(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats) -> None:
+    """Set up all blocks; ``state`` has a column an orbit."""
     here = np.empty((state.shape[0], LANES))
-    turning = np.empty((powers.shape[0], LANES))
     for first in range(0, turns.size, LANES):
-        start_block(harmonics, turns[first : first + LANES], momenta[first : first + LANES], here, turning)
+        start_block(harmonics, turns[first : first + LANES], momenta[first : first + LANES], here)
         put_columns(here, state, first)
-        put_columns(turning, powers, first)
 
 
 @kernel
@@ -107,7 +107,6 @@ def follow_blocks(
     record_from: int,
     size: int,
     state: Floats,
-    powers: Floats,
     running: Floats,
     averages: Floats,
     growth: Floats,
@@ -119,18 +118,16 @@ def follow_blocks(
     The arrays from ``state`` on have a column an orbit and are updated; ``growth`` and ``path`` get a row a mark,
     ``record`` (blocks, bounces, 2, LANES) the advance and p of the bounces from ``record_from`` on.
     """
-    here = np.empty((STATE_ROWS, LANES))
-    turning = np.empty((2 * harmonics.shape[1], LANES))
-    quotient = np.empty((2 * harmonics.shape[1] + 2, LANES))
-    buffer = np.zeros((BUFFER_ROWS, BUFFER, LANES))
-    tangent = np.empty((RUNNING_ROWS, LANES))
-    sums = np.empty((averages.shape[0], LANES))
-    plan, terms, gaps = prepare_series(harmonics)
+    plan = make_plan(harmonics)
+    here = stack_array((STATE_ROWS, LANES))
+    buffer = stack_array((BUFFER_ROWS, BUFFER, LANES))
+    tangent = stack_array((RUNNING_ROWS, LANES))
+    sums = stack_array((averages.shape[0], LANES))
+    terms, gaps = make_room(plan)
     for number in range(record.shape[0]):
         block = number * LANES
         take_columns(state, block, here)
-        take_columns(powers, block, turning)
-        fill_powers(plan, here, turning, terms, gaps, LANES)
+        fill_powers(plan, here, terms, gaps, LANES)
         take_columns(running, block, tangent)
         take_columns(averages, block, sums)
         lanes = GRAIN * min(LANES // GRAIN, (size - block + GRAIN - 1) // GRAIN)
@@ -138,18 +135,17 @@ def follow_blocks(
         for mark in range(marks.shape[0]):
             while first < marks[mark]:
                 count = min(BUFFER, marks[mark] - first)
-                bounce_lanes(harmonics, plan, here, turning, quotient, terms, gaps, buffer, count, lanes)
+                bounce_lanes(harmonics, plan, here, terms, gaps, buffer, count, lanes)
                 absorb(buffer, count, first, windows, weights, sums, tangent, lanes)
                 for row in range(max(record_from - first, 0), count):
                     for j in range(LANES):
-                        record[number, first + row - record_from, 0, j] = same(buffer[ADVANCE, row, j], tangent[0, j])
-                        record[number, first + row - record_from, 1, j] = same(buffer[P_AFTER, row, j], tangent[0, j])
+                        record[number, first + row - record_from, 0, j] = buffer[ADVANCE, row, j]
+                        record[number, first + row - record_from, 1, j] = buffer[P_AFTER, row, j]
                 first += count
             for j in range(LANES):
                 growth[mark, block + j] = tangent[GROWTH, j]
                 path[mark, block + j] = tangent[PATH, j]
         put_columns(here, state, block)
-        put_columns(turning, powers, block)
         put_columns(tangent, running, block)
         put_columns(sums, averages, block)
 
@@ -180,8 +176,7 @@ class Batch:
         self._schedule = schedule
         turns, momenta = fill_up(turns), fill_up(momenta)
         self._state = np.empty((STATE_ROWS, turns.size))
-        self._powers = np.empty((2 * harmonics.shape[1], turns.size))
-        start_blocks(harmonics, turns, momenta, self._state, self._powers)
+        start_blocks(harmonics, turns, momenta, self._state)
         self._running = np.empty((RUNNING_ROWS, turns.size))
         start_running(self._running)
         self._averages = np.zeros((OBSERVABLES * schedule.windows.shape[0], turns.size))
@@ -207,7 +202,6 @@ class Batch:
             record_from,
             self.orbits.size,
             self._state,
-            self._powers,
             self._running,
             self._averages,
             self._growth[among],
@@ -243,7 +237,7 @@ class Batch:
         """
         orbits = self.orbits[chosen]
         kept = [Recording(part.first, part.rows, part.columns[orbits]) for part in self._recordings]
-        return kept, angle_array(self._powers[3, chosen], self._powers[2, chosen])
+        return kept, angle_array(self._state[TURN_IM, chosen], self._state[TURN_RE, chosen])
 
     def keep(self, going: Mask) -> None:
         """Leave out the orbits that need not go on; the others close up."""
@@ -251,9 +245,13 @@ class Batch:
         if not self.orbits.size:
             return
         columns = fill_up(np.flatnonzero(going))
-        self._state = self._state[:, columns]
-        self._powers = self._powers[:, columns]
-        self._running = self._running[:, columns]
-        self._averages = self._averages[:, columns]
-        self._growth = self._growth[:, columns]
-        self._path = self._path[:, columns]
+
+        def of_these(values: Floats) -> Floats:
+            # take, as plain indexing would leave the columns one after the other in memory
+            return np.take(values, columns, axis=1)
+
+        self._state = of_these(self._state)
+        self._running = of_these(self._running)
+        self._averages = of_these(self._averages)
+        self._growth = of_these(self._growth)
+        self._path = of_these(self._path)

@@ -8,8 +8,8 @@ from __future__ import annotations
 import numpy as np
 import numpy.typing as npt
 
-from scanner.bounce.lanes import CHORD, D_PP, D_PS, D_SP, D_SS, OBSERVABLES
-from scanner.compiled import kernel
+from scanner.bounce.lanes import CHORD, D_PP, D_PS, D_SP, D_SS, LANES, OBSERVABLES
+from scanner.compiled import fused, kernel, pasted
 from scanner.elementary import log
 
 Floats = npt.NDArray[np.float64]
@@ -30,7 +30,7 @@ def start_running(running: Floats) -> None:
         running[PATH, j] = 0.0
 
 
-@kernel
+@pasted
 def add_to_averages(
     buffer: Floats, count: int, first: int, windows: Integers, weights: Floats, averages: Floats, lanes: int
 ) -> None:
@@ -54,21 +54,22 @@ def add_to_averages(
             for q in range(OBSERVABLES):
                 for j in range(lanes):
                     total = averages[w * OBSERVABLES + q, j]
-                    total += w0 * buffer[q, row, j]
-                    total += w1 * buffer[q, row + 1, j]
-                    total += w2 * buffer[q, row + 2, j]
-                    total += w3 * buffer[q, row + 3, j]
+                    total = fused(w0, buffer[q, row, j], total)
+                    total = fused(w1, buffer[q, row + 1, j], total)
+                    total = fused(w2, buffer[q, row + 2, j], total)
+                    total = fused(w3, buffer[q, row + 3, j], total)
                     averages[w * OBSERVABLES + q, j] = total
             number += 4
         while number < high:
             weight = weights[shift + number]
             for q in range(OBSERVABLES):
                 for j in range(lanes):
-                    averages[w * OBSERVABLES + q, j] += weight * buffer[q, number - first, j]
+                    total = averages[w * OBSERVABLES + q, j]
+                    averages[w * OBSERVABLES + q, j] = fused(weight, buffer[q, number - first, j], total)
             number += 1
 
 
-@kernel
+@pasted
 def grow_tangent(buffer: Floats, count: int, running: Floats, lanes: int) -> None:
     """Carry the tangent vector through ``count`` bounces, then bring it back to unit size and note the growth.
 
@@ -78,8 +79,8 @@ def grow_tangent(buffer: Floats, count: int, running: Floats, lanes: int) -> Non
         for j in range(lanes):
             s = running[VECTOR_S, j]
             p = running[VECTOR_P, j]
-            running[VECTOR_S, j] = buffer[D_SS, row, j] * s + buffer[D_SP, row, j] * p
-            running[VECTOR_P, j] = buffer[D_PS, row, j] * s + buffer[D_PP, row, j] * p
+            running[VECTOR_S, j] = fused(buffer[D_SS, row, j], s, buffer[D_SP, row, j] * p)
+            running[VECTOR_P, j] = fused(buffer[D_PS, row, j], s, buffer[D_PP, row, j] * p)
             running[PATH, j] += buffer[CHORD, row, j]
     for j in range(lanes):
         size = abs(running[VECTOR_S, j]) + abs(running[VECTOR_P, j])
@@ -88,7 +89,7 @@ def grow_tangent(buffer: Floats, count: int, running: Floats, lanes: int) -> Non
         running[VECTOR_P, j] /= size
 
 
-@kernel
+@pasted
 def absorb(
     buffer: Floats,
     count: int,
@@ -102,3 +103,11 @@ def absorb(
     """Feed all indicators with ``count`` bounces, the first of which has number ``first``."""
     add_to_averages(buffer, count, first, windows, weights, averages, lanes)
     grow_tangent(buffer, count, running, lanes)
+
+
+@kernel
+def absorb_block(
+    buffer: Floats, count: int, first: int, windows: Integers, weights: Floats, averages: Floats, running: Floats
+) -> None:
+    """Feed all indicators with a full block, for callers that are not kernels."""
+    absorb(buffer, count, first, windows, weights, averages, running, LANES)

@@ -79,10 +79,10 @@ def test_bisection_finds_what_newton_finds() -> None:
     rng = np.random.default_rng(8)
     turns, p = rng.random(LANES), 2 * rng.random(LANES) - 1
     state, highest = np.empty((STATE_ROWS, LANES)), harmonics.shape[1] - 1
-    powers, quotient = np.empty((2 * highest + 2, LANES)), np.empty((2 * highest + 4, LANES))
-    start_block(harmonics, turns, p, state, powers)
+    quotient = np.empty((2 * highest + 4, LANES))
+    start_block(harmonics, turns, p, state)
     aim(state, LANES)
-    divide_out_start(harmonics, state, powers, quotient, LANES)
+    divide_out_start(harmonics, state, quotient, LANES)
     fast = follow(harmonics, turns, p, 1)[1]
     for lane in range(LANES):
         # The estimate handed over lies outside (0, pi), so that nothing of it can be kept.

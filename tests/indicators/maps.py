@@ -24,7 +24,7 @@ from scanner.bounce.lanes import (
 from scanner.indicators.blocks import Streams
 from scanner.indicators.readings import Readings, read_streams
 from scanner.indicators.schedule import make_schedule
-from scanner.indicators.streams import GROWTH, PATH, RUNNING_ROWS, absorb, start_running
+from scanner.indicators.streams import GROWTH, PATH, RUNNING_ROWS, absorb_block, start_running
 from scanner.indicators.verdicts import Verdicts, judge
 
 TWO_PI = 2 * math.pi
@@ -86,7 +86,7 @@ def run_map(fill: Step, x: np.ndarray, p: np.ndarray, steps: int) -> tuple[list[
             while first < mark:
                 count = min(BUFFER, int(mark) - first)
                 fill(xs, ps, buffer, count)
-                absorb(buffer, count, first, schedule.windows, schedule.weights, block, running, LANES)
+                absorb_block(buffer, count, first, schedule.windows, schedule.weights, block, running)
                 first += count
             growth[number, lanes] = running[GROWTH]
             path[number, lanes] = running[PATH]
