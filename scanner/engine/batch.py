@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+import asyncio
 import importlib
+import logging
 import os
 import shlex
 import time
-from collections.abc import Callable
+from asyncio.subprocess import PIPE
+from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -26,26 +29,63 @@ WAIT_FOR_SCHEDULER = 60
 LOOPBACK = "lo"
 REFUSALS = (OSError, RuntimeError, ValueError)
 """What dask-jobqueue raises where a command is missing, fails or says nothing that can be read."""
-REFUSED_SECONDS = 60.0
-"""Time between two attempts to submit a job in place of one that was lost."""
+LOST_TIMES = 4
+"""Jobs that are not seen are looked for every so many times ``distributed.deploy.lost-worker-timeout``: a minute."""
+MOST_IN_VAIN = 3
+"""Jobs submitted in place of each that ended before its worker joined: what ends so early may always do."""
 LONGEST_FAREWELL = 180.0
+
+log = logging.getLogger(__name__)
 
 
 class Keeper(Adaptive):  # type: ignore[misc]
     """Keep the number of jobs: submit a new one for each that is lost or at the end of its time."""
 
-    next_try = 0.0
+    next_look = 0.0
+    unseen: frozenset[Any] = frozenset()
+    in_vain = 0
 
     async def target(self) -> int:
         """Say how many jobs there should be."""
         return int(self.minimum)
 
     async def recommendations(self, target: int) -> dict[str, Any]:
-        """Forget from time to time what the queue, out of order for a while, refused, so that it is submitted again."""
-        if time.monotonic() >= self.next_try and forget_refused(self.cluster):
-            self.next_try = time.monotonic() + REFUSED_SECONDS
+        """Forget from time to time what has come to nothing, so that it is submitted again.
+
+        That is what the queue, out of order for a while, refused, and jobs that ended before their worker joined.
+        """
+        if time.monotonic() >= self.next_look:
+            forget_refused(self.cluster)
+            await self._forget_ended()
+            patience = dask.utils.parse_timedelta(dask.config.get("distributed.deploy.lost-worker-timeout"))
+            self.next_look = time.monotonic() + LOST_TIMES * patience
         found: dict[str, Any] = await super().recommendations(target)
         return found
+
+
+    async def _forget_ended(self) -> None:
+        """Forget the jobs whose worker was not there at the last look either and that the queue does not know."""
+        unseen = frozenset(self.requested - self.observed)
+        waiting = {str(self.cluster.workers[name].job_id): name for name in unseen & self.unseen}
+        self.unseen = unseen
+        enough = self.in_vain >= MOST_IN_VAIN * self.minimum
+        if enough or not waiting or type(self.cluster).__name__ != CLUSTERS["slurm"]:
+            return
+        queued = await queued_jobs([*waiting])
+        for job in waiting.keys() - (waiting.keys() if queued is None else queued):
+            self.in_vain += 1
+            self.cluster.workers.pop(waiting[job]).status = Status.failed
+            log.warning("job %s ended before its worker joined; see what it printed; submitting another", job)
+
+
+async def queued_jobs(jobs: Sequence[str]) -> set[str] | None:
+    """Say which of some jobs Slurm still has; None where it does not answer."""
+    asked = await asyncio.create_subprocess_exec(
+        "squeue", "--noheader", "--format=%A", f"--jobs={','.join(jobs)}", stdout=PIPE, stderr=PIPE
+    )
+    printed, complaint = await asked.communicate()
+    # Slurm calls a single number invalid once it has forgotten the job, and is silent on one among others.
+    return set(printed.decode().split()) if asked.returncode == 0 or b"Invalid job id" in complaint else None
 
 
 def batch_cluster(resources: Resources, workers: int | None, store: Path, say: Callable[[str], None]) -> Any:

@@ -24,7 +24,9 @@ PER_THREAD = 3
 ATTEMPTS = 3
 TURN_SECONDS = 1.0
 ANSWER_SECONDS = 30.0
-"""Time to fetch the few numbers of a finished task."""
+"""Time to fetch the few numbers of finished tasks."""
+LOST = (OSError, CancelledError, KilledWorker)
+"""What is raised where these numbers went with their worker; the last where computing them again killed more."""
 LONELY_SECONDS = 300.0
 """Time without workers after which that is said, again and again."""
 
@@ -119,13 +121,8 @@ class Dispatcher:
         if not self._flying:
             self._count_once_more()
             return False
-        try:
-            future = self._landed.get(timeout=TURN_SECONDS)
-            while True:
-                self._receive(future)
-                future = self._landed.get_nowait()
-        except queue.Empty:
-            return True
+        self._receive(self._wait_for_landed())
+        return True
 
     def drain(self) -> None:
         """Take back what no worker has begun; what is being computed may finish."""
@@ -194,20 +191,55 @@ class Dispatcher:
         self._flying[key] = number, future
         future.add_done_callback(self._landed.put)
 
-    def _receive(self, future: Future) -> None:
-        if future.key not in self._flying:
-            return
-        number, _ = self._flying.pop(future.key)
-        if future.status == "error":
-            self._take_failure(number, future.exception())
-            return
+    def _wait_for_landed(self) -> dict[int, Future]:
+        """Wait up to a second for tasks that are over, one way or the other, and take all there are."""
+        landed: dict[int, Future] = {}
+        with suppress(queue.Empty):
+            future = self._landed.get(timeout=TURN_SECONDS)
+            while True:
+                if future.key in self._flying:
+                    number, _ = self._flying.pop(future.key)
+                    landed[number] = future
+                future = self._landed.get_nowait()
+        return landed
+
+    def _receive(self, landed: dict[int, Future]) -> None:
+        finished = {number: future for number, future in landed.items() if future.status != "error"}
         try:
-            outcome = future.result(timeout=ANSWER_SECONDS)
-        except (OSError, CancelledError) as error:
-            self._take_loss(number, error)
+            # In one message: with a thousand workers, one after the other would take longer than the tasks.
+            outcomes = self._fetch([*finished.values()])
+        except LOST:
+            self._receive_singly(finished)
         else:
-            self._agenda.settle(number)
-            self._land(outcome)
+            for number, outcome in zip(finished, outcomes, strict=True):
+                self._settle(number, outcome)
+        for number in landed.keys() - finished.keys():
+            self._take_failure(number, landed[number].exception())
+
+    def _receive_singly(self, finished: dict[int, Future]) -> None:
+        """Fetch outcomes of which some are lost."""
+        for number, future in finished.items():
+            try:
+                (outcome,) = self._fetch([future])
+            except LOST as error:
+                if future.status == "error":
+                    self._take_failure(number, future.exception())
+                else:
+                    self._take_loss(number, error)
+            else:
+                self._settle(number, outcome)
+
+    def _fetch(self, futures: list[Future]) -> list[Outcome]:
+        if not futures:
+            return []
+        fetched: list[Outcome] = self._client.sync(
+            lambda: self._client.gather(futures, asynchronous=True), callback_timeout=ANSWER_SECONDS
+        )
+        return fetched
+
+    def _settle(self, number: int, outcome: Outcome) -> None:
+        self._agenda.settle(number)
+        self._land(outcome)
 
     def _take_loss(self, number: int, error: Exception) -> None:
         """Deal with a task of which nothing more will be heard."""

@@ -50,6 +50,18 @@ def test_a_job_that_is_cancelled_is_replaced(slurm, undisturbed, tmp_path):
     wait_until(lambda: not jobs(slurm))
 
 
+def test_a_job_that_ends_before_its_worker_joins_is_replaced(slurm, undisturbed, tmp_path):
+    first_one_ends = f"mkdir {tmp_path / 'ended'} 2> /dev/null && exit 1"
+    study = write_study(tmp_path, RESOURCES.replace("export PREPARED=yes", first_one_ends))
+    impatient = {"DASK_DISTRIBUTED__DEPLOY__LOST_WORKER_TIMEOUT": "1s"}
+    sweep = Sweep(study, tmp_path / "slow.zarr", "--yes", seconds_a_table=0.1, **slurm, **impatient)
+    wait_until(lambda: sweep.log().count("has joined") == 2)
+    status, printed = sweep.wait()
+    assert status == 0, printed
+    assert sweep.log().count("ended before its worker joined") == 1
+    assert results(sweep.store) == undisturbed
+
+
 def test_a_queue_that_takes_no_job_is_one_line(slurm, tmp_path):
     study = write_study(tmp_path, RESOURCES + 'queue = "closed"\n')
     sweep = Sweep(study, tmp_path / "slow.zarr", "--yes", **slurm)
