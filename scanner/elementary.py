@@ -1,8 +1,8 @@
 """Elementary functions in plain arithmetic, so that results have the same bits on every processor.
 
 Libraries of mathematical functions differ between processors in the last digit, and one changed digit changes a
-chaotic orbit.  These use only + - * / , selects and moves of bits; they have no branches, so that loops over
-arrays of orbits vectorise.  Angles are in turns, for which the reduction of the range is exact.
+chaotic orbit.  These use only + - * / , products fused with sums, selects and moves of bits; they have no branches,
+so that loops over arrays of orbits vectorise.  Angles are in turns, for which the reduction of the range is exact.
 
 The polynomials are near-minimax (Chebyshev) fits computed with 50 digits; what they leave out is below a tenth
 of the last place.  The reductions are the classical ones (Cody and Waite, Software Manual for the Elementary

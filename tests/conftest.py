@@ -6,6 +6,14 @@ from collections import Counter
 
 import pytest
 
+from scanner.engine.warmth import warm_kernels
+
+
+def pytest_sessionstart(session: pytest.Session) -> None:
+    """Compile the kernels once, before several processes of tests would each do it."""
+    if not hasattr(session.config, "workerinput"):
+        warm_kernels(resonances=True)
+
 
 def pytest_terminal_summary(terminalreporter: pytest.TerminalReporter) -> None:
     """List why tests were skipped, each reason once."""

@@ -122,7 +122,8 @@ def average_tables(root: xr.Dataset, names: Sequence[str]) -> xr.Dataset:
     Returns
     -------
     Dataset
-        The root variables without these dimensions, and ``tables_averaged``, how many tables stand behind each.
+        The root variables without these dimensions, and ``tables_averaged``, how many tables are done: a number that
+        some of them lack, as without chaos an exponent, is averaged over fewer.  What describes a symmetry is left out.
 
     Raises
     ------
@@ -137,7 +138,7 @@ def average_tables(root: xr.Dataset, names: Sequence[str]) -> xr.Dataset:
     count = done.sum(names).drop_attrs()
     averaged: dict[str, xr.DataArray] = {}
     for key, variable in root.data_vars.items():
-        if not set(names) & set(variable.dims) or key == "table_status":
+        if not set(names) & set(variable.dims) or key in ("table_status", "symmetry_order", "mirror_s"):
             continue
         finite = variable.where(done)
         source = str(key).removesuffix("_stderr")

@@ -7,6 +7,7 @@ the gap between their orders, of which a boundary has few different ones.
 
 from __future__ import annotations
 
+import math
 from typing import NamedTuple
 
 import numpy as np
@@ -75,8 +76,12 @@ def harmonic_orders(harmonics: Floats) -> Whole:
 
 @kernel
 def count_strong(harmonics: Floats, orders: Whole) -> int:
-    """How many harmonics there are up to where all further ones together are weak."""
-    allowed = WEAK * (abs(harmonics[1, 1]) + abs(harmonics[0, 1]))
+    """How many harmonics there are up to where all further ones together are weak, against the shorter axis."""
+    long_axis = 0.0
+    for row in range(4):
+        long_axis += harmonics[row, 1] * harmonics[row, 1]
+    area = harmonics[0, 1] * harmonics[3, 1] - harmonics[1, 1] * harmonics[2, 1]
+    allowed = WEAK * abs(area) / math.sqrt(long_axis)
     count = orders.size
     rest = 0.0
     while count > 1:

@@ -72,11 +72,15 @@ def follow(harmonics: Floats, turns: Floats, momenta: Floats, bounces: int) -> F
     size = turns.size
     turns, momenta = fill_up(turns), fill_up(momenta)
     found = np.empty((bounces + 1, TRACE_ROWS, turns.size))
+    centred = harmonics.copy()
+    centred[:, 0] = 0.0  # far from the origin the differences of points would lose digits
     for first in range(0, turns.size, LANES):
         lanes = slice(first, first + LANES)
         block = np.empty((bounces + 1, TRACE_ROWS, LANES))
-        trace_block(harmonics, turns[lanes], momenta[lanes], block)
+        trace_block(centred, turns[lanes], momenta[lanes], block)
         found[:, :, lanes] = block
+    found[:, T_X] += harmonics[0, 0]
+    found[:, T_Y] += harmonics[2, 0]
     return found[:, :, :size]
 
 

@@ -62,7 +62,6 @@ class Keeper(Adaptive):  # type: ignore[misc]
         found: dict[str, Any] = await super().recommendations(target)
         return found
 
-
     async def _forget_ended(self) -> None:
         """Forget the jobs whose worker was not there at the last look either and that the queue does not know."""
         unseen = frozenset(self.requested - self.observed)

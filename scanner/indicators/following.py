@@ -74,14 +74,16 @@ class Course:
         self.exponent[orbits] = readings.exponent[chosen]
         self.chord[orbits] = np.where(verdicts.is_regular, readings.chord, readings.plain_chord)[chosen]
 
-    def note_windings(self, orbits: Whole, number: int, windings: Windings) -> None:
-        """Note the motion inside islands of orbits that are left at horizon ``number``."""
-        self.winding[orbits] = windings.winding
-        self.frequency_digits[orbits] = digits_of(windings.change)
-        self.centre_turns[orbits] = windings.centre_turns
-        self.centre_p[orbits] = windings.centre_p
+    def note_windings(self, orbits: Whole, windings: Windings) -> None:
+        """Note the motion inside islands of orbits that are left."""
+        inside = orbits[~windings.resonant]
+        self.winding[inside] = windings.winding[~windings.resonant]
+        self.frequency_digits[inside] = digits_of(windings.change[~windings.resonant])
+        self.centre_turns[inside] = windings.centre_turns[~windings.resonant]
+        self.centre_p[inside] = windings.centre_p[~windings.resonant]
         outside = orbits[windings.resonant]  # on a resonant invariant curve
-        self.verdict_by_horizon[outside, number:] = REGULAR_ROTATIONAL
+        verdicts = self.verdict_by_horizon[outside]
+        self.verdict_by_horizon[outside] = np.where(verdicts == REGULAR_LIBRATIONAL, REGULAR_ROTATIONAL, verdicts)
         self.island_period[outside] = 0
         self.island_rotation[outside] = 0
 
@@ -136,5 +138,5 @@ def _visit_horizon(
             verdicts.island_period[inside].astype(np.int64),
             verdicts.island_rotation[inside].astype(np.int64),
         )
-        course.note_windings(orbits[inside], number, windings)
+        course.note_windings(orbits[inside], windings)
     batch.keep(~leaving)

@@ -13,6 +13,7 @@ from scanner.indicators.following import follow_orbits
 from scanner.indicators.labelled import label
 from scanner.indicators.schedule import MINIMUM_BOUNCES, horizons, make_schedule
 from scanner.quantities import ORBITS
+from scanner.tables.curve import bring_to_unit_size
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -35,7 +36,9 @@ def orbit_numbers(
     if bounces < MINIMUM_BOUNCES:
         raise StudyError(f"bounces = {bounces} must be at least {MINIMUM_BOUNCES}: fewer say nothing of an orbit")
     schedule = make_schedule(bounces, exponent_bounces, adaptive)
-    course = follow_orbits(table.harmonics, table.turns_from_arc(s), p, schedule, table.mean_chord_exact)
+    # The thresholds of the verdicts are for tables of about this size, as is the growth of the tangent vector.
+    harmonics, unit = bring_to_unit_size(table.harmonics)
+    course = follow_orbits(harmonics, table.turns_from_arc(s), p, schedule, table.mean_chord_exact / unit)
 
     def known(values: Floats) -> Floats:
         return np.where(course.failed, np.nan, values)
@@ -48,7 +51,7 @@ def orbit_numbers(
         "rotation_number": known(course.rotation),
         "frequency_diffusion": known(-course.frequency_digits),
         "agreement_digits": known(course.agreement_digits),
-        "mean_chord": known(course.chord),
+        "mean_chord": known(course.chord * unit),
         "verdict": course.verdict_by_horizon[:, -1].copy(),
         "verdict_by_horizon": course.verdict_by_horizon,
         "island_period": course.island_period,

@@ -109,7 +109,7 @@ def _by_period(librational: Mask, period: npt.NDArray[np.generic], weight: Float
     found = np.zeros((2, len(PERIODS)))
     for q in np.unique(period[librational]):
         part = _fraction(librational & (period == q), weight, replicates)
-        found[:, PERIODS.index(int(q))] = part.value, part.stderr
+        found[:, PERIODS.index(int(q))] = part.value, _at_least_one_orbit(part.stderr, librational.size)
     return found
 
 

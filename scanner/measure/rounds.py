@@ -22,7 +22,7 @@ Array = npt.NDArray[np.generic]
 Floats = npt.NDArray[np.float64]
 
 ORBITS_AT_ONCE = 2**16
-"""Orbits of one table that are followed together: an orbit takes some 600 bytes while it is computed."""
+"""Orbits of one table in one call: an orbit takes some 600 bytes until the call returns."""
 
 
 def follow_rounds(

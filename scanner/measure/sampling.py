@@ -40,8 +40,8 @@ def section_points(
     table
         The table; its identity and its symmetry matter.
     seed, replicates, orbits
-        ``orbits`` points in all, as many for each of the ``replicates`` independent scramblings (Owen's, after
-        Matousek, J. Complexity 14:527, 1998, as scipy implements it).
+        ``orbits`` points in all, as many for each of the ``replicates`` independent scramblings (random linear
+        ones with a digital shift: Matousek, J. Complexity 14:527, 1998, as scipy implements it).
     start, stop
         Which of the points to return; all by default.
 

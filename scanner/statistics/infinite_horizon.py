@@ -14,7 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 from scipy.optimize import brentq
-from scipy.stats import chi2, t
+from scipy.stats import f, t
 
 from scanner.errors import ScannerError
 
@@ -126,8 +126,12 @@ def extrapolate_fraction(
     beyond = powers[:, -1] / (powers[:, 0] - powers[:, -1])
     # The variance of all steps together, pooled over them; each has the part of it that it has of the fall.
     variance = float(falls.var(axis=0, ddof=1).sum()) / replicates
+    if variance == 0.0:
+        return _undecided(confidence, last, last_stderr, math.nan, "all replicates fall alike, which leaves no error")
     squares = ((falls.mean(axis=0) - fall * shares) ** 2 / (variance * shares)).sum(axis=1)
-    misfit = float(chi2.sf(squares.min(), falls.shape[1] - 1))
+    # The variance is itself an estimate, so that the squares follow Fisher's distribution and not that of chi squared.
+    steps = falls.shape[1]
+    misfit = float(f.sf(squares.min() / (steps - 1), steps - 1, (replicates - 1) * steps))
     if misfit < MISFIT:
         return _undecided(confidence, last, last_stderr, misfit, "does not fall like such a power")
 

@@ -39,7 +39,7 @@ def verdict_fractions(
     Raises
     ------
     ScannerError
-        The orbits cannot be shared equally, or shapes do not fit.
+        The orbits cannot be shared equally, shapes do not fit, or the weight of an orbit is not finite.
     """
     given = np.asarray(verdicts)
     orbits = given.shape[0] if given.ndim else 0
@@ -50,6 +50,11 @@ def verdict_fractions(
         raise ScannerError(f"weights of shape {chords.shape} must be one for each of {orbits} orbits")
     columns = given.reshape(orbits, -1).T
     weights = [np.where(column == PENDING, 0.0, chords) for column in columns]
+    if not np.isfinite(weights).all():
+        raise ScannerError(
+            "a weight is not finite, as the mean chord of an orbit that was lost; give it that of its table, pi area / "
+            "perimeter, instead"
+        )
     each = [
         ratio(np.where(np.isin(column, list(codes)), own, 0.0), own, replicates).replicates
         for column, own in zip(columns, weights, strict=True)

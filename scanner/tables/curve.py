@@ -118,6 +118,20 @@ def size(harmonics: FloatArray) -> float:
     return float(np.abs(harmonics[:, 1:]).max())
 
 
+def bring_to_unit_size(harmonics: FloatArray) -> tuple[FloatArray, float]:
+    """Centre a boundary and divide it by its size: nothing must depend on the unit of length or on the place.
+
+    Returns
+    -------
+    harmonics, size
+        Of the same shape, and what they were divided by.
+    """
+    unit = size(harmonics)
+    scaled = harmonics / unit
+    scaled[:, 0] = 0.0
+    return scaled, unit
+
+
 def tails(sizes: FloatArray) -> FloatArray:
     """Sum of each harmonic and all above it."""
     sums: FloatArray = sizes[::-1].cumsum()[::-1]

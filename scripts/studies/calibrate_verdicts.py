@@ -28,6 +28,7 @@ from scanner.indicators.verdicts import CHAOTIC_GROWTH, REGULAR_DIGITS, SHEAR_GR
 from scanner.measure import section_points
 from scanner.quantities import CHAOTIC, REGULAR_LIBRATIONAL, REGULAR_ROTATIONAL, UNDECIDED
 from scanner.tables import Table, build_table
+from scanner.tables.curve import bring_to_unit_size
 
 ECCENTRICITIES = (0.3, 0.5, 0.7, 0.8, 0.9, 0.95, 0.98, 0.99)
 MIXED: tuple[tuple[str, dict[str, Any]], ...] = (
@@ -48,10 +49,11 @@ def read_table(table: Table, orbits: int, bounces: int) -> tuple[Readings, np.nd
     """Readings and verdicts of orbits spread over the section, after all the bounces."""
     s, p = section_points(table, SEED, 1, orbits)
     schedule = make_schedule(bounces)
-    batch = Batch(table.harmonics, table.turns_from_arc(s), p, schedule)
+    harmonics, unit = bring_to_unit_size(table.harmonics)
+    batch = Batch(harmonics, table.turns_from_arc(s), p, schedule)
     last = len(schedule.horizons) - 1
     *_, streams = (batch.advance(number) for number in range(last + 1))
-    readings = read_streams(streams, schedule, last, table.mean_chord_exact)
+    readings = read_streams(streams, schedule, last, table.mean_chord_exact / unit)
     return readings, judge(readings, streams.failed).code
 
 

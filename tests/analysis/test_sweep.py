@@ -69,6 +69,7 @@ def test_average_takes_tables_that_are_done_alone():
         error = kept.std(ddof=1) / np.sqrt(len(kept))
         assert averaged["regular_area_fraction_stderr"].values[column] == pytest.approx(error, rel=1e-13)
     assert averaged["table_status"].values.tolist() == [1, 1]
+    assert not {"symmetry_order", "mirror_s"} & set(averaged.data_vars)
     assert averaged["regular_area_fraction_by_horizon"].dims == ("amplitude", "horizon")
     assert swept_parameters(averaged) == ("amplitude",)
 

@@ -1,4 +1,3 @@
-import os
 import subprocess
 import sys
 
@@ -40,26 +39,3 @@ def test_resonances_are_compiled_where_they_are_asked_for(calls):
     warm_kernels(resonances=True)
     assert kernels_are_warm(resonances=True)
     assert [command[-1] for command in calls] == [COMPILE["orbits"], COMPILE["orbits"], COMPILE["resonances"]]
-
-
-def test_what_is_compiled_is_all_that_a_study_needs(tmp_path):
-    """Both processes have a folder of their own: other tests fill the usual one meanwhile."""
-    folder = {**os.environ, "SCANNER_CACHE": str(tmp_path)}
-    for part in COMPILE.values():
-        subprocess.run([sys.executable, "-c", part], check=True, env=folder)
-    script = (
-        "import sys\n"
-        "import scanner\n"
-        "from numba.core.dispatcher import Dispatcher\n"
-        "table = scanner.build_table('radial_harmonic', amplitude=0.1, harmonic=2)\n"
-        "survey = scanner.survey_table(table, orbits=128, bounces=1024, replicates=2)\n"
-        "assert survey['librational_area_fraction'] > 0, 'the kernels of islands have not been used'\n"
-        "resonances = scanner.survey_resonances(table)\n"
-        "assert (resonances['curve_fate'] == 2).all(), 'the kernels of resonances have not been used'\n"
-        "rooms = [module for name, module in sys.modules.items() if name.startswith('scanner')]\n"
-        "kernels = {item for room in rooms for item in vars(room).values() if isinstance(item, Dispatcher)}\n"
-        "assert any(kernel.stats.cache_hits for kernel in kernels)\n"
-        "missed = [kernel.__name__ for kernel in kernels if kernel.stats.cache_misses]\n"
-        "assert not missed, missed"
-    )
-    subprocess.run([sys.executable, "-c", script], check=True, env=folder)

@@ -1,6 +1,7 @@
 """Orbits that are left early say the same as orbits that are not."""
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -91,3 +92,20 @@ def test_exponents_have_no_bias_from_when_orbits_are_found_out():
     found = np.any(codes == CHAOTIC, axis=0)
     biased = np.array([reading.exponent[chaotic] for reading in readings])[first[found], np.flatnonzero(found)]
     assert biased.mean() > long.mean() + 4 * biased.std() / math.sqrt(found.sum())
+
+
+def test_nothing_depends_on_the_unit_of_length_or_on_the_place():
+    """A mixed table in other units and far from the origin: the same bits, chords and exponents in proportion."""
+    family, parameters = TABLES[1]
+    one = build_table(family, **parameters)
+    s, p = section_points(one, seed=7, replicates=1, orbits=256)
+    found = measure_orbits(one, s, p, 1024)
+    unit = 1024.0
+    harmonics = unit * one.harmonics
+    harmonics[[0, 2], 0] += 3.0e5
+    other = replace(one, harmonics=harmonics, perimeter=unit * one.perimeter)
+    there = measure_orbits(other, s, p, 1024)
+    assert {CHAOTIC, REGULAR_ROTATIONAL, REGULAR_LIBRATIONAL} <= set(found.verdict.values)
+    for name in ("verdict", "bounces_used", "rotation_number", "lyapunov_per_bounce", "island_winding"):
+        assert np.array_equal(there[name], found[name], equal_nan=True), name
+    assert np.array_equal(there.mean_chord, unit * found.mean_chord, equal_nan=True)

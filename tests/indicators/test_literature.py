@@ -51,6 +51,5 @@ def test_orbits_stick_to_islands() -> None:
     # The last value, and what is left at infinity, is above 0.19: what still falls does so as a power of n.
     falls = -np.diff(fractions)
     power = np.polyfit(np.log(found.horizon.values[:-1]), np.log(falls), 1)[0]
-    print(f"\nregular fraction falls like n^{power:.2f} between {found.horizon.values[0]} and 16000 bounces")
     # Three differences of a few dozen orbits each: the exponent is known to about 0.4.
     assert -1.2 < power < 0.0

@@ -18,10 +18,10 @@ def law(limit, amplitude, exponent):
     return limit + amplitude * (HORIZONS / HORIZONS[-1]) ** -(exponent - 1.0)
 
 
-def sample(generator, fractions, orbits=2048):
+def sample(generator, fractions, orbits=2048, replicates=REPLICATES):
     """Each orbit is found out between two horizons or never: a multinomial count in each replicate."""
     chances = np.array([1.0 - fractions[0], *(fractions[:-1] - fractions[1:]), fractions[-1]])
-    found = generator.multinomial(orbits, chances, size=REPLICATES)
+    found = generator.multinomial(orbits, chances, size=replicates)
     return 1.0 - np.cumsum(found, axis=1)[:, :-1] / orbits
 
 
@@ -53,6 +53,23 @@ def test_intervals_cover_as_often_as_they_say():
     assert decided >= 190  # one in a hundred is taken for a misfit
     assert binom.ppf(1e-3, decided, 0.95) <= covered <= binom.ppf(1.0 - 1e-3, decided, 0.95)
     assert naive < 0.1 * decided
+
+
+def test_true_laws_are_rarely_taken_for_a_misfit():
+    """As often as 1 in 100 says, even where two replicates tell the variance; binomial bound of 0.999."""
+    generator = np.random.default_rng(7)
+    misfits = 0
+    for _ in range(400):
+        exact = law(0.2, 0.08, generator.uniform(*EXPONENT_RANGE))
+        found = extrapolate_fraction(HORIZONS, sample(generator, exact, 512, replicates=2))
+        misfits += "such a power" in found.reason
+    assert misfits <= binom.ppf(0.999, 400, 0.01)
+
+
+def test_replicates_that_all_fall_alike_leave_no_error():
+    found = extrapolate_fraction(HORIZONS, np.tile(law(0.2, 0.05, 1.4), (2, 1)))
+    assert not found.decided
+    assert "fall alike" in found.reason
 
 
 def test_the_error_holds_the_spread_over_the_exponent():

@@ -26,7 +26,12 @@ def test_orbits_that_were_not_followed_do_not_count():
 
 @pytest.mark.parametrize(
     ("verdicts", "weight", "message"),
-    [(np.ones(5), None, "shared equally by 2"), (np.ones(0), None, "shared"), (np.ones(4), np.ones(3), "weights")],
+    [
+        (np.ones(5), None, "shared equally by 2"),
+        (np.ones(0), None, "shared"),
+        (np.ones(4), np.ones(3), "weights"),
+        (np.ones(4), [1.0, np.nan, 1.0, 1.0], "not finite"),
+    ],
 )
 def test_bad_requests_are_refused(verdicts, weight, message):
     with pytest.raises(ScannerError, match=message):
