@@ -103,7 +103,7 @@ def test_nothing_depends_on_the_unit_of_length_or_on_the_place():
     unit = 1024.0
     harmonics = unit * one.harmonics
     harmonics[[0, 2], 0] += 3.0e5
-    other = replace(one, harmonics=harmonics, perimeter=unit * one.perimeter)
+    other = replace(one, harmonics=harmonics, perimeter=unit * one.perimeter, area=unit**2 * one.area)
     there = measure_orbits(other, s, p, 1024)
     assert {CHAOTIC, REGULAR_ROTATIONAL, REGULAR_LIBRATIONAL} <= set(found.verdict.values)
     for name in ("verdict", "bounces_used", "rotation_number", "lyapunov_per_bounce", "island_winding"):
