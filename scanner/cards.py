@@ -1,4 +1,4 @@
-"""Cards that notebooks show for tables and studies: a drawing beside numbers, as HTML without styles of its own."""
+"""What people are shown of tables: parameter values in a line, and cards for notebooks, a drawing beside numbers."""
 
 from __future__ import annotations
 
@@ -57,4 +57,12 @@ def _row(name: str, text: str) -> str:
         "<tr>"
         + "".join(f'<{tag} style="text-align: left; padding-right: 1em">{escape(cell)}</{tag}>' for tag, cell in cells)
         + "</tr>"
+    )
+
+
+def describe(parameters: Mapping[str, float | str]) -> str:
+    """Write parameter values as people do: ``amplitude = 0.05, harmonic = 2``."""
+    return ", ".join(
+        f"{name} = {value:.6g}" if isinstance(value, float) else f"{name} = {value}"
+        for name, value in parameters.items()
     )

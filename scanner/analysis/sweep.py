@@ -153,11 +153,3 @@ def average_tables(root: xr.Dataset, names: Sequence[str]) -> xr.Dataset:
     status.attrs = dict(root["table_status"].attrs)
     kept = root.drop_vars([name for name in [*root.data_vars, *names] if name in root.variables])
     return kept.assign({"table_status": status, **averaged, "tables_averaged": count})
-
-
-def describe(parameters: Mapping[str, float | str]) -> str:
-    """Write parameter values as people do: ``amplitude = 0.05, harmonic = 2``."""
-    return ", ".join(
-        f"{name} = {value:.6g}" if isinstance(value, float) else f"{name} = {value}"
-        for name, value in parameters.items()
-    )

@@ -7,9 +7,9 @@ import time
 import numpy as np
 import xarray as xr
 
-from scanner.analysis.sweep import describe
 from scanner.atlas.watch import Snapshot
 from scanner.atlas.words import name_of, plain, with_units, write_number
+from scanner.cards import describe
 from scanner.quantities import ROOT, in_group
 
 

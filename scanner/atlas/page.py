@@ -16,7 +16,6 @@ from bokeh.document import Document
 from bokeh.model import DataModel
 from bokeh.models import Column, CustomJS, Div, UIElement
 
-from scanner.analysis.sweep import describe
 from scanner.atlas.controls import WIDGETS, Controls
 from scanner.atlas.facts import say_activity, say_study, table_facts
 from scanner.atlas.family import FamilyPlot
@@ -26,6 +25,7 @@ from scanner.atlas.portrait import Portrait, stored_orbits
 from scanner.atlas.view import View, read_query, values_of, write_query
 from scanner.atlas.watch import Watch
 from scanner.atlas.words import list_facts, list_marks, plain
+from scanner.cards import describe
 from scanner.errors import ScannerError
 from scanner.quantities import DONE, TABLE_STATUS
 from scanner.tables import Table

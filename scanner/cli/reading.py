@@ -71,7 +71,7 @@ def open_store(path: Path) -> Iterator[xr.DataTree]:
 def summary(store: Path, select: dict[str, str], average: tuple[str, ...], failed: bool, rows: int, form: str) -> None:
     """Print the table of results of the sweep in PATH."""
     from scanner.analysis import average_tables, failures, pick_tables, summarise, why_not_convex
-    from scanner.analysis.sweep import describe
+    from scanner.cards import describe
     from scanner.cli.listing import list_failures, list_tables, write_rows
     from scanner.store import sweep_progress
 

@@ -138,7 +138,7 @@ def _spell(found: Estimate) -> str:
 
 def _list_faults(found: Estimate) -> None:
     """Name the first tables on which there will be no orbits, and why."""
-    from scanner.analysis.sweep import describe
+    from scanner.cards import describe
 
     for fault in found.faults:
         click.echo(f"{fault.state.replace('_', ' ')}: {describe(fault.parameters)}: {fault.reason}")

@@ -12,7 +12,7 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
 from scanner.analysis import average_tables, pick_tables, replace_whole, study_of, swept_parameters, whole_section
-from scanner.analysis.sweep import describe
+from scanner.cards import describe
 from scanner.errors import ScannerError
 from scanner.figures.curves import MOST_LINES, draw_curve, draw_fractions
 from scanner.figures.exponents import draw_exponents

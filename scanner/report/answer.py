@@ -8,8 +8,8 @@ import numpy as np
 import xarray as xr
 
 from scanner.analysis import swept_parameters
-from scanner.analysis.sweep import describe
 from scanner.analysis.wording import uncertain
+from scanner.cards import describe
 from scanner.quantities import DONE
 
 HALF = 0.5

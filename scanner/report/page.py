@@ -10,8 +10,8 @@ import xarray as xr
 
 from scanner.analysis import average_tables, failures, pick_tables, study_of, summarise, swept_parameters
 from scanner.analysis.summary import count_statuses
-from scanner.analysis.sweep import describe
 from scanner.analysis.wording import first_and_last, write_parameters, write_summary
+from scanner.cards import describe
 from scanner.quantities import FAILED, TABLE_STATUS
 from scanner.report.accuracy import list_doubts
 from scanner.report.answer import describe_answer, question_of

@@ -10,7 +10,7 @@ import numpy as np
 import xarray as xr
 
 from scanner.analysis import swept_parameters
-from scanner.analysis.sweep import describe
+from scanner.cards import describe
 from scanner.errors import ScannerError
 from scanner.figures import Request
 from scanner.figures.curves import MOST_LINES

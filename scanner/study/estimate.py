@@ -22,7 +22,7 @@ from scanner.study.plan import Plan
 from scanner.study.screening import CONVEX
 from scanner.tables import Table
 
-CALIBRATION_SECONDS = 2.0
+CALIBRATION_SECONDS = 1.0
 CALIBRATION_BOUNCES = 65536
 CALIBRATION_ORBITS = 512
 CALIBRATION_TABLES = 4

@@ -7,7 +7,7 @@ import pytest
 from synthetic import BOUNCES, invented_sweep
 
 from scanner.analysis import average_tables, pick_tables, study_of, swept_parameters
-from scanner.analysis.sweep import describe
+from scanner.cards import describe
 from scanner.errors import ScannerError
 
 SWEPT = {"amplitude": [0.0, 0.05, 0.1], "harmonic": [2, 3], "phase": [0.0, 0.25]}
