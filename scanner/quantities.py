@@ -15,6 +15,7 @@ CURVE_FATES = ("pending", "survives", "broken", "undecided")
 PENDING, DONE, NOT_CONVEX, FAILED = range(4)
 REGULAR_ROTATIONAL, REGULAR_LIBRATIONAL, CHAOTIC, UNDECIDED = range(1, 5)
 
+LARGEST_SEED = 2**63 - 1
 P_BINS = 20
 PERIODS = tuple(range(2, 65))
 DIRECTIONS = ("forward", "backward")

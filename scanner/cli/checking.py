@@ -68,7 +68,10 @@ def verify(store: Path, repair: bool) -> int:
         click.echo("all finished blocks are as they were written")
         return 0
     if repair:
-        click.echo(f"cleared {len(damaged):,} files: run the same `scanner sweep` to compute them again")
+        click.echo(
+            f"cleared {len(damaged):,} damaged files and the tasks they belong to: run the same `scanner sweep` to "
+            "compute them again"
+        )
         return 0
     click.echo(f"{len(damaged):,} files are damaged: clear them with --repair, then sweep again", err=True)
     return 1

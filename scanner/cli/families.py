@@ -75,8 +75,10 @@ def _limits(family: str, given: dict[str, str]) -> str:
         raise click.UsageError(f"{family} is convex for all its parameters: leave out --at")
     if name in given:
         raise click.UsageError(f"{name} is what the limit is sought for: leave out --at {name}={given[name]}")
-    kinds = {parameter.name: parameter.kind for parameter in FAMILIES[family].parameters}
+    known = {parameter.name: parameter for parameter in FAMILIES[family].parameters}
+    kinds = {key: parameter.kind for key, parameter in known.items()}
     low, high = find_limits(family, {key: _read(kinds.get(key, "text"), key, value) for key, value in given.items()})
+    low, high = max(low, known[name].low), min(high, known[name].high)
     shown = ", ".join(f"{key} = {value}" for key, value in given.items())
     return f"    at {shown}: convex for {name} from {low:.6g} to {high:.6g}"
 

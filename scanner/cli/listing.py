@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import math
 import shutil
 import sys
 
@@ -19,8 +20,11 @@ DISPENSABLE = ("diffusion", "undecided", "drift", "tables", "Lyapunov/bounce", "
 """Columns that make room on a narrow terminal, the first one first."""
 
 
-def list_tables(root: xr.Dataset, most: int) -> None:
-    """Print the summary in aligned columns, with a heading and what to make of them."""
+def list_tables(root: xr.Dataset, most: int, averaged_from: xr.Dataset | None = None) -> None:
+    """Print the summary in aligned columns, with a heading and what to make of them.
+
+    ``averaged_from`` has the tables that the rows are averages of.
+    """
     study = study_of(root)
     rows = summarise(root)
     shown = first_and_last(rows, most if on_terminal() else 0)
@@ -29,11 +33,15 @@ def list_tables(root: xr.Dataset, most: int) -> None:
     hidden = len(rows) - len(shown)
     click.echo(f"{study.title}: {study.family}, {study.orbits} orbits of {study.bounces} bounces a table\n")
     print_columns(texts, _mark(shown), (most + 1) // 2 if hidden else None)
-    counts = ", ".join(f"{count} {name.replace('_', ' ')}" for name, count in count_statuses(root).items())
-    click.echo(f"\n{len(rows)} tables: {counts}")
+    tables = root if averaged_from is None else averaged_from
+    counts = ", ".join(f"{count} {name.replace('_', ' ')}" for name, count in count_statuses(tables).items())
+    averages = "" if averaged_from is None else f"; {len(rows)} averages over those that are done"
+    click.echo(f"\n{tables['table_status'].size} tables: {counts}{averages}")
+    error = "± one standard error" + ("" if averaged_from is None else ", from the scatter between tables")
+    largest = largest_drift(root)
+    largest_so_far = "" if math.isnan(largest) else f", {number(largest)} at most in size"
     click.echo(
-        "± one standard error; drift: regular area judged after a quarter of the bounces less that after all, "
-        f"up to {number(largest_drift(root))}"
+        f"{error}; drift: regular area judged after a quarter of the bounces less that after all{largest_so_far}"
     )
     if hidden:
         click.echo(f"{hidden} rows are not shown: --rows 0 shows all, --format csv writes all")

@@ -81,7 +81,8 @@ def summary(store: Path, select: dict[str, str], average: tuple[str, ...], faile
         raise click.UsageError("--rows shortens the columns on a terminal, all else is whole: leave it out")
     with open_store(store) as tree:
         picked, taken = pick_tables(tree, select)
-        root = average_tables(picked.to_dataset().load(), average)
+        tables = picked.to_dataset().load()
+        root = average_tables(tables, average)
         reasons = {**why_not_convex(root), **sweep_progress(store).failures} if failed else {}
         without_numbers = failures(root, reasons) if failed else None
     if taken:
@@ -91,7 +92,7 @@ def summary(store: Path, select: dict[str, str], average: tuple[str, ...], faile
     elif without_numbers is not None:
         list_failures(without_numbers)
     else:
-        list_tables(root, rows)
+        list_tables(root, rows, tables if average else None)
 
 
 @click.command(short_help="Write netCDF, csv or parquet.")

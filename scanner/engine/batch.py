@@ -18,6 +18,7 @@ from distributed import Status
 from distributed.deploy.adaptive import Adaptive
 
 from scanner.engine.encryption import security
+from scanner.engine.journal import beside
 from scanner.errors import EngineError
 from scanner.study import Resources
 
@@ -120,7 +121,7 @@ def batch_cluster(resources: Resources, workers: int | None, store: Path, say: C
             f'runner = "{resources.runner}" needs dask-jobqueue, which is not installed; '
             'install it with pip install "scanner[cluster]", or submit the script that `scanner jobscript` prints'
         ) from None
-    options = job_options(resources, store.with_suffix(".jobs"))
+    options = job_options(resources, beside(store, ".jobs"))
     if options.get("interface") == LOOPBACK != resources.interface:
         say(
             "the scheduler listens on the loopback address, so that jobs on other hosts cannot reach it; "

@@ -15,6 +15,7 @@ from pathlib import Path
 from scanner.engine.batch import USUAL_MEMORY, WAIT_FOR_SCHEDULER, farewell_seconds, lifetime_options, walltime_for
 from scanner.engine.crew import PATIENCE
 from scanner.engine.encryption import certificates, command_options
+from scanner.engine.journal import beside
 from scanner.errors import EngineError
 from scanner.study import Resources
 
@@ -91,7 +92,7 @@ def job_script(
             submit=SUBMIT[system],
             directives="\n".join(_slurm_directives(resources) if system == "slurm" else _pbs_directives(resources)),
             identity=IDENTITY[system],
-            folder=shlex.quote(str(store.absolute().with_suffix(".jobs"))),
+            folder=shlex.quote(str(beside(store.absolute(), ".jobs"))),
             here=shlex.quote(os.getcwd()),
             setup="\n".join(resources.setup),
             python=shlex.quote(sys.executable),

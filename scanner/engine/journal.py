@@ -23,10 +23,15 @@ class LogFile(logging.FileHandler):
             super().close()
 
 
+def beside(store: Path, suffix: str) -> Path:
+    """Name a file or folder beside a store that no other store's is called by."""
+    return store.with_name(store.name.removesuffix(".zarr") + suffix)
+
+
 @contextmanager
 def log_beside(store: Path) -> Iterator[None]:
     """Write all that this package logs, and the warnings of the task queue, to a file beside the store."""
-    to_file = LogFile(store.with_suffix(".log"))
+    to_file = LogFile(beside(store, ".log"))
     to_file.setFormatter(logging.Formatter("%(asctime)s %(levelname)s %(message)s"))
     # Passed on, as a local cluster silences every handler of its own loggers that writes to a stream.
     passed_on = MemoryHandler(1, target=to_file)

@@ -33,6 +33,8 @@ def orbit_numbers(
 ) -> dict[str, npt.NDArray[np.generic]]:
     """Indicators of orbits of one table, as plain arrays; parameters and errors as for ``measure_orbits``."""
     s, p = check_start(table, s, p)
+    if not isinstance(bounces, int | np.integer):
+        raise StudyError(f"bounces = {bounces!r} is not a whole number; write it like 8192")
     if bounces < MINIMUM_BOUNCES:
         raise StudyError(f"bounces = {bounces} must be at least {MINIMUM_BOUNCES}: fewer say nothing of an orbit")
     schedule = make_schedule(bounces, exponent_bounces, adaptive)

@@ -128,10 +128,11 @@ def curve_fate(table: Table, rotation: float = CURVES[0], longest_orbit: int = L
     TableError
         If the table is not convex or the rotation number is not between 0 and 1.
     """
-    try:
-        orbits = convergents(min(rotation, 1.0 - rotation), longest_orbit)
-    except ValueError as problem:
-        raise TableError(f"{problem}: give the mean advance of a bounce in perimeters") from None
+    if not 0.0 < rotation < 1.0:
+        raise TableError(
+            f"rotation = {rotation} must be between 0 and 1: give the mean advance of a bounce in perimeters"
+        )
+    orbits = convergents(min(rotation, 1.0 - rotation), longest_orbit)
     residues: list[float] = []
     judged = judge_residues([], residues)
     for number, orbit in enumerate(orbits, 1):

@@ -4,7 +4,10 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from scanner.bounce.resonances import resonance_numbers
+from scanner.errors import StudyError
 from scanner.indicators.labelled import label
 from scanner.measure.last_curves import curve_numbers
 from scanner.quantities import CURVES, RESONANCES, rotations_up_to
@@ -34,7 +37,11 @@ def survey_resonances(table: Table, period_max: int = 8) -> xr.Dataset:
     ------
     TableError
         If the table is not convex.
+    StudyError
+        If ``period_max`` is not a whole number from 2 on.
     """
+    if not isinstance(period_max, int | np.integer) or period_max < 2:
+        raise StudyError(f"period_max = {period_max!r} must be a whole number from 2 on; give one like 8")
     rotations = rotations_up_to(period_max)
     found = label(
         RESONANCES,

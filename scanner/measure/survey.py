@@ -4,11 +4,12 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from scanner.errors import StudyError
 from scanner.indicators import horizons
 from scanner.indicators.labelled import label
 from scanner.measure.fractions import table_numbers
 from scanner.measure.rounds import check_rounds, follow_rounds
-from scanner.quantities import DIRECTIONS, DONE, P_BINS, PERIODS, ROOT
+from scanner.quantities import DIRECTIONS, DONE, LARGEST_SEED, P_BINS, PERIODS, ROOT
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -66,6 +67,8 @@ def survey_table(
     TableError, StudyError
         If the table is not convex or the numbers do not fit together.
     """
+    if not 0 <= seed <= LARGEST_SEED:
+        raise StudyError(f"seed = {seed} must be from 0 to 2^63 - 1; give another")
     check_rounds(replicates, orbits, target_error, most_orbits)
     limits = (target_error, most_orbits, exponent_bounces, adaptive)
     followed = follow_rounds(table, seed, replicates, orbits, bounces, *limits)

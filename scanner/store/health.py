@@ -13,7 +13,7 @@ from scanner.store.expansion import repair_compacted
 from scanner.store.ledger import Ledger
 from scanner.store.lock import StoreLock, is_running
 from scanner.store.metadata import damaged_metadata, is_finished, root_is_sound
-from scanner.store.template import note_finish
+from scanner.store.template import check_numerics, note_finish
 
 
 @dataclass(frozen=True)
@@ -114,13 +114,17 @@ def repair(path: str | Path) -> list[Damage]:
     Raises
     ------
     StoreError
-        The path is not a store of this tool, or a sweep is running on it.
+        The path is not a store of this tool, a sweep is running on it, or results are damaged that another version of
+        the code has made: nothing is cleared then.
     """
     store = Path(path)
     ledger = Ledger(store)
     ledger.charter()
     with StoreLock(store):
         damaged = [*verify(store), *_list_leftovers(store)]
+        whole = {name for name, _ in damaged_metadata(store)}
+        if any(damage.kind != "leftover" and damage.file not in whole for damage in damaged):
+            check_numerics(store)  # what another version made could not be computed again
         if ledger.charter().compacted:
             repair_compacted(store, {damage.file for damage in damaged})
             return damaged

@@ -12,11 +12,10 @@ from typing import Annotated, Literal
 from pydantic import Field, field_validator, model_validator
 
 from scanner.indicators.schedule import MINIMUM_BOUNCES
-from scanner.quantities import rotations_up_to
+from scanner.quantities import LARGEST_SEED, rotations_up_to
 from scanner.study.card import describe_study, study_card
 from scanner.study.messages import Section, shown
 
-LARGEST_SEED = 2**63 - 1
 MOST_ORBITS = 2**30
 MOST_BOUNCES = 10_000_000
 MOST_REPLICATES = 1024

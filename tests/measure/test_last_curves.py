@@ -162,5 +162,5 @@ def test_a_curve_with_too_few_orbits_is_undecided():
 
 @pytest.mark.parametrize("rotation", [0.0, -0.2, 1.0, 1.3])
 def test_a_rotation_out_of_range_is_refused(rotation):
-    with pytest.raises(TableError, match="must be between 0 and 1"):
+    with pytest.raises(TableError, match=f"rotation = {rotation} must be between 0 and 1"):
         curve_fate(build_table("ellipse", eccentricity=0.5), rotation)

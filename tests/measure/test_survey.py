@@ -7,7 +7,7 @@ import pytest
 from scipy.integrate import quad
 from scipy.special import ellipe
 
-from scanner import build_table, survey_table
+from scanner import build_table, survey_resonances, survey_table
 from scanner.errors import StudyError, TableError
 
 
@@ -77,6 +77,13 @@ def test_what_a_survey_refuses() -> None:
     table = build_table("limacon", quadratic=0.1)
     with pytest.raises(StudyError, match="multiple of 8"):
         survey_table(table, orbits=100)
+    with pytest.raises(StudyError, match="seed = -1 must be from 0"):
+        survey_table(build_table("ellipse", eccentricity=0.5), orbits=64, bounces=64, seed=-1)
+    with pytest.raises(StudyError, match="whole number"):
+        survey_table(build_table("ellipse", eccentricity=0.5), orbits=64, bounces=512.5)
+    for period_max in (1, 3.5):
+        with pytest.raises(StudyError, match=f"period_max = {period_max} must be a whole number from 2"):
+            survey_resonances(build_table("ellipse", eccentricity=0.5), period_max)
     with pytest.raises(StudyError, match="at least 64"):
         survey_table(table, bounces=10)
     with pytest.raises(TableError, match="convex"):

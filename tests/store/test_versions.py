@@ -9,7 +9,7 @@ from sweeps import everything, fill, grid
 
 import scanner
 from scanner.errors import StoreError
-from scanner.store import Ledger, check_numerics, prepare_store, sweep_progress, verify
+from scanner.store import Ledger, check_numerics, prepare_store, repair, sweep_progress, verify
 from scanner.store.durable import write_durably
 from scanner.store.ledger import LAYOUT, _seal_lines
 from scanner.study import make_plan, numerics_version
@@ -72,6 +72,18 @@ def test_an_unfinished_store_of_other_numerics_is_not_carried_on(store, age):
         check_numerics(store)
     with pytest.raises(StoreError, match="must not mix"):
         scanner.run_study(STUDY, store, progress=False)
+    assert everything(store) == before
+
+
+def test_results_of_other_numerics_are_not_cleared_for_a_recomputation(store):
+    """What only another version can compute again stays; metadata and what was left half-written is mended by any."""
+    ledger = Ledger(store)
+    ledger.found(replace(ledger.charter(), version="0.0.9", numerics="0123456789ab"))
+    victim = store / next(iter(ledger.seals(0)))
+    victim.write_bytes(b"")
+    before = everything(store)
+    with pytest.raises(StoreError, match=r"begun by scanner 0\.0\.9 .* finish it with that version"):
+        repair(store)
     assert everything(store) == before
 
 
