@@ -1,19 +1,11 @@
-"""Stores to look at, the command that serves them, and a browser without a window."""
+"""Stores to look at, the command that serves them, and pages in a browser."""
 
 from __future__ import annotations
-
-import shutil
 
 import pytest
 from reader import Reader
 from serving import served
 from sweeps import fill, grid
-
-BROWSERS = ("chromium", "chromium-browser", "google-chrome")
-FLAGS = (
-    "--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run", "--disable-background-networking",
-    "--disable-component-update", "--disable-sync",
-)  # fmt: skip
 
 
 @pytest.fixture(scope="session")
@@ -32,18 +24,6 @@ def store(tmp_path_factory, study):
 def address(store):
     with served(store) as url:
         yield url
-
-
-@pytest.fixture(scope="session")
-def browser():
-    found = next(filter(None, map(shutil.which, BROWSERS)), None)
-    if found is None:
-        pytest.skip("no browser to test with: install one, on Debian apt-get install chromium")
-    from playwright.sync_api import sync_playwright
-
-    with sync_playwright() as playwright:
-        chromium = playwright.chromium.launch(executable_path=found, args=list(FLAGS))
-        yield chromium.new_context(accept_downloads=True)
 
 
 @pytest.fixture

@@ -51,7 +51,8 @@ replicates = 4
 
 TASKS = 6
 
-PATIENCE = 120.0
+PATIENCE = 300.0
+"""Long, as machines are slow at times; only what fails takes it."""
 
 
 STARTED: list[Sweep] = []

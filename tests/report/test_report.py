@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import base64
 import re
-import shutil
 from html.parser import HTMLParser
 from xml.etree import ElementTree
 
@@ -263,19 +262,14 @@ def test_what_cannot_be_drawn_is_told_once():
     assert re.fullmatch(r"Orbits in the table: family 'invented' is not known: .*", line)
 
 
-def test_page_fits_narrow_screens(written):
+def test_page_fits_narrow_screens(written, browser):
     """In a browser: no part is wider than 390 pixels, every picture loads, and nothing is complained of."""
-    browser_path = shutil.which("chromium")
-    if browser_path is None:
-        pytest.skip("no chromium here: install it to look at pages in a browser")
-    playwright = pytest.importorskip("playwright.sync_api", reason="playwright is not installed")
     complaints: list[str] = []
-    with playwright.sync_playwright() as play:
-        browser = play.chromium.launch(executable_path=browser_path, args=["--no-sandbox"])
-        screen = browser.new_page(viewport={"width": 390, "height": 800})
-        screen.on("console", lambda message: complaints.append(message.text))
-        screen.goto(written.as_uri())
-        width = screen.evaluate("document.documentElement.scrollWidth")
-        broken = screen.evaluate("[...document.images].filter(image => !image.naturalWidth).length")
-        browser.close()
+    screen = browser.new_page()
+    screen.set_viewport_size({"width": 390, "height": 800})
+    screen.on("console", lambda message: complaints.append(message.text))
+    screen.goto(written.as_uri())
+    width = screen.evaluate("document.documentElement.scrollWidth")
+    broken = screen.evaluate("[...document.images].filter(image => !image.naturalWidth).length")
+    screen.close()
     assert (width, broken, complaints) == (390, 0, [])
