@@ -182,7 +182,7 @@ def move_to_end(state: Floats, terms: Terms, gaps: Gaps, buffer: Floats, row: in
     for j in range(lanes):
         vr, vi = to_unit(state[HALF_COS, j], state[HALF_SIN, j])
         buffer[ADVANCE, row, j] = 2.0 * angle_turns(vi, vr)
-        ur = fused(vr, vr, -(vi * vi))
+        ur = difference_of_products(vr, vr, vi, vi)
         ui = 2.0 * vr * vi
         re, im = product(state[TURN_RE, j], state[TURN_IM, j], ur, ui)
         re, im = to_unit(re, im)

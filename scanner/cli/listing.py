@@ -38,11 +38,9 @@ def list_tables(root: xr.Dataset, most: int, averaged_from: xr.Dataset | None = 
     averages = "" if averaged_from is None else f"; {len(rows)} averages over those that are done"
     click.echo(f"\n{tables['table_status'].size} tables: {counts}{averages}")
     error = "± one standard error" + ("" if averaged_from is None else ", from the scatter between tables")
+    drift = "drift: regular area judged after a quarter of the bounces less that after all"
     largest = largest_drift(root)
-    largest_so_far = "" if math.isnan(largest) else f", {number(largest)} at most in size"
-    click.echo(
-        f"{error}; drift: regular area judged after a quarter of the bounces less that after all{largest_so_far}"
-    )
+    click.echo(f"{error}; {drift}" + ("" if math.isnan(largest) else f", {number(largest)} at most in size"))
     if hidden:
         click.echo(f"{hidden} rows are not shown: --rows 0 shows all, --format csv writes all")
     if omitted:

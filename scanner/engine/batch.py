@@ -73,6 +73,8 @@ class Keeper(Adaptive):  # type: ignore[misc]
             return
         queued = await queued_jobs([*waiting])
         for job in waiting.keys() - (waiting.keys() if queued is None else queued):
+            if waiting[job] not in self.cluster.workers:
+                continue  # seen and lost while the queue was asked
             self.in_vain += 1
             self.cluster.workers.pop(waiting[job]).status = Status.failed
             log.warning("job %s ended before its worker joined; see what it printed; submitting another", job)
@@ -80,9 +82,14 @@ class Keeper(Adaptive):  # type: ignore[misc]
 
 async def queued_jobs(jobs: Sequence[str]) -> set[str] | None:
     """Say which of some jobs Slurm still has; None where it does not answer."""
-    asked = await asyncio.create_subprocess_exec(
-        "squeue", "--noheader", "--format=%A", f"--jobs={','.join(jobs)}", stdout=PIPE, stderr=PIPE
-    )
+    command = ("squeue", "--noheader", "--format=%A", f"--jobs={','.join(jobs)}")
+    try:
+        asked = await asyncio.create_subprocess_exec(*command, stdout=PIPE, stderr=PIPE)
+    except OSError as error:
+        log.warning(
+            "%s cannot be run (%s): jobs that end before their worker joins are not replaced", command[0], error
+        )
+        return None
     printed, complaint = await asked.communicate()
     # Slurm calls a single number invalid once it has forgotten the job, and is silent on one among others.
     return set(printed.decode().split()) if asked.returncode == 0 or b"Invalid job id" in complaint else None

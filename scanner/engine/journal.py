@@ -24,7 +24,7 @@ class LogFile(logging.FileHandler):
 
 
 def beside(store: Path, suffix: str) -> Path:
-    """Name a file or folder beside a store that no other store's is called by."""
+    """Name a file or folder beside a store like the store, without its .zarr."""
     return store.with_name(store.name.removesuffix(".zarr") + suffix)
 
 

@@ -3,7 +3,7 @@
 The tangent vector of a regular orbit grows like that of a shear, in proportion to the bounces, while that of a
 chaotic orbit grows exponentially; and the weighted averages of a regular orbit settle to many digits within
 thousands of bounces, those of a chaotic one to about two (Sander and Meiss, Physica D 411:132569, 2020).  The
-thresholds are calibrated on ellipses, where every orbit is regular, and on orbits of six mixed tables whose verdict
+thresholds are calibrated on ellipses, where every orbit is regular, and on orbits of eight mixed tables whose verdict
 after 131072 bounces is clear (``scripts/studies/calibrate_verdicts.py``).
 """
 

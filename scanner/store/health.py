@@ -52,21 +52,33 @@ def verify(path: str | Path) -> list[Damage]:
     """
     store = Path(path)
     ledger = Ledger(store)
+    compacted = ledger.charter().compacted
+    found = [*_verify_whole(ledger), *_verify_results(ledger)]
+    if not compacted and not is_running(store):
+        found.extend(_list_leftovers(store))
+    return found
+
+
+def _verify_whole(ledger: Ledger) -> list[Damage]:
+    """Find what is damaged of metadata and coordinates."""
+    return [Damage(name, None, kind) for name, kind in damaged_metadata(ledger.store)]
+
+
+def _verify_results(ledger: Ledger) -> list[Damage]:
+    """Find what is damaged of the results."""
     charter = ledger.charter()
-    found = [Damage(name, None, kind) for name, kind in damaged_metadata(store)]
     if charter.compacted:
-        return [*found, *_verify_shards(ledger)]
+        return [*_verify_shards(ledger)]
+    found: list[Damage] = []
     for task in ledger.listed():
         seals = ledger.seals(task)
         if seals is None:
             found.append(Damage(_receipt_name(ledger, task), task, "unreadable"))
         else:
-            found.extend(Damage(name, task, kind) for name, kind in compare(store, seals))
-    if is_finished(store):
+            found.extend(Damage(name, task, kind) for name, kind in compare(ledger.store, seals))
+    if is_finished(ledger.store):
         lost = set(range(charter.tasks)) - set(ledger.listed())
         found.extend(Damage(_receipt_name(ledger, task), task, "missing") for task in sorted(lost))
-    if not is_running(store):
-        found.extend(_list_leftovers(store))
     return found
 
 
@@ -121,10 +133,10 @@ def repair(path: str | Path) -> list[Damage]:
     ledger = Ledger(store)
     ledger.charter()
     with StoreLock(store):
-        damaged = [*verify(store), *_list_leftovers(store)]
-        whole = {name for name, _ in damaged_metadata(store)}
-        if any(damage.kind != "leftover" and damage.file not in whole for damage in damaged):
+        whole, results = _verify_whole(ledger), _verify_results(ledger)
+        if results:
             check_numerics(store)  # what another version made could not be computed again
+        damaged = [*whole, *results, *_list_leftovers(store)]
         if ledger.charter().compacted:
             repair_compacted(store, {damage.file for damage in damaged})
             return damaged
