@@ -36,6 +36,8 @@ _MANTISSA_MASK = np.int64((1 << 52) - 1)
 _HALF_ROOT_TWO_BITS = np.int64(0x3FE6A09E667F3BCD)
 _BIAS_BITS = np.int64(1023 << 52)
 _ROUNDER_BITS = np.int64(0x4338000000000000)
+_FIXED_ROUNDER = 1572864.0  # the same for multiples of FIXED_UNIT, whose lowest 32 bits then stand for one turn
+FIXED_UNIT = 2.0**-32
 
 
 @inlined
@@ -104,6 +106,12 @@ def angle_turns(y: float, x: float) -> float:
     angle = offset + angle
     angle = -angle if y < 0.0 else angle
     return 0.5 if angle == -0.5 else angle
+
+
+@inlined
+def fixed_point(turns: float) -> np.int32:
+    """Angle below 2^19 turns in units of FIXED_UNIT, rounded; whole turns drop out."""
+    return np.int32(_bits(turns + _FIXED_ROUNDER))
 
 
 @inlined

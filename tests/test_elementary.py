@@ -1,13 +1,15 @@
 import hashlib
 import platform
+from fractions import Fraction
 
 import mpmath
 import numba
 import numpy as np
 import pytest
+from llvmlite.binding import get_host_cpu_features
 
 from scanner import elementary
-from scanner.compiled import fused
+from scanner.compiled import fused, use_widest_vectors
 
 mpmath.mp.dps = 40
 
@@ -55,6 +57,19 @@ def test_angle_of_axes_diagonals_and_origin():
     y = [0, 1, 1, 1, 0, -1, -1, -1, 0, -0.0, -1e-300]
     expected = [0, 0.125, 0.25, 0.375, 0.5, -0.375, -0.25, -0.125, 0, 0.5, 0.5]
     assert elementary.angle_array(y, x).tolist() == expected
+
+
+def test_fixed_point_rounds_to_multiples_of_its_unit_and_drops_whole_turns():
+    @numba.njit
+    def fixed(turns):
+        return elementary.fixed_point(turns)
+
+    angles = [*RNG.uniform(-0.5, 0.5, 500), *RNG.uniform(-(2.0**18), 2.0**18, 500), 0.5, -0.5, 0.0, 2.0**-34]
+    for angle in angles:
+        # Exact in Python's integers; half a unit more where two multiples are equally far.
+        expected = round(Fraction(angle) / Fraction(elementary.FIXED_UNIT))
+        assert (int(fixed(angle)) - expected) % 2**32 == 0
+        assert -(2**31) <= fixed(angle) < 2**31
 
 
 def test_logarithms_are_within_two_units_of_the_last_place():
@@ -121,3 +136,18 @@ def test_products_are_fused_with_sums_where_that_is_asked_for():
     # (1 + small) (1 - small) - 1 is -small^2, which the product alone rounds away
     assert in_one_rounding(1.0 + small, 1.0 - small, -1.0) == -(small**2)
     assert in_two_roundings(1.0 + small, 1.0 - small, -1.0) == 0.0
+
+
+@pytest.mark.skipif(not get_host_cpu_features().get("avx512f", False), reason="needs vectors of eight")
+def test_loops_use_the_widest_vectors_where_that_is_asked_for():
+    @numba.njit
+    def scale(values, found):
+        use_widest_vectors()
+        for j in range(values.size):
+            found[j] = 3.0 * values[j] + 1.0
+
+    numbers = np.arange(100.0)
+    found = np.empty(100)
+    scale(numbers, found)
+    assert np.array_equal(found, 3.0 * numbers + 1.0)
+    assert "zmm" in next(iter(scale.inspect_asm().values()))

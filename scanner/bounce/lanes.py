@@ -10,10 +10,15 @@ from typing import TypeVar
 import numpy as np
 import numpy.typing as npt
 
+from scanner.compiled import inlined
+
 Number = TypeVar("Number", np.float64, np.int64)
 
 LANES = 64
 """Orbits in a block; its rows stay in the processor's first cache."""
+
+GRAIN = 16
+"""Orbits of a block that is not full are followed so many at a time: only the last of them are idle."""
 
 BUFFER = 16
 """Most bounces that are computed before the indicators look at them."""
@@ -59,6 +64,12 @@ ADVANCE, P_AFTER, CHORD, D_SS, D_SP, D_PS, D_PP = range(7)
 BUFFER_ROWS = 7
 OBSERVABLES = 3
 """The first rows of the buffer (advance, p, chord) are averaged; the others are the tangent map in (s, p)."""
+
+
+@inlined
+def busy_lanes(orbits: int) -> int:
+    """Lanes to follow for so many orbits: up to the next multiple of GRAIN, at most a block."""
+    return GRAIN * min(LANES // GRAIN, (orbits + GRAIN - 1) // GRAIN)
 
 
 def fill_up(values: npt.NDArray[Number]) -> npt.NDArray[Number]:

@@ -62,7 +62,7 @@ from scanner.bounce.series import (
     raise_to_gaps,
     sum_of_products,
 )
-from scanner.compiled import fused, inlined, kernel, pasted, stack_array
+from scanner.compiled import fused, inlined, kernel, pasted, stack_array, use_widest_vectors
 from scanner.elementary import angle_turns, cos_sin_turns
 
 Floats = npt.NDArray[np.float64]
@@ -249,7 +249,7 @@ def bounce_lanes(
 ) -> None:
     """Bounce every orbit of a block ``count`` times (at most BUFFER) and fill as many rows of the buffer.
 
-    Only the first ``lanes`` orbits are followed, a multiple of 16; ``fill_powers`` must have gone before.  The arrays
+    Only the first ``lanes`` orbits are followed, a multiple of GRAIN; ``fill_powers`` must have gone before.  The arrays
     must be on the stack of the kernel this is copied into: then the compiler knows the length of their rows and that
     none overlap, and the loops over lanes become vector instructions.
     """
@@ -270,8 +270,8 @@ def copy_rows(source: Floats, target: Floats) -> None:
 
 
 @kernel
-def bounce_block(harmonics: Floats, state: Floats, buffer: Floats, count: int) -> None:
-    """Bounce every orbit of a block ``count`` times: for callers that need not be as fast as can be.
+def bounce_block(harmonics: Floats, state: Floats, buffer: Floats, count: int, lanes: int) -> None:
+    """Bounce the first orbits of a block ``count`` times: for callers that need not be as fast as can be.
 
     Parameters
     ----------
@@ -283,16 +283,19 @@ def bounce_block(harmonics: Floats, state: Floats, buffer: Floats, count: int) -
         Shape (BUFFER_ROWS, BUFFER, LANES): advance, p, chord and tangent map of each bounce.
     count
         Bounces to make, at most BUFFER.
+    lanes
+        Orbits to follow, a multiple of GRAIN.
     """
+    use_widest_vectors()
     plan = make_plan(harmonics)
     here = stack_array((STATE_ROWS, LANES))
     seen = stack_array((BUFFER_ROWS, BUFFER, LANES))
     terms, gaps = make_room(plan)
     copy_rows(state, here)
     fill_powers(plan, here, terms, gaps, LANES)
-    bounce_lanes(harmonics, plan, here, terms, gaps, seen, count, LANES)
+    bounce_lanes(harmonics, plan, here, terms, gaps, seen, count, lanes)
     copy_rows(here, state)
     for kind in range(BUFFER_ROWS):
         for row in range(count):
-            for j in range(LANES):
+            for j in range(lanes):
                 buffer[kind, row, j] = seen[kind, row, j]

@@ -19,6 +19,7 @@ from scanner.bounce.lanes import (
     LANES,
     P_AFTER,
     STATE_ROWS,
+    busy_lanes,
     fill_up,
 )
 from scanner.bounce.orbits import bounce_block, start_block
@@ -64,23 +65,39 @@ class ReturnMap:
         found: Floats = self.matrix[0, 0] + self.matrix[1, 1]
         return found
 
+    def of(self, chosen: Whole) -> ReturnMap:
+        """The map at some of the points."""
+        return ReturnMap(self.shift[chosen], self.p[chosen], self.matrix[:, :, chosen], self.speed[chosen])
+
+    def put(self, chosen: Whole, at: ReturnMap) -> None:
+        """Replace the map at some of the points."""
+        self.shift[chosen], self.p[chosen], self.speed[chosen] = at.shift, at.p, at.speed
+        self.matrix[:, :, chosen] = at.matrix
+
 
 @kernel
 def return_block(
-    harmonics: Floats, turns: Floats, momenta: Floats, periods: Whole, shift: Floats, p: Floats, matrix: Floats
+    harmonics: Floats,
+    turns: Floats,
+    momenta: Floats,
+    periods: Whole,
+    size: int,
+    shift: Floats,
+    p: Floats,
+    matrix: Floats,
 ) -> None:
-    """Follow each orbit of a block for its own number of bounces; fills the last three arrays."""
+    """Follow the first ``size`` orbits of a block, each for its own number of bounces; fills the last three arrays."""
     state = np.empty((STATE_ROWS, LANES))
     buffer = np.empty((BUFFER_ROWS, BUFFER, LANES))
     start_block(harmonics, turns, momenta, state)
-    for j in range(LANES):
+    for j in range(size):
         shift[j] = 0.0
-        p[j] = momenta[j]
         matrix[0, 0, j] = matrix[1, 1, j] = 1.0
         matrix[0, 1, j] = matrix[1, 0, j] = 0.0
-    for first in range(0, periods.max(), BUFFER):
-        bounce_block(harmonics, state, buffer, BUFFER)
-        for j in range(LANES):
+    longest = periods.max()
+    for first in range(0, longest, BUFFER):
+        bounce_block(harmonics, state, buffer, min(BUFFER, longest - first), busy_lanes(size))
+        for j in range(size):
             for row in range(min(BUFFER, periods[j] - first)):
                 shift[j] += buffer[ADVANCE, row, j]
                 p[j] = buffer[P_AFTER, row, j]
@@ -103,18 +120,27 @@ def return_map(harmonics: Floats, turns: Floats, p: Floats, periods: Whole, rota
     periods, rotations
         Shape (n,): q, and the turns p that q bounces are expected to make.
     """
-    size = turns.size
-    full_turns, full_p, full_periods = fill_up(turns), fill_up(p), fill_up(periods)
-    shift, after = np.empty(full_turns.size), np.empty(full_turns.size)
-    matrix = np.empty((2, 2, full_turns.size))
-    for first in range(0, size, LANES):
-        lanes = slice(first, first + LANES)
-        block = np.empty((2, 2, LANES))
+    # Orbits of like periods in a block, as all of its orbits make as many bounces as the longest of them.
+    order = np.argsort(periods, kind="stable")
+    full_turns, full_p, full_periods = fill_up(turns[order]), fill_up(p[order]), fill_up(periods[order])
+    shift, after, matrix = np.empty(turns.size), np.empty(turns.size), np.empty((2, 2, turns.size))
+    for first in range(0, turns.size, LANES):
+        block = slice(first, first + LANES)
+        size = min(LANES, turns.size - first)
+        tangent = np.empty((2, 2, size))
         return_block(
-            harmonics, full_turns[lanes], full_p[lanes], full_periods[lanes], shift[lanes], after[lanes], block
+            harmonics,
+            full_turns[block],
+            full_p[block],
+            full_periods[block],
+            size,
+            shift[block],
+            after[block],
+            tangent,
         )
-        matrix[:, :, lanes] = block
-    return ReturnMap(shift[:size] - rotations, after[:size], matrix[:, :, :size], boundary_speed(harmonics, turns))
+        matrix[:, :, block] = tangent
+    place = np.argsort(order)
+    return ReturnMap(shift[place] - rotations, after[place], matrix[:, :, place], boundary_speed(harmonics, turns))
 
 
 def boundary_speed(harmonics: Floats, turns: Floats) -> Floats:
@@ -137,25 +163,36 @@ def find_fixed_points(
         The q-fold map there.
     """
     turns, p = turns.copy(), p.copy()
-    step = np.full(turns.shape, np.inf)
+    at = return_map(harmonics, turns, p, periods, rotations)
+    reached = np.zeros(turns.shape, dtype=bool)
+    moving = np.arange(turns.size)
     for _ in range(MOST_NEWTON_STEPS):
-        at = return_map(harmonics, turns, p, periods, rotations)
-        # In (t, p): the speed at the image is taken to be that at the point, which is true at a fixed point.
-        a, b = at.matrix[0, 0] - 1.0, at.matrix[0, 1] / at.speed
-        c, d = at.matrix[1, 0] * at.speed, at.matrix[1, 1] - 1.0
-        across = a * d - b * c
-        short, miss = at.shift, at.p - p
-        # On a resonant curve every point is fixed and the determinant nothing but rounding: there is no step to take.
-        amiss = np.maximum(np.abs(short), np.abs(miss)) > ROUNDING * np.max(np.abs(at.matrix), axis=(0, 1))
-        dt, dp = np.zeros(turns.shape), np.zeros(turns.shape)
-        np.divide(miss * b - short * d, across, out=dt, where=amiss & (across != 0.0))
-        np.divide(short * c - miss * a, across, out=dp, where=amiss & (across != 0.0))
-        step = np.where(np.isfinite(short), np.maximum(np.abs(dt), np.abs(dp)), np.inf)
-        moving = (step > SETTLED) & np.isfinite(step)
-        if not moving.any():
+        dt, dp = _newton_step(at.of(moving), p[moving])
+        length = np.maximum(np.abs(dt), np.abs(dp))
+        reached[moving] = length <= SETTLED
+        going = (length > SETTLED) & np.isfinite(length)
+        moving = moving[going]
+        if not moving.size:
             break
-        cut = np.minimum(1.0, LONGEST_STEP / np.maximum(step, LONGEST_STEP))
-        turns = np.where(moving, turns + cut * dt, turns)
-        p = np.clip(np.where(moving, p + cut * dp, p), -1.0 + 1e-9, 1.0 - 1e-9)
-    reached = step <= SETTLED
+        cut = np.minimum(1.0, LONGEST_STEP / np.maximum(length[going], LONGEST_STEP))
+        turns[moving] += cut * dt[going]
+        p[moving] = np.clip(p[moving] + cut * dp[going], -1.0 + 1e-9, 1.0 - 1e-9)
+        at.put(moving, return_map(harmonics, turns[moving], p[moving], periods[moving], rotations[moving]))
     return np.where(reached, turns, np.nan), np.where(reached, p, np.nan), at
+
+
+def _newton_step(at: ReturnMap, p: Floats) -> tuple[Floats, Floats]:
+    """Steps in (t, p) from points of momentum ``p`` to fixed points of the linearised map; NaN where there is no map.
+
+    The speed at the image is taken to be that at the point, which is true at a fixed point.
+    """
+    a, b = at.matrix[0, 0] - 1.0, at.matrix[0, 1] / at.speed
+    c, d = at.matrix[1, 0] * at.speed, at.matrix[1, 1] - 1.0
+    across = a * d - b * c
+    short, miss = at.shift, at.p - p
+    # On a resonant curve every point is fixed and the determinant nothing but rounding: there is no step to take.
+    amiss = np.maximum(np.abs(short), np.abs(miss)) > ROUNDING * np.max(np.abs(at.matrix), axis=(0, 1))
+    dt, dp = np.where(np.isfinite(short), np.zeros((2, p.size)), np.nan)
+    np.divide(miss * b - short * d, across, out=dt, where=amiss & (across != 0.0))
+    np.divide(short * c - miss * a, across, out=dp, where=amiss & (across != 0.0))
+    return dt, dp

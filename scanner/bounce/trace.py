@@ -51,7 +51,7 @@ def trace_block(harmonics: Floats, turns: Floats, momenta: Floats, found: Floats
     start_block(harmonics, turns, momenta, state)
     for bounce in range(found.shape[0]):
         if bounce > 0:
-            bounce_block(harmonics, state, buffer, 1)
+            bounce_block(harmonics, state, buffer, 1, LANES)
         for j in range(LANES):
             angle = angle_turns(state[TURN_IM, j], state[TURN_RE, j])
             found[bounce, T_TURNS, j] = angle if angle >= 0.0 else angle + 1.0

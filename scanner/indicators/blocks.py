@@ -21,23 +21,23 @@ from scanner.bounce.lanes import (
     STATE_ROWS,
     TURN_IM,
     TURN_RE,
+    busy_lanes,
     fill_up,
 )
 from scanner.bounce.orbits import bounce_lanes, fill_powers, start_block
 from scanner.bounce.series import make_plan, make_room
-from scanner.compiled import kernel, stack_array
-from scanner.elementary import angle_array
+from scanner.compiled import kernel, pasted, stack_array, use_widest_vectors
+from scanner.elementary import angle_turns, fixed_point
 from scanner.indicators.schedule import Schedule
 from scanner.indicators.streams import GROWTH, PATH, RUNNING_ROWS, absorb, start_running
 
 Floats = npt.NDArray[np.float64]
 Whole = npt.NDArray[np.int64]
+Fixed = npt.NDArray[np.int32]
 Mask = npt.NDArray[np.bool_]
 
-GRAIN = 16
-"""The last block of a batch is not filled up: only so many lanes at a time are left idle."""
 RECORDED = 2048
-"""Last bounces of an orbit whose advance and p are kept, for the motion inside islands."""
+"""Last bounces of an orbit of which is kept where they led, for the motion inside islands."""
 
 
 @dataclass(frozen=True)
@@ -62,13 +62,15 @@ class Streams:
 
 @dataclass(frozen=True)
 class Recording:
-    """Advance (turns) and p of every bounce of a stage from number ``first`` on, shape (blocks, bounces, 2, LANES).
+    """Where the bounces of a stage from number ``first`` on led, shape (blocks, bounces, 2, LANES).
 
-    ``columns`` has the place of each orbit, block after block; it means nothing for those that had been left before.
+    Boundary parameter and p / 2 in fixed point: what is kept of a bounce passes through memory, and takes a third of
+    the time of following it if it is twice as long.  ``columns`` has the place of each orbit, block after block; it
+    means nothing for those that had been left before.
     """
 
     first: int
-    rows: Floats
+    rows: Fixed
     columns: Whole
 
 
@@ -97,6 +99,19 @@ def put_columns(source: Floats, target: Floats, first: int) -> None:
             target[row, first + j] = source[row, j]
 
 
+@pasted
+def take_down(buffer: Floats, count: int, place: int, turns: Floats, record: Fixed) -> None:
+    """Bring the boundary parameters up to date, and record ``count`` bounces from ``place`` on, none before 0."""
+    for row in range(count):
+        for j in range(LANES):
+            moved = turns[j] + buffer[ADVANCE, row, j]
+            turns[j] = moved - np.rint(moved)
+        if place + row >= 0:
+            for j in range(LANES):
+                record[place + row, 0, j] = fixed_point(turns[j])
+                record[place + row, 1, j] = fixed_point(0.5 * buffer[P_AFTER, row, j])
+
+
 @kernel
 def follow_blocks(
     harmonics: Floats,
@@ -111,18 +126,20 @@ def follow_blocks(
     averages: Floats,
     growth: Floats,
     path: Floats,
-    record: Floats,
+    record: Fixed,
 ) -> None:
     """Follow every block from bounce ``start`` to the last of ``marks``.
 
     The arrays from ``state`` on have a column an orbit and are updated; ``growth`` and ``path`` get a row a mark,
-    ``record`` (blocks, bounces, 2, LANES) the advance and p of the bounces from ``record_from`` on.
+    ``record`` is filled as told in ``Recording`` with the bounces from number ``record_from`` on.
     """
+    use_widest_vectors()
     plan = make_plan(harmonics)
     here = stack_array((STATE_ROWS, LANES))
     buffer = stack_array((BUFFER_ROWS, BUFFER, LANES))
     tangent = stack_array((RUNNING_ROWS, LANES))
     sums = stack_array((averages.shape[0], LANES))
+    turns = stack_array((LANES,))
     terms, gaps = make_room(plan)
     for number in range(record.shape[0]):
         block = number * LANES
@@ -130,17 +147,16 @@ def follow_blocks(
         fill_powers(plan, here, terms, gaps, LANES)
         take_columns(running, block, tangent)
         take_columns(averages, block, sums)
-        lanes = GRAIN * min(LANES // GRAIN, (size - block + GRAIN - 1) // GRAIN)
+        lanes = busy_lanes(size - block)
+        for j in range(LANES):
+            turns[j] = angle_turns(here[TURN_IM, j], here[TURN_RE, j])
         first = start
         for mark in range(marks.shape[0]):
             while first < marks[mark]:
                 count = min(BUFFER, marks[mark] - first)
                 bounce_lanes(harmonics, plan, here, terms, gaps, buffer, count, lanes)
                 absorb(buffer, count, first, windows, weights, sums, tangent, lanes)
-                for row in range(max(record_from - first, 0), count):
-                    for j in range(LANES):
-                        record[number, first + row - record_from, 0, j] = buffer[ADVANCE, row, j]
-                        record[number, first + row - record_from, 1, j] = buffer[P_AFTER, row, j]
+                take_down(buffer, count, first - record_from, turns, record[number])
                 first += count
             for j in range(LANES):
                 growth[mark, block + j] = tangent[GROWTH, j]
@@ -192,7 +208,7 @@ class Batch:
         stage = np.flatnonzero((schedule.marks > start) & (schedule.marks <= end))
         among = slice(stage[0], stage[-1] + 1)
         record_from = max(start, end - RECORDED)
-        record = np.empty((self._state.shape[1] // LANES, end - record_from, 2, LANES))
+        record = np.empty((self._state.shape[1] // LANES, end - record_from, 2, LANES), dtype=np.int32)
         follow_blocks(
             self.harmonics,
             schedule.windows,
@@ -220,7 +236,7 @@ class Batch:
             failed=self._state[FAILED, :size] > 0.0,
         )
 
-    def recall(self, chosen: Whole) -> tuple[list[Recording], Floats]:
+    def recall(self, chosen: Whole) -> list[Recording]:
         """What is kept of the last bounces of some of the orbits on their way.
 
         Parameters
@@ -232,12 +248,9 @@ class Batch:
         -------
         recordings
             One stage after the other up to the present horizon, with columns for the chosen orbits.
-        turns
-            Shape (m,): boundary parameter at the horizon, in (-1/2, 1/2].
         """
         orbits = self.orbits[chosen]
-        kept = [Recording(part.first, part.rows, part.columns[orbits]) for part in self._recordings]
-        return kept, angle_array(self._state[TURN_IM, chosen], self._state[TURN_RE, chosen])
+        return [Recording(part.first, part.rows, part.columns[orbits]) for part in self._recordings]
 
     def keep(self, going: Mask) -> None:
         """Leave out the orbits that need not go on; the others close up."""

@@ -18,7 +18,7 @@ Floats = npt.NDArray[np.float64]
 Whole = npt.NDArray[np.int64]
 Mask = npt.NDArray[np.bool_]
 
-AT_ONCE = 1024
+AT_ONCE = 2048
 """Orbits followed together: enough to keep the blocks full, few enough for what is kept of them."""
 
 
@@ -134,7 +134,7 @@ def _visit_horizon(
     if inside.size:
         windings = wind_orbits(
             batch.harmonics,
-            *batch.recall(inside),
+            batch.recall(inside),
             verdicts.island_period[inside].astype(np.int64),
             verdicts.island_rotation[inside].astype(np.int64),
         )

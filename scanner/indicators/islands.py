@@ -15,17 +15,20 @@ import numpy.typing as npt
 from scanner.bounce.lanes import LANES
 from scanner.bounce.return_map import ReturnMap, find_fixed_points
 from scanner.compiled import kernel
-from scanner.elementary import angle_turns
+from scanner.elementary import FIXED_UNIT, angle_turns
 from scanner.indicators.blocks import Recording
 from scanner.indicators.schedule import quick_weights
 
 Floats = npt.NDArray[np.float64]
 Whole = npt.NDArray[np.int64]
+Fixed = npt.NDArray[np.int32]
 
 PARABOLIC = 1e-9
 """A trace this close to 2 is that of a shear: rounding moves it by 1e-11, and no island met has one as close."""
 AT_REST = 1e-7
 """A return as close as this to the start, in turns and in p, has not moved; rounding adds up to 1e-9."""
+SAME_PLACE = 1e-12
+"""Centres are found to better than this, in turns."""
 FEWEST_RETURNS = 8
 """Returns to the island's part without which nothing is said of the motion in it."""
 ARCS = 128
@@ -69,38 +72,28 @@ class Windings:
 
 @kernel
 def pick_returns(
-    rows: Floats,
-    columns: Whole,
-    periods: Whole,
-    rotations: Whole,
-    waits: Whole,
-    places: Whole,
-    travelled: Floats,
-    shifts: Floats,
-    returned_p: Floats,
+    rows: Fixed, columns: Whole, periods: Whole, waits: Whole, places: Whole, start: Fixed, shifts: Floats, p: Floats
 ) -> None:
-    """Go through the bounces of a recording and add every q-th one of each orbit to its returns.
+    """Add every q-th bounce of a recording to the returns of each orbit.
 
-    ``waits`` counts down to the next return, ``places`` is where it goes, -1 before the first; ``travelled`` is the
-    advance since the first return.  All the arrays but the first four are updated.
+    ``waits`` counts down to the next return, ``places`` is where the last one went, -1 before the first; ``start``
+    is the boundary parameter of the first, from which the shifts are measured.  All of them are updated.
     """
-    for row in range(rows.shape[1]):
-        for j in range(columns.size):
-            block = columns[j] // LANES
-            lane = columns[j] % LANES
-            if places[j] >= 0:
-                travelled[j] += rows[block, row, 0, lane]
-            waits[j] -= 1
-            if waits[j] == 0:
-                waits[j] = periods[j]
-                places[j] += 1
-                shifts[j, places[j]] = travelled[j] - rotations[j] * places[j]
-                returned_p[j, places[j]] = rows[block, row, 1, lane]
+    for j in range(columns.size):
+        block = columns[j] // LANES
+        lane = columns[j] % LANES
+        row = waits[j] - 1
+        while row < rows.shape[1]:
+            if places[j] < 0:
+                start[j] = rows[block, row, 0, lane]
+            places[j] += 1
+            shifts[j, places[j]] = FIXED_UNIT * np.int32(rows[block, row, 0, lane] - start[j])  # whole turns drop out
+            p[j, places[j]] = 2.0 * FIXED_UNIT * rows[block, row, 1, lane]
+            row += periods[j]
+        waits[j] = row - rows.shape[1] + 1
 
 
-def wind_orbits(
-    harmonics: Floats, recordings: list[Recording], turns: Floats, periods: Whole, rotations: Whole
-) -> Windings:
+def wind_orbits(harmonics: Floats, recordings: list[Recording], periods: Whole, rotations: Whole) -> Windings:
     """Find the centres and the windings of island orbits.
 
     Parameters
@@ -109,28 +102,25 @@ def wind_orbits(
         Boundary, shape (4, K + 1).
     recordings
         Their last bounces, with columns of shape (n,).
-    turns
-        Shape (n,): boundary parameter after the last of them.
     periods, rotations
         q and p of each orbit's island, shape (n,).
     """
     length = sum(part.rows.shape[1] for part in recordings)
-    shifts = np.empty((turns.size, length // 2 + 1))
-    returned_p = np.empty((turns.size, length // 2 + 1))
+    shifts, p = np.empty((2, periods.size, length // 2 + 1))
     # A whole number of q-fold maps from the start of the orbit, so that the centre is that of the start's part.
     waits = periods - recordings[0].first % periods
-    places = np.full(turns.size, -1)
-    travelled = np.zeros(turns.size)
+    places = np.full(periods.size, -1)
+    start = np.zeros(periods.size, dtype=np.int32)
     for part in recordings:
-        pick_returns(part.rows, part.columns, periods, rotations, waits, places, travelled, shifts, returned_p)
-    found = np.full((6, turns.size), np.nan)
+        pick_returns(part.rows, part.columns, periods, waits, places, start, shifts, p)
+    found = np.full((6, periods.size), np.nan)
     enough = np.flatnonzero(places >= FEWEST_RETURNS)
     if enough.size:
         found[:, enough] = _wind(
             harmonics,
-            (turns - travelled)[enough],
+            FIXED_UNIT * start[enough],
             shifts[enough],
-            returned_p[enough],
+            p[enough],
             places[enough],
             periods[enough],
             rotations[enough],
@@ -142,29 +132,30 @@ def _wind(
     harmonics: Floats,
     turns: Floats,
     shifts: Floats,
-    returned_p: Floats,
+    p: Floats,
     counts: Whole,
     periods: Whole,
     rotations: Whole,
 ) -> Floats:
     """The rows of ``Windings`` for orbits with enough returns, ``counts`` after the first, which is at ``turns``."""
     weights, places = _weights_of(counts)
-    mean_shift, mean_p = average_points(shifts, returned_p, counts, weights, places)
+    mean_shift, mean_p = average_points(shifts, p, counts, weights, places)
     centre_turns, centre_p, at = find_fixed_points(harmonics, turns + mean_shift, mean_p, periods, rotations)
     shear, stretch = _normal_form(at)
     winding, change, at_rest = average_windings(
-        shifts, returned_p, counts, weights, places, centre_turns - turns, centre_p, shear, stretch
+        shifts, p, counts, weights, places, centre_turns - turns, centre_p, shear, stretch
     )
     known = np.where(np.isfinite(winding), 1.0, np.nan)
-    return np.stack([winding, change, (centre_turns % 1.0) * known, centre_p * known, at.trace, at_rest])
+    # A centre at the origin of the boundary stays there, to whichever side it was rounded.
+    centre = np.maximum((centre_turns + SAME_PLACE) % 1.0 - SAME_PLACE, 0.0)
+    return np.stack([winding, change, centre * known, centre_p * known, at.trace, at_rest])
 
 
 def _weights_of(counts: Whole) -> tuple[Floats, Whole]:
     """Weights of windows of each count and of half of it, and where the two start for each orbit, shape (2, n)."""
-    lengths = sorted({int(length) for length in (*counts, *(counts // 2))})
-    starts = dict(zip(lengths, np.cumsum([0, *lengths[:-1]]), strict=True))
-    places = np.array([[starts[int(n)] for n in counts], [starts[int(n) // 2] for n in counts]], dtype=np.int64)
-    return np.concatenate([quick_weights(length) for length in lengths]), places
+    lengths, which = np.unique(np.stack([counts, counts // 2]), return_inverse=True)
+    starts = np.cumsum(lengths) - lengths
+    return np.concatenate([quick_weights(int(length)) for length in lengths]), starts[which].reshape(2, -1)
 
 
 def _normal_form(at: ReturnMap) -> tuple[Floats, Floats]:
