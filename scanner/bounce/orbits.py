@@ -249,9 +249,9 @@ def bounce_lanes(
 ) -> None:
     """Bounce every orbit of a block ``count`` times (at most BUFFER) and fill as many rows of the buffer.
 
-    Only the first ``lanes`` orbits are followed, a multiple of GRAIN; ``fill_powers`` must have gone before.  The arrays
-    must be on the stack of the kernel this is copied into: then the compiler knows the length of their rows and that
-    none overlap, and the loops over lanes become vector instructions.
+    Only the first ``lanes`` orbits are followed, a multiple of GRAIN; ``fill_powers`` must have gone before.  The
+    arrays must be on the stack of the kernel this is copied into: then the compiler knows the length of their rows and
+    that none overlap, and the loops over lanes become vector instructions.
     """
     for row in range(count):
         aim(state, lanes)

@@ -118,7 +118,7 @@ def wind_orbits(harmonics: Floats, recordings: list[Recording], periods: Whole, 
     if enough.size:
         found[:, enough] = _wind(
             harmonics,
-            FIXED_UNIT * start[enough],
+            np.float64(FIXED_UNIT) * start[enough],
             shifts[enough],
             p[enough],
             places[enough],
