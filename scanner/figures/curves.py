@@ -62,8 +62,9 @@ def draw_curve(root: xr.Dataset, quantity: str, along: str, width: str) -> Axes:
     if others:
         (other,) = others
         for value, colour in zip(root[other].values, CYCLE, strict=False):
-            text = f"{parameter_label(other)} = {value:.6g}"
-            handles.append(draw_line(axes, scale, root.sel({other: value}), quantity, colour, text))
+            part = root.sel({other: value})
+            text = f"{parameter_label(other)} = {value:.6g}" + ("" if part[quantity].notnull().any() else ": no values")
+            handles.append(draw_line(axes, scale, part, quantity, colour, text))
         status = status.max(other).where(~(status == DONE).any(other), DONE)
     else:
         handles.append(draw_line(axes, scale, root, quantity, BLUE, "after all bounces"))

@@ -8,9 +8,10 @@ from matplotlib.artist import Artist
 from matplotlib.axes import Axes
 from matplotlib.collections import QuadMesh
 from matplotlib.colors import LogNorm, Normalize
+from matplotlib.patches import Patch
 from matplotlib.ticker import MaxNLocator
 
-from scanner.figures.colours import COLOUR_MAP
+from scanner.figures.colours import COLOUR_MAP, GREY
 from scanner.figures.labels import quantity_label, starts_at_zero
 from scanner.figures.scale import Scale, scale_of
 from scanner.figures.style import add_legend, missing_patch, new_axes
@@ -52,8 +53,16 @@ def draw_map(root: xr.Dataset, quantity: str, dims: tuple[str, str], width: str)
         size = (float(across.edges[place[0] + 1]) - corner[0], float(up.edges[place[1] + 1]) - corner[1])
         axes.add_patch(missing_patch(name, corner, *size))
         marked.setdefault(name, missing_patch(name))
-    add_legend(axes, list(marked.values()))
+    add_legend(axes, [*marked.values(), *_explain_blanks(values.values, shown, status.T == DONE)])
     return axes
+
+
+def _explain_blanks(values: np.ndarray, shown: np.ndarray, done: np.ndarray) -> list[Artist]:
+    """Make a legend entry for the cells of finished tables that have no colour, if there are any."""
+    blank = np.ma.getmaskarray(np.ma.masked_invalid(shown)) & done
+    zero, unknown = bool((blank & (values == 0.0)).any()), bool((blank & np.isnan(values)).any())
+    words = " or ".join(word for word, there in (("zero", zero), ("no value", unknown)) if there)
+    return [Patch(facecolor="white", edgecolor=GREY, linewidth=0.5, label=words)] if words else []
 
 
 def _draw_contours(axes: Axes, mesh: QuadMesh, across: Scale, up: Scale, values: np.ndarray) -> None:

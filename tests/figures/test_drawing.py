@@ -108,6 +108,38 @@ def test_curve_runs_along_the_parameter_asked_for():
     assert len(figure.axes[0].lines) == 3
 
 
+def without_numbers(tree, name, where, value):
+    """The same sweep with a value in place of those at ``where``."""
+    root = tree.to_dataset()
+    root[name] = root[name].where(~where(root), value)
+    tree.dataset = root
+    return tree
+
+
+@pytest.mark.parametrize(
+    ("swept", "name", "value", "words"),
+    [
+        (TWO, "lyapunov_per_length", np.nan, ["no value"]),
+        (TWO, "lyapunov_per_length", 0.0, []),  # has a colour
+        (ONE, "island_area_fraction", 0.0, ["zero"]),  # has none on a logarithmic scale
+        (ONE, "island_area_fraction", np.nan, ["no value"]),
+        (ONE, "island_area_fraction", 0.5, []),
+    ],
+)
+def test_cells_without_a_colour_are_explained(swept, name, value, words):
+    tree = invented_sweep(swept, convex_below=9.0)
+    tree = without_numbers(tree, name, lambda root: (root.amplitude < 0.02) | (root[name] == 0.0), value)
+    figure, _ = draw_figure(tree, Request(kind="map", quantity=name))
+    assert [text.get_text() for legend in figure.legends for text in legend.get_texts()] == words
+
+
+def test_lines_without_values_say_so():
+    tree = without_numbers(invented_sweep(TWO), "lyapunov_per_bounce", lambda root: root.harmonic == 3, np.nan)
+    figure, _ = draw_figure(tree, Request(kind="curve", quantity="lyapunov_per_bounce"))
+    said = [text.get_text() for text in figure.legends[0].get_texts()]
+    assert [text.endswith(": no values") for text in said[:3]] == [False, True, False]
+
+
 def test_average_over_one_parameter_leaves_the_other():
     tree = invented_sweep({"realisation": list(range(6)), "amplitude": AMPLITUDES}, convex_below=9.0)
     figure, _ = draw_figure(tree, Request(average=("realisation",)))
