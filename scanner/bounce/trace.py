@@ -24,6 +24,7 @@ from scanner.bounce.lanes import (
     STATE_ROWS,
     TURN_IM,
     TURN_RE,
+    busy_lanes,
     fill_up,
 )
 from scanner.bounce.orbits import bounce_block, start_block
@@ -44,14 +45,14 @@ TRACE_ROWS = 11
 
 
 @kernel
-def trace_block(harmonics: Floats, turns: Floats, momenta: Floats, found: Floats) -> None:
-    """Fill ``found``, of shape (bounces + 1, TRACE_ROWS, LANES); row 0 is the start."""
+def trace_block(harmonics: Floats, turns: Floats, momenta: Floats, size: int, found: Floats) -> None:
+    """Follow ``size`` orbits and fill ``found``, of shape (bounces + 1, TRACE_ROWS, LANES); row 0 is the start."""
     state = np.empty((STATE_ROWS, LANES))
     buffer = np.full((BUFFER_ROWS, BUFFER, LANES), np.nan)
     start_block(harmonics, turns, momenta, state)
     for bounce in range(found.shape[0]):
-        if bounce > 0:
-            bounce_block(harmonics, state, buffer, 1, LANES)
+        # Plain numbers in place of min and busy_lanes would be types of their own, and compiled once more.
+        bounce_block(harmonics, state, buffer, min(bounce, 1), busy_lanes(size))
         for j in range(LANES):
             angle = angle_turns(state[TURN_IM, j], state[TURN_RE, j])
             found[bounce, T_TURNS, j] = angle if angle >= 0.0 else angle + 1.0
@@ -77,7 +78,7 @@ def follow(harmonics: Floats, turns: Floats, momenta: Floats, bounces: int) -> F
     for first in range(0, turns.size, LANES):
         lanes = slice(first, first + LANES)
         block = np.empty((bounces + 1, TRACE_ROWS, LANES))
-        trace_block(centred, turns[lanes], momenta[lanes], block)
+        trace_block(centred, turns[lanes], momenta[lanes], size - first, block)
         found[:, :, lanes] = block
     found[:, T_X] += harmonics[0, 0]
     found[:, T_Y] += harmonics[2, 0]

@@ -34,6 +34,9 @@ replicates = 4
 """
 HARMONIC_3 = {"amplitude": 0.06, "harmonic": 3}
 
+# In one process: every other one would start a browser and a server of its own.
+pytestmark = pytest.mark.xdist_group("browser")
+
 
 @pytest.fixture(scope="module")
 def tree(store):

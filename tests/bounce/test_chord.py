@@ -75,7 +75,7 @@ def test_orbits_that_newton_cannot_follow_are_bisected() -> None:
 
 
 def test_bisection_finds_what_newton_finds() -> None:
-    harmonics = build_table("radial_harmonic", amplitude=0.15, harmonic=2).harmonics
+    harmonics = build_table("radial_harmonic", amplitude=0.15, harmonic=2).harmonics.copy()
     rng = np.random.default_rng(8)
     turns, p = rng.random(LANES), 2 * rng.random(LANES) - 1
     state, highest = np.empty((STATE_ROWS, LANES)), harmonics.shape[1] - 1

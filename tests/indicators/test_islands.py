@@ -58,7 +58,7 @@ def test_winding_tends_to_the_angle_of_the_centre() -> None:
     table = build_table("radial_harmonic", amplitude=0.05, harmonic=2)
     found = measure_orbits(table, [0.2501], [0.0], bounces=4096)
     turns = table.turns_from_arc(found.island_centre_s.values)
-    at = return_map(table.harmonics, turns, found.island_centre_p.values, np.array([2]), np.array([1]))
+    at = return_map(table.harmonics.copy(), turns, found.island_centre_p.values, np.array([2]), np.array([1]))
     # The winding changes with the square of the distance from the centre, 1e-4.
     assert 2 * math.cos(2 * math.pi * found.island_winding.item()) == pytest.approx(at.trace.item(), abs=1e-5)
     assert at.trace.item() == pytest.approx(-0.6592797783933518, abs=1e-10)

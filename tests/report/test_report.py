@@ -25,6 +25,9 @@ REASON = 'ValueError: <b>"bold"</b> & more'
 AMPLITUDES = [0.0, 0.02, 0.04, 0.3]
 VOID = {"meta", "img", "link", "br"}
 
+# In one process: every other one would start a browser and draw the pictures of its own.
+pytestmark = pytest.mark.xdist_group("browser")
+
 
 def progress_of(tables, failures=(), finished=None):
     done = tables - len(failures)

@@ -36,11 +36,11 @@ def test_flat_points_have_curvature_zero_and_corners_infinite():
 def test_largest_curvature_is_that_of_the_stored_boundary_where_it_is_smooth():
     table = build_table("lame", exponent=4.0, aspect=0.8)
     # Harmonics left out below 1e-14 change the curvature by their order squared, about 65^2.
-    assert curvature_range(table.harmonics)[2] == pytest.approx(table.curvature_max, rel=1e-10)
+    assert curvature_range(table.harmonics.copy())[2] == pytest.approx(table.curvature_max, rel=1e-10)
 
 
 @pytest.mark.parametrize("exponent", [1.4, 2.5, 4.5, 9.0, 32.0])
 def test_the_stored_boundary_bends_inwards_by_no_more_than_what_is_left_out(exponent):
     table = build_table("lame", exponent=exponent, aspect=0.8)
     # Harmonics from 512 on are left out: 1e-12 each where there is most to lose, they bend by 512^2 times as much.
-    assert curvature_range(table.harmonics)[0] > -1e-6
+    assert curvature_range(table.harmonics.copy())[0] > -1e-6
