@@ -22,7 +22,9 @@ def test_polygons_of_the_circle_have_trace_two() -> None:
     """n bounces shear by -2 n R / cos (closed form), for each point its own number of bounces."""
     periods, rotations = np.array([3, 4, 20, 5]), np.array([1, 1, 7, 2])
     p = np.cos(math.pi * rotations / periods)
-    at = return_map(build_table("ellipse", eccentricity=0.0).harmonics.copy(), np.linspace(0, 1, 4), p, periods, rotations)
+    at = return_map(
+        build_table("ellipse", eccentricity=0.0).harmonics.copy(), np.linspace(0, 1, 4), p, periods, rotations
+    )
     assert at.shift == pytest.approx(0.0, abs=1e-14)
     assert at.p == pytest.approx(p, abs=1e-14)
     assert at.trace == pytest.approx(2.0, abs=1e-11)
