@@ -31,6 +31,7 @@ from scanner.store import (
     prepare_store,
     refuse_losses,
     remove_leftovers,
+    stored_title,
     sweep_progress,
     write_pulse,
 )
@@ -160,6 +161,7 @@ def run_study(
     with StoreLock(path) as lock, log_beside(path), choose_display(progress) as display, Interrupts() as interrupts:
         refuse_losses(path)
         run = _Run(plan, path, lock, display, interrupts)
+        run.compare_titles()
         if not run.before.complete:
             check_numerics(path)
         check_limits(plan, path, 1.0 - run.before.tasks_finished / run.before.tasks)
@@ -195,6 +197,12 @@ class _Run:
             f"{plan.study.title!r} ({plan.study.fingerprint[:12]}): {self.before.tasks_finished} of "
             f"{self.before.tasks} tasks are finished",
         )
+
+    def compare_titles(self) -> None:
+        """Say so where the study has got another title since the store was made."""
+        kept = stored_title(self._path)
+        if kept != self._plan.study.title:
+            self._say(f"{self._path}: keeps the title it was made with, {kept!r}")
 
     def work(self, client: Client) -> None:
         """Have all that is not finished computed, until done or interrupted."""

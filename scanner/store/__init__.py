@@ -10,7 +10,7 @@ from scanner.store.opening import open_sweep
 from scanner.store.progress import SweepProgress, list_failures, sweep_progress
 from scanner.store.pulse import Pulse, read_pulse, write_pulse
 from scanner.store.regions import Regions, open_regions
-from scanner.store.template import check_numerics, is_vacant, note_finish, prepare_store
+from scanner.store.template import check_numerics, is_vacant, note_finish, prepare_store, stored_title
 
 __all__ = [
     "Charter",
@@ -37,6 +37,7 @@ __all__ = [
     "refuse_losses",
     "remove_leftovers",
     "repair",
+    "stored_title",
     "sweep_progress",
     "verify",
     "write_pulse",

@@ -64,6 +64,12 @@ def is_vacant(path: Path) -> bool:
     return not path.exists() or (path.is_dir() and not any(path.iterdir()))
 
 
+def stored_title(path: Path) -> str:
+    """Title that a store was made with; it stays when that of the study file is changed, as no result depends on it."""
+    root = read_root(path)
+    return "" if root is None else str(root["attributes"].get("title", ""))
+
+
 def check_fingerprint(path: Path, plan: Plan) -> None:
     """See that a store was made for this plan.
 

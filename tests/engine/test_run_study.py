@@ -95,6 +95,7 @@ def test_a_finished_store_is_left_as_it_is(client, tmp_path):
     report = scanner.run_study(grid(title='"Renamed"'), tmp_path / "grid.zarr", client=client, progress=False)
     assert everything(tmp_path / "grid.zarr") == before
     assert report.done == 6
+    assert "keeps the title it was made with, 'Grid'" in (tmp_path / "grid.log").read_text()
 
 
 def test_another_study_is_refused_and_nothing_is_changed(client, tmp_path):
