@@ -18,7 +18,7 @@ COMPILE = {
 from scanner.indicators import MINIMUM_BOUNCES, orbit_numbers
 from scanner.tables import build_table
 orbit_numbers(build_table("ellipse", eccentricity=0.5), [0.1], [0.2], MINIMUM_BOUNCES)
-build_table("radial_harmonic", amplitude=0.05, harmonic=2)
+build_table("radial_harmonic", amplitude=0.05, harmonic=2).symmetry
 """,
     "resonances": """
 from scanner.bounce.resonances import resonance_numbers

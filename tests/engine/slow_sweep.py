@@ -12,6 +12,7 @@ from contextlib import suppress
 from pathlib import Path
 
 import psutil
+from sweeps import everything
 
 from scanner.store import Ledger
 
@@ -120,6 +121,11 @@ class Sweep:
     def receipts(self) -> list[int]:
         """Tasks that are finished."""
         return Ledger(self.store).listed()
+
+    def receipt_files(self) -> dict[str, tuple[bytes, int]]:
+        """Contents and times of change of the receipts, without what a process left half-written when it ended."""
+        files = everything(Ledger(self.store).folder / "receipts")
+        return {name: found for name, found in files.items() if not name.endswith(".partial")}
 
     def await_receipts(self, count: int) -> None:
         """Wait until so many tasks are finished."""

@@ -57,9 +57,10 @@ def test_a_full_disk_ends_the_run_in_one_line(study, undisturbed, carry_on, disk
     assert "Traceback" not in printed
     assert "Logging error" not in printed
     assert 1 <= len(kept) < TASKS
-    before = everything(sweep.store / "table_status/ledger/receipts")
+    before = sweep.receipt_files()
+    assert len(before) == len(kept)
     carry_on(sweep.store)
-    after = everything(sweep.store / "table_status/ledger/receipts")
+    after = sweep.receipt_files()
     assert {name: after[name] for name in before} == before
     assert results(sweep.store) == undisturbed
 

@@ -9,10 +9,10 @@ import pytest
 from hosts import FAR, NEAR, two_hosts, why_no_hosts
 from own_cluster import IMPATIENT, LOOPBACK, own_cluster
 from slow_sweep import TASKS, Sweep, wait_until
-from sweeps import everything, results
+from sweeps import results
 
 from scanner.quantities import DONE
-from scanner.store import Ledger, open_sweep, sweep_progress
+from scanner.store import open_sweep, sweep_progress
 
 
 def test_ten_killed_workers_cost_their_tasks_only(study, undisturbed, tmp_path):
@@ -46,10 +46,10 @@ def test_a_killed_client_is_carried_on(everybody, study, undisturbed, carry_on, 
         # A task may have been killed between its chunks and its receipt.
         assert int((tree["table_status"] == DONE).sum()) >= 23 * len(kept)
     (first.store / "area" / "c.0.0123456789.partial").write_bytes(b"half")
-    before = everything(Ledger(first.store).folder / "receipts")
+    before = first.receipt_files()
     carry_on(first.store)
     assert results(first.store) == undisturbed
-    after = everything(Ledger(first.store).folder / "receipts")
+    after = first.receipt_files()
     assert {name: after[name] for name in before} == before
     assert f"{len(kept)} of {TASKS} tasks are finished" in first.log()
 
