@@ -64,9 +64,9 @@ class Streams:
 class Recording:
     """Where the bounces of a stage from number ``first`` on led, shape (blocks, bounces, 2, LANES).
 
-    Boundary parameter and p / 2 in fixed point: what is kept of a bounce passes through memory, and takes a third of
-    the time of following it if it is twice as long.  ``columns`` has the place of each orbit, block after block; it
-    means nothing for those that had been left before.
+    Boundary parameter and p / 2 in fixed point, as what is kept of a bounce passes through memory: with twice as many
+    bits that took up to three tenths of the time of following it.  ``columns`` has the place of each orbit, block after
+    block; it means nothing for those that had been left before.
     """
 
     first: int
