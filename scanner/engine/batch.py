@@ -7,6 +7,7 @@ import importlib
 import logging
 import os
 import shlex
+import sys
 import time
 from asyncio.subprocess import PIPE
 from collections.abc import Callable, Sequence
@@ -156,6 +157,8 @@ def job_options(resources: Resources, job_logs: Path) -> dict[str, Any]:
         "cores": 1,
         "processes": 1,
         "memory": resources.memory or f"{USUAL_MEMORY}B",
+        # quoted, as dask-jobqueue puts its own into the script as it is
+        "python": dask.config.get(f"jobqueue.{runner}.python", None) or shlex.quote(sys.executable),
         "death_timeout": WAIT_FOR_SCHEDULER,
         "log_directory": str(job_logs),
         "interface": interface or (None if resources.host else LOOPBACK),

@@ -1,5 +1,6 @@
 import sys
 
+import dask
 import dask_jobqueue
 import pytest
 
@@ -57,6 +58,14 @@ def test_a_job_asks_for_what_the_study_says(runner, header, tmp_path):
 def test_what_is_left_open_is_left_to_the_configuration(tmp_path):
     options = job_options(Resources(runner="sge", workers=1), tmp_path)
     assert not options.keys() & {"queue", "account", "project", "walltime", "security"}
+
+
+def test_the_interpreter_may_lie_in_a_folder_with_a_space_and_be_another_one(tmp_path, monkeypatch):
+    monkeypatch.setattr("sys.executable", "/a folder/bin/python")
+    with dask_jobqueue.SLURMCluster(**job_options(Resources(runner="slurm", workers=1), tmp_path)) as cluster:
+        assert "\n'/a folder/bin/python' -m distributed" in cluster.job_script()
+    with dask.config.set({"jobqueue.slurm.python": "/opt/python"}):
+        assert job_options(Resources(runner="slurm"), tmp_path)["python"] == "/opt/python"
 
 
 def test_everything_stays_on_the_loopback_address_unless_told_otherwise(tmp_path):
