@@ -9,6 +9,7 @@ from scipy.special import ellipk, ellipkinc
 from scanner import build_table, measure_orbits
 from scanner.bounce.return_map import return_map
 from scanner.indicators.islands import widest_gap
+from scanner.measure import section_points
 from scanner.quantities import CHAOTIC, REGULAR_LIBRATIONAL
 
 
@@ -99,3 +100,14 @@ def test_orbits_about_a_parabolic_centre_are_in_an_island() -> None:
     assert np.all(found.island_period == 2)
     # Its winding tends to nothing, and the tangent map does not say how: it is left open.
     assert np.isnan(found.island_winding).all()
+
+
+def test_a_centre_at_the_origin_of_the_boundary_is_there_to_whichever_side_it_is_rounded():
+    """The limacon's axis of symmetry meets its boundary at the origin and half-way round: islands lie on it."""
+    table = build_table("limacon", quadratic=0.1)
+    s, p = section_points(table, 1, 1, 256)
+    centre = measure_orbits(table, s, p, 2048).island_centre_s.values
+    centre = centre[np.isfinite(centre)]
+    # Newton's last step is below 1e-13.
+    assert (np.abs(centre - np.rint(centre)) < 1e-12).any()
+    assert ((centre >= 0.0) & (centre < 1.0 - 1e-12)).all()
