@@ -33,8 +33,8 @@ REGULAR_DIGITS = 4.0
 """Digits to which the averages of a regular orbit must have settled."""
 SETTLED_DIGITS = 8.5
 """Digits to which the first and the last three quarters must agree after FIRST_HORIZON bounces for an orbit to be
-left as regular.  Of 155648 orbits, most of them of mixed tables, those that passed for shears but were chaotic by 131072
-bounces reached 7.8 digits at most after 512 bounces, and 8.8 after 1024."""
+left as regular.  Of 155648 orbits, most of them of mixed tables, those that passed for shears but were chaotic by
+131072 bounces reached 7.8 digits at most after 512 bounces, and 8.8 after 1024."""
 DIGITS_PER_DOUBLING = 0.5
 """How much more is asked for at each later horizon: those orbits reached 9.2 after 2048 bounces and 9.7 after 4096."""
 MOST_SETTLED_DIGITS = 11.0
