@@ -1,7 +1,7 @@
 """The one door to numba: every kernel is compiled with the same flags and cached by the hash of all kernel sources.
 
 Kernels hold no lock (``nogil``) and use plain IEEE arithmetic: no fast-math, and products are fused with sums where
-``fused`` says so and nowhere else.  So their results have the same bits on every processor.
+``vectors.fused`` says so and nowhere else.  So their results have the same bits on every processor.
 """
 
 from __future__ import annotations
@@ -23,11 +23,12 @@ from numba.core import types
 from numba.extending import intrinsic
 
 Function = TypeVar("Function", bound=Callable[..., object])
+Number = TypeVar("Number", np.float64, np.int64)
 
 CACHE_LINE = 64
 WIDEST_VECTORS = 512  # bits
 
-KERNEL_ROOMS = ("compiled.py", "elementary.py", "tables", "bounce", "indicators")
+KERNEL_ROOMS = ("compiled.py", "vectors.py", "elementary.py", "tables", "bounce", "indicators")
 
 
 def _sources_fingerprint() -> str:
@@ -75,28 +76,16 @@ def kernel(function: Function) -> Function:
 
 
 @intrinsic
-def _fused(typing: Any, a: Any, b: Any, c: Any) -> tuple[Any, Callable[..., Any]]:
+def _stack_room(typing: Any, count: Any, kind: Any) -> tuple[Any, Callable[..., Any]]:
     def build(context: Any, builder: Any, signature: Any, values: Any) -> Any:
-        return builder.fma(*values)
-
-    return types.float64(types.float64, types.float64, types.float64), build
-
-
-fused: Callable[[float, float, float], float] = cast(Any, _fused)
-"""a b + c, rounded once: one instruction on processors since about 2013, and the same bits, slowly, on others."""
-
-
-@intrinsic
-def _stack_room(typing: Any, count: Any) -> tuple[Any, Callable[..., Any]]:
-    def build(context: Any, builder: Any, signature: Any, values: Any) -> Any:
-        room = builder.alloca(context.get_value_type(types.float64), size=values[0])
+        room = builder.alloca(context.get_value_type(kind.dtype), size=values[0])
         room.align = CACHE_LINE
         return room
 
-    return types.CPointer(types.float64)(types.int64), build  # type: ignore[no-untyped-call]
+    return types.CPointer(kind.dtype)(types.int64, kind), build  # type: ignore[no-untyped-call]
 
 
-_room: Callable[[int], Any] = cast(Any, _stack_room)
+_room: Callable[[int, Any], Any] = cast(Any, _stack_room)
 
 
 @intrinsic
@@ -134,13 +123,13 @@ def pasted(function: Function) -> Function:
 
 
 @pasted
-def stack_array(shape: tuple[int, ...]) -> npt.NDArray[np.float64]:
+def stack_array(shape: tuple[int, ...], kind: type[Number]) -> npt.NDArray[Number]:
     """Array on the stack of the kernel, not filled; gone when the kernel is left.
 
-    The compiler knows that such arrays do not overlap.
+    The compiler knows that such arrays do not overlap, and nobody counts who refers to them.
     """
     size = 1
     for length in shape:
         size *= length
-    array: npt.NDArray[np.float64] = carray(_room(size), shape)
+    array: npt.NDArray[Number] = carray(_room(size, kind), shape)
     return array

@@ -14,7 +14,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from scanner.compiled import fused, inlined, kernel
+from scanner.compiled import inlined, kernel
+from scanner.vectors import fused, near_inverse_root, where
 
 FloatArray = NDArray[np.float64]
 
@@ -79,12 +80,12 @@ def angle_turns(y: float, x: float) -> float:
     across = abs(y)
     along = abs(x)
     steep = across > along
-    low = along if steep else across
-    high = across if steep else along
+    low = where(steep, along, across)
+    high = where(steep, across, along)
     wide = low > _TAN_SIXTEENTH * high
-    top = low - high if wide else low
-    bottom = low + high if wide else high
-    slope = top / (1.0 if bottom == 0.0 else bottom)
+    top = where(wide, low - high, low)
+    bottom = where(wide, low + high, high)
+    slope = top / where(bottom == 0.0, 1.0, bottom)
     square = slope * slope
     tail = fused(square, -0.0030497379878334507, 0.006241985651407801)
     tail = fused(square, tail, -0.008093077387038777)
@@ -98,14 +99,31 @@ def angle_turns(y: float, x: float) -> float:
     tail = fused(square, tail, -0.05305164769729844)
     angle = fused(slope, _TURNS_PER_RADIAN, slope * square * tail)
     # The offset, an exact number of eighths, is added last: one rounding.
-    offset = 0.125 if wide else 0.0
-    angle = -angle if steep else angle
-    offset = 0.25 - offset if steep else offset
-    angle = -angle if x < 0.0 else angle
-    offset = 0.5 - offset if x < 0.0 else offset
+    offset = where(wide, 0.125, 0.0)
+    angle = where(steep, -angle, angle)
+    offset = where(steep, 0.25 - offset, offset)
+    left = x < 0.0
+    angle = where(left, -angle, angle)
+    offset = where(left, 0.5 - offset, offset)
     angle = offset + angle
-    angle = -angle if y < 0.0 else angle
-    return 0.5 if angle == -0.5 else angle
+    angle = where(y < 0.0, -angle, angle)
+    return where(angle == -0.5, 0.5, angle)
+
+
+@inlined
+def inverse_root(x: float) -> float:
+    """One over the square root of a positive normal number, within 1.5 units of the last place.
+
+    Two steps of third order and one of Newton's from a rough value: their products and sums take a third of the time
+    that a root and a division do.
+    """
+    half = 0.5 * x
+    y = near_inverse_root(x)
+    rest = fused(-(half * y), y, 0.5)
+    y = fused(y, fused(1.5 * rest, rest, rest), y)
+    rest = fused(-(half * y), y, 0.5)
+    y = fused(y, fused(1.5 * rest, rest, rest), y)
+    return fused(y, fused(-(half * y), y, 0.5), y)
 
 
 @inlined

@@ -9,7 +9,8 @@ import pytest
 from llvmlite.binding import get_host_cpu_features
 
 from scanner import elementary
-from scanner.compiled import fused, use_widest_vectors
+from scanner.compiled import use_widest_vectors
+from scanner.vectors import fused
 
 mpmath.mp.dps = 40
 
@@ -70,6 +71,18 @@ def test_fixed_point_rounds_to_multiples_of_its_unit_and_drops_whole_turns():
         expected = round(Fraction(angle) / Fraction(elementary.FIXED_UNIT))
         assert (int(fixed(angle)) - expected) % 2**32 == 0
         assert -(2**31) <= fixed(angle) < 2**31
+
+
+def test_inverse_roots_are_within_two_units_of_the_last_place():
+    @numba.njit
+    def inverse_root(x):
+        return elementary.inverse_root(x)
+
+    x = np.concatenate([10.0 ** RNG.uniform(-300, 300, 500), RNG.uniform(0.5, 2, 500), 4.0 ** np.arange(-500, 500, 37)])
+    found = [inverse_root(value) for value in x]
+    assert units_of_last_place(found, [1 / mpmath.sqrt(mpmath.mpf(value)) for value in x]) < 1.5
+    assert inverse_root(1.0) == 1.0
+    assert np.isnan(inverse_root(np.nan))
 
 
 def test_logarithms_are_within_two_units_of_the_last_place():

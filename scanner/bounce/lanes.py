@@ -1,6 +1,7 @@
 """How a block of orbits lies in memory: every quantity is a row of ``LANES`` numbers, one for each orbit.
 
-A loop over a row is plain arithmetic without branches, which the compiler turns into vector instructions.
+A stage of the bounce takes one vector of orbits after the other out of the rows; what only looks at bounces goes over
+whole rows in loops of plain arithmetic without branches, which the compiler turns into vector instructions by itself.
 """
 
 from __future__ import annotations
@@ -11,53 +12,48 @@ import numpy as np
 import numpy.typing as npt
 
 from scanner.compiled import inlined
+from scanner.vectors import WIDTH
 
 Number = TypeVar("Number", np.float64, np.int64)
 
 LANES = 64
 """Orbits in a block; its rows stay in the processor's first cache."""
 
-GRAIN = 16
+GRAIN = WIDTH
 """Orbits of a block that is not full are followed so many at a time: only the last of them are idle."""
 
 BUFFER = 16
 """Most bounces that are computed before the indicators look at them."""
 
-# Rows of the state of a block: what is known of the last bounce, and the scratch of the next one.
+# Rows of the state of a block: what is known of the last bounce, and after these the scratch of the next one.
 (
     MOMENTUM,  # p, sine of the angle from the inward normal
     COSINE,  # sqrt(1 - p^2), carried beside p: near glancing it cannot be had back from p
     TANGENT_X,  # unit tangent, counter-clockwise
     TANGENT_Y,
     CURVATURE,
-    POINT_X,
+    POINT_X,  # from the centre of the table
     POINT_Y,
     TURN_RE,  # exp(i t) at the last bounce
     TURN_IM,
+    FAILED,  # 0, or 1 once a chord of this orbit could not be found
+    SLOPE_X,  # first and second derivative of the boundary by t there
+    SLOPE_Y,
+    BEND_X,
+    BEND_Y,
     RAY_X,  # unit vector of the outgoing ray
     RAY_Y,
     HALF_COS,  # cosine and sine of half the advance of the boundary parameter
     HALF_SIN,
-    SUM_0,  # sums over the harmonics at the last bounce: point, first and second derivative
-    SUM_1,
-    SUM_2,
-    SUM_3,
-    SUM_4,
-    SUM_5,
-    POWER_RE,  # running power of a unit complex number
-    POWER_IM,
-    PART_0,  # running sums of the cross product and its derivatives
-    PART_1,
-    PART_2,
-    PART_3,
-    START_1,  # what these derivatives are at the near end of the chord
+    START_1,  # what the derivatives of the cross product are at the near end of the chord
     START_2,
     START_3,
-    LAST_STEP,  # size of the last correction, over that of the chord
+    REACH,  # fifth power of the longest step that would be the last one
     SETTLED,  # 1 once the chord in hand is found: its lane is left alone while others are corrected
-    FAILED,  # 0, or 1 once a chord of this orbit could not be found
-) = range(31)
-STATE_ROWS = 31
+) = range(23)
+STATE_ROWS = 23
+KEPT_ROWS = 10
+"""The first rows are all that has to be kept of an orbit from one block of bounces to the next."""
 
 # Rows of the buffer, each of shape (BUFFER, LANES).
 ADVANCE, P_AFTER, CHORD, D_SS, D_SP, D_PS, D_PP = range(7)

@@ -15,9 +15,11 @@ import math
 import numpy as np
 import numpy.typing as npt
 
-from scanner.bounce.chord import aim, find_half_advance
+from scanner.bounce.chord import find_half_advance
 from scanner.bounce.lanes import (
     ADVANCE,
+    BEND_X,
+    BEND_Y,
     BUFFER,
     BUFFER_ROWS,
     CHORD,
@@ -30,141 +32,132 @@ from scanner.bounce.lanes import (
     FAILED,
     HALF_COS,
     HALF_SIN,
+    KEPT_ROWS,
     LANES,
     MOMENTUM,
     P_AFTER,
     POINT_X,
     POINT_Y,
-    POWER_IM,
-    POWER_RE,
     RAY_X,
     RAY_Y,
+    SLOPE_X,
+    SLOPE_Y,
     STATE_ROWS,
-    SUM_0,
-    SUM_1,
-    SUM_2,
-    SUM_3,
-    SUM_4,
-    SUM_5,
     TANGENT_X,
     TANGENT_Y,
     TURN_IM,
     TURN_RE,
 )
 from scanner.bounce.series import (
+    ORDER,
+    SQUARE,
+    XC,
+    XS,
+    YC,
+    YS,
     Gaps,
     Plan,
     Terms,
     difference_of_products,
-    make_plan,
     make_room,
+    next_power,
+    plan_here,
     product,
     raise_to_gaps,
     sum_of_products,
 )
-from scanner.compiled import fused, inlined, kernel, pasted, stack_array, use_widest_vectors
-from scanner.elementary import angle_turns, cos_sin_turns
+from scanner.compiled import inlined, kernel, pasted, stack_array, use_widest_vectors
+from scanner.elementary import angle_turns, cos_sin_turns, inverse_root
+from scanner.vectors import WIDTH, fused, put, take, where
 
 Floats = npt.NDArray[np.float64]
+Derivatives = tuple[float, float, float, float, float, float]
+"""Point (x, y) on the boundary and its first and second derivative by t."""
 
 
-@pasted
-def begin_powers(state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
-    """Begin the powers of exp(i t) with the first one."""
-    term_re, term_im = terms
-    gap_re, gap_im = gaps
-    for j in range(lanes):
-        re = state[TURN_RE, j]
-        im = state[TURN_IM, j]
-        gap_re[0, j] = term_re[0, j] = state[POWER_RE, j] = re
-        gap_im[0, j] = term_im[0, j] = state[POWER_IM, j] = im
-
-
-@pasted
-def fill_powers(plan: Plan, state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
-    """Fill in the powers of exp(i t) of every harmonic."""
-    gap_of = plan.gap_of
-    term_re, term_im = terms
-    gap_re, gap_im = gaps
-    begin_powers(state, terms, gaps, lanes)
-    raise_to_gaps(plan, gaps, lanes)
-    for i in range(1, gap_of.shape[0]):
-        gap = gap_of[i]
-        for j in range(lanes):
-            re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
-            state[POWER_RE, j] = term_re[i, j] = re
-            state[POWER_IM, j] = term_im[i, j] = im
-
-
-@pasted
-def evaluate_boundary(harmonics: Floats, plan: Plan, state: Floats, terms: Terms, gaps: Gaps, lanes: int) -> None:
-    """Sum point, tangent and second derivative at exp(i t) of every lane, and keep the powers of exp(i t)."""
-    orders = plan.orders
-    gap_of = plan.gap_of
-    term_re, term_im = terms
-    gap_re, gap_im = gaps
-    xc = harmonics[0, 1]
-    xs = harmonics[1, 1]
-    yc = harmonics[2, 1]
-    ys = harmonics[3, 1]
-    for j in range(lanes):
-        re = state[TURN_RE, j]
-        im = state[TURN_IM, j]
+@inlined
+def sum_series(plan: Plan, re: float, im: float, terms: Terms, gaps: Gaps, first: int) -> Derivatives:
+    """Sum the boundary at exp(i t), and keep the powers of exp(i t)."""
+    series = plan.series
+    xc = series[0, XC]
+    xs = series[0, XS]
+    yc = series[0, YC]
+    ys = series[0, YS]
+    x0 = sum_of_products(xc, re, xs, im)
+    y0 = sum_of_products(yc, re, ys, im)
+    x1 = difference_of_products(xs, re, xc, im)
+    y1 = difference_of_products(ys, re, yc, im)
+    x2 = -x0
+    y2 = -y0
+    for i in range(1, series.shape[0]):
+        xc = series[i, XC]
+        xs = series[i, XS]
+        yc = series[i, YC]
+        ys = series[i, YS]
+        order = series[i, ORDER]
+        square = series[i, SQUARE]
+        re, im = next_power(plan, gaps, i, first, re, im)
+        put(terms.re, i, first, re)
+        put(terms.im, i, first, im)
         x = sum_of_products(xc, re, xs, im)
         y = sum_of_products(yc, re, ys, im)
-        state[SUM_0, j] = harmonics[0, 0] + x
-        state[SUM_1, j] = harmonics[2, 0] + y
-        state[SUM_2, j] = difference_of_products(xs, re, xc, im)
-        state[SUM_3, j] = difference_of_products(ys, re, yc, im)
-        state[SUM_4, j] = -x
-        state[SUM_5, j] = -y
-    raise_to_gaps(plan, gaps, lanes)
-    for i in range(1, orders.shape[0]):
-        k = orders[i]
-        gap = gap_of[i]
-        xc = harmonics[0, k]
-        xs = harmonics[1, k]
-        yc = harmonics[2, k]
-        ys = harmonics[3, k]
-        order = float(k)
-        square = order * order
-        for j in range(lanes):
-            re, im = product(state[POWER_RE, j], state[POWER_IM, j], gap_re[gap, j], gap_im[gap, j])
-            state[POWER_RE, j] = re
-            state[POWER_IM, j] = im
-            x = sum_of_products(xc, re, xs, im)
-            y = sum_of_products(yc, re, ys, im)
-            term_re[i, j] = re
-            term_im[i, j] = im
-            state[SUM_0, j] += x
-            state[SUM_1, j] += y
-            state[SUM_2, j] = fused(order, difference_of_products(xs, re, xc, im), state[SUM_2, j])
-            state[SUM_3, j] = fused(order, difference_of_products(ys, re, yc, im), state[SUM_3, j])
-            state[SUM_4, j] = fused(-square, x, state[SUM_4, j])
-            state[SUM_5, j] = fused(-square, y, state[SUM_5, j])
+        x0 += x
+        y0 += y
+        x1 = fused(order, difference_of_products(xs, re, xc, im), x1)
+        y1 = fused(order, difference_of_products(ys, re, yc, im), y1)
+        x2 = fused(-square, x, x2)
+        y2 = fused(-square, y, y2)
+    return x0, y0, x1, y1, x2, y2
 
 
-@kernel
-def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats) -> None:
-    """Set up a block at boundary parameters ``turns`` and momenta ``momenta``, both of shape (LANES,)."""
-    plan = make_plan(harmonics)
-    terms, gaps = make_room(plan)
-    for j in range(LANES):
-        state[TURN_RE, j], state[TURN_IM, j] = cos_sin_turns(turns[j])
-    begin_powers(state, terms, gaps, LANES)
-    evaluate_boundary(harmonics, plan, state, terms, gaps, LANES)
-    for j in range(LANES):
-        x1 = state[SUM_2, j]
-        y1 = state[SUM_3, j]
-        over_speed = 1.0 / math.sqrt(x1 * x1 + y1 * y1)
-        state[MOMENTUM, j] = momenta[j]
-        state[COSINE, j] = math.sqrt((1.0 - momenta[j]) * (1.0 + momenta[j]))
-        state[TANGENT_X, j] = x1 * over_speed
-        state[TANGENT_Y, j] = y1 * over_speed
-        state[CURVATURE, j] = (x1 * state[SUM_5, j] - y1 * state[SUM_4, j]) * over_speed * over_speed * over_speed
-        state[POINT_X, j] = state[SUM_0, j]
-        state[POINT_Y, j] = state[SUM_1, j]
-        state[FAILED, j] = 0.0
+@inlined
+def sum_mirrored_series(plan: Plan, re: float, im: float, terms: Terms, gaps: Gaps, first: int) -> Derivatives:
+    """Do what ``sum_series`` does, for a mirrored boundary with half the work."""
+    series = plan.series
+    xc = series[0, XC]
+    ys = series[0, YS]
+    x0 = xc * re
+    y0 = ys * im
+    x1 = -xc * im
+    y1 = ys * re
+    x2 = -x0
+    y2 = -y0
+    for i in range(1, series.shape[0]):
+        xc = series[i, XC]
+        ys = series[i, YS]
+        order = series[i, ORDER]
+        square = series[i, SQUARE]
+        re, im = next_power(plan, gaps, i, first, re, im)
+        put(terms.re, i, first, re)
+        put(terms.im, i, first, im)
+        x0 = fused(xc, re, x0)
+        y0 = fused(ys, im, y0)
+        x1 = fused(-order * xc, im, x1)
+        y1 = fused(order * ys, re, y1)
+        x2 = fused(-square * xc, re, x2)
+        y2 = fused(-square * ys, im, y2)
+    return x0, y0, x1, y1, x2, y2
+
+
+@inlined
+def evaluate_boundary(
+    plan: Plan, re: float, im: float, state: Floats, terms: Terms, gaps: Gaps, first: int
+) -> Derivatives:
+    """Sum the boundary at exp(i t), and prepare what the next chord needs to know of this end."""
+    put(state, TURN_RE, first, re)
+    put(state, TURN_IM, first, im)
+    put(terms.re, 0, first, re)
+    put(terms.im, 0, first, im)
+    raise_to_gaps(plan, re, im, gaps, first)
+    if plan.mirrored:
+        x0, y0, x1, y1, x2, y2 = sum_mirrored_series(plan, re, im, terms, gaps, first)
+    else:
+        x0, y0, x1, y1, x2, y2 = sum_series(plan, re, im, terms, gaps, first)
+    put(state, SLOPE_X, first, x1)
+    put(state, SLOPE_Y, first, y1)
+    put(state, BEND_X, first, x2)
+    put(state, BEND_Y, first, y2)
+    return x0, y0, x1, y1, x2, y2
 
 
 @inlined
@@ -174,20 +167,38 @@ def to_unit(x: float, y: float) -> tuple[float, float]:
     return x * scale, y * scale
 
 
-@pasted
-def move_to_end(state: Floats, terms: Terms, gaps: Gaps, buffer: Floats, row: int, lanes: int) -> None:
-    """Turn exp(i t) by the full advance, begin its powers there, and note the advance in turns."""
-    term_re, term_im = terms
-    gap_re, gap_im = gaps
-    for j in range(lanes):
-        vr, vi = to_unit(state[HALF_COS, j], state[HALF_SIN, j])
-        buffer[ADVANCE, row, j] = 2.0 * angle_turns(vi, vr)
-        ur = difference_of_products(vr, vr, vi, vi)
-        ui = 2.0 * vr * vi
-        re, im = product(state[TURN_RE, j], state[TURN_IM, j], ur, ui)
-        re, im = to_unit(re, im)
-        state[TURN_RE, j] = term_re[0, j] = gap_re[0, j] = state[POWER_RE, j] = re
-        state[TURN_IM, j] = term_im[0, j] = gap_im[0, j] = state[POWER_IM, j] = im
+@inlined
+def face(state: Floats, first: int, at: Derivatives) -> tuple[float, float, float]:
+    """Unit tangent and curvature of the boundary at a point of it; kept with the point."""
+    x0, y0, x1, y1, x2, y2 = at
+    over_speed = inverse_root(sum_of_products(x1, x1, y1, y1))
+    tx = x1 * over_speed
+    ty = y1 * over_speed
+    curvature = difference_of_products(x1, y2, y1, x2) * over_speed * over_speed * over_speed
+    put(state, POINT_X, first, x0)
+    put(state, POINT_Y, first, y0)
+    put(state, TANGENT_X, first, tx)
+    put(state, TANGENT_Y, first, ty)
+    put(state, CURVATURE, first, curvature)
+    return tx, ty, curvature
+
+
+@kernel
+def start_block(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats) -> None:
+    """Set up a block at boundary parameters ``turns`` and momenta ``momenta``, both of shape (LANES,)."""
+    plan = plan_here(harmonics)
+    here = stack_array((STATE_ROWS, LANES), np.float64)
+    terms, gaps = make_room(plan)
+    for j in range(LANES):
+        here[TURN_RE, j], here[TURN_IM, j] = cos_sin_turns(turns[j])
+        here[MOMENTUM, j] = momenta[j]
+        here[COSINE, j] = math.sqrt((1.0 - momenta[j]) * (1.0 + momenta[j]))
+        here[FAILED, j] = 0.0
+    for first in range(0, LANES, WIDTH):
+        re = take(here, TURN_RE, first)
+        im = take(here, TURN_IM, first)
+        face(here, first, evaluate_boundary(plan, re, im, here, terms, gaps, first))
+    copy_rows(here, state)
 
 
 @inlined
@@ -203,68 +214,64 @@ def tangent_map(k0: float, c0: float, k1: float, c1: float, length: float) -> tu
     )
 
 
-@pasted
-def reflect(state: Floats, buffer: Floats, row: int, lanes: int) -> None:
-    """Reflect at the new point: momentum, chord and tangent map of this bounce."""
-    for j in range(lanes):
-        x1 = state[SUM_2, j]
-        y1 = state[SUM_3, j]
-        over_speed = 1.0 / math.sqrt(sum_of_products(x1, x1, y1, y1))
-        tx = x1 * over_speed
-        ty = y1 * over_speed
-        k1 = difference_of_products(x1, state[SUM_5, j], y1, state[SUM_4, j]) * over_speed * over_speed * over_speed
-        rx = state[RAY_X, j]
-        ry = state[RAY_Y, j]
-        length = fused(state[SUM_0, j] - state[POINT_X, j], rx, (state[SUM_1, j] - state[POINT_Y, j]) * ry)
-        p, c1 = to_unit(sum_of_products(tx, rx, ty, ry), difference_of_products(ty, rx, tx, ry))
-        c0 = state[COSINE, j]
-        k0 = state[CURVATURE, j]
-        ss, sp, ps, pp = tangent_map(k0, c0, k1, c1, length)
-        buffer[P_AFTER, row, j] = p
-        buffer[CHORD, row, j] = length
-        buffer[D_SS, row, j] = ss
-        buffer[D_SP, row, j] = sp
-        buffer[D_PS, row, j] = ps
-        buffer[D_PP, row, j] = pp
-        state[FAILED, j] += 0.0 if c1 > 0.0 else 1.0
-        state[MOMENTUM, j] = p
-        state[COSINE, j] = c1
-        state[TANGENT_X, j] = tx
-        state[TANGENT_Y, j] = ty
-        state[CURVATURE, j] = k1
-        state[POINT_X, j] = state[SUM_0, j]
-        state[POINT_Y, j] = state[SUM_1, j]
+@inlined
+def reflect(plan: Plan, state: Floats, terms: Terms, gaps: Gaps, buffer: Floats, row: int, first: int) -> None:
+    """Go to the end of the chord and reflect there: advance, momentum, chord and tangent map of this bounce."""
+    vr = take(state, HALF_COS, first)
+    vi = take(state, HALF_SIN, first)
+    advance = 2.0 * angle_turns(vi, vr)
+    ur = difference_of_products(vr, vr, vi, vi)
+    ui = 2.0 * vr * vi
+    re, im = product(take(state, TURN_RE, first), take(state, TURN_IM, first), ur, ui)
+    re, im = to_unit(re, im)
+    x0 = take(state, POINT_X, first)
+    y0 = take(state, POINT_Y, first)
+    k0 = take(state, CURVATURE, first)
+    c0 = take(state, COSINE, first)
+    rx = take(state, RAY_X, first)
+    ry = take(state, RAY_Y, first)
+    there = evaluate_boundary(plan, re, im, state, terms, gaps, first)
+    tx, ty, k1 = face(state, first, there)
+    length = fused(there[0] - x0, rx, (there[1] - y0) * ry)
+    p, c1 = to_unit(sum_of_products(tx, rx, ty, ry), difference_of_products(ty, rx, tx, ry))
+    put(state, FAILED, first, where(c1 > 0.0, take(state, FAILED, first), 1.0))
+    put(state, MOMENTUM, first, p)
+    put(state, COSINE, first, c1)
+    ss, sp, ps, pp = tangent_map(k0, c0, k1, c1, length)
+    put(buffer, ADVANCE * BUFFER + row, first, advance)
+    put(buffer, P_AFTER * BUFFER + row, first, p)
+    put(buffer, CHORD * BUFFER + row, first, length)
+    put(buffer, D_SS * BUFFER + row, first, ss)
+    put(buffer, D_SP * BUFFER + row, first, sp)
+    put(buffer, D_PS * BUFFER + row, first, ps)
+    put(buffer, D_PP * BUFFER + row, first, pp)
 
 
 @pasted
-def bounce_lanes(
-    harmonics: Floats,
-    plan: Plan,
-    state: Floats,
-    terms: Terms,
-    gaps: Gaps,
-    buffer: Floats,
-    count: int,
-    lanes: int,
-) -> None:
+def set_out(plan: Plan, state: Floats, terms: Terms, gaps: Gaps) -> None:
+    """Prepare the first chords of a block whose state was kept elsewhere."""
+    for first in range(0, LANES, WIDTH):
+        evaluate_boundary(plan, take(state, TURN_RE, first), take(state, TURN_IM, first), state, terms, gaps, first)
+
+
+@pasted
+def bounce_lanes(plan: Plan, state: Floats, terms: Terms, gaps: Gaps, buffer: Floats, count: int, lanes: int) -> None:
     """Bounce every orbit of a block ``count`` times (at most BUFFER) and fill as many rows of the buffer.
 
-    Only the first ``lanes`` orbits are followed, a multiple of GRAIN; ``fill_powers`` must have gone before.  The
-    arrays must be on the stack of the kernel this is copied into: then the compiler knows the length of their rows and
-    that none overlap, and the loops over lanes become vector instructions.
+    Only the first ``lanes`` orbits are followed, a multiple of GRAIN; ``set_out`` must have gone before.  The arrays
+    must be on the stack of the kernel this is copied into: then the compiler knows that none overlap.  Stages go over
+    all orbits one after the other, so that while one vector waits for a division the next is worked on.
     """
     for row in range(count):
-        aim(state, lanes)
-        find_half_advance(harmonics, plan, state, terms, gaps, lanes)
-        move_to_end(state, terms, gaps, buffer, row, lanes)
-        evaluate_boundary(harmonics, plan, state, terms, gaps, lanes)
-        reflect(state, buffer, row, lanes)
+        find_half_advance(plan, state, terms, gaps, lanes)
+        for first in range(0, lanes, WIDTH):
+            reflect(plan, state, terms, gaps, buffer, row, first)
 
 
 @pasted
 def copy_rows(source: Floats, target: Floats) -> None:
-    """Copy a block's rows by a loop: numba's own assignment of slices takes seconds to compile."""
-    for row in range(source.shape[0]):
+    """Copy the rows that are kept of a block by a loop: numba's own assignment of slices takes seconds to compile."""
+    for row in range(KEPT_ROWS):
         for j in range(LANES):
             target[row, j] = source[row, j]
 
@@ -278,7 +285,7 @@ def bounce_block(harmonics: Floats, state: Floats, buffer: Floats, count: int, l
     harmonics
         Boundary, shape (4, K + 1).
     state
-        Shape (STATE_ROWS, LANES): where the orbits are, set up by ``start_block``; updated.
+        Shape (KEPT_ROWS, LANES): where the orbits are, set up by ``start_block``; updated.
     buffer
         Shape (BUFFER_ROWS, BUFFER, LANES): advance, p, chord and tangent map of each bounce.
     count
@@ -287,13 +294,13 @@ def bounce_block(harmonics: Floats, state: Floats, buffer: Floats, count: int, l
         Orbits to follow, a multiple of GRAIN.
     """
     use_widest_vectors()
-    plan = make_plan(harmonics)
-    here = stack_array((STATE_ROWS, LANES))
-    seen = stack_array((BUFFER_ROWS, BUFFER, LANES))
+    plan = plan_here(harmonics)
+    here = stack_array((STATE_ROWS, LANES), np.float64)
+    seen = stack_array((BUFFER_ROWS, BUFFER, LANES), np.float64)
     terms, gaps = make_room(plan)
     copy_rows(state, here)
-    fill_powers(plan, here, terms, gaps, LANES)
-    bounce_lanes(harmonics, plan, here, terms, gaps, seen, count, lanes)
+    set_out(plan, here, terms, gaps)
+    bounce_lanes(plan, here, terms, gaps, seen, count, lanes)
     copy_rows(here, state)
     for kind in range(BUFFER_ROWS):
         for row in range(count):

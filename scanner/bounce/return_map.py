@@ -16,9 +16,9 @@ from scanner.bounce.lanes import (
     D_PS,
     D_SP,
     D_SS,
+    KEPT_ROWS,
     LANES,
     P_AFTER,
-    STATE_ROWS,
     busy_lanes,
     fill_up,
 )
@@ -87,7 +87,7 @@ def return_block(
     matrix: Floats,
 ) -> None:
     """Follow the first ``size`` orbits of a block, each for its own number of bounces; fills the last three arrays."""
-    state = np.empty((STATE_ROWS, LANES))
+    state = np.empty((KEPT_ROWS, LANES))
     buffer = np.empty((BUFFER_ROWS, BUFFER, LANES))
     start_block(harmonics, turns, momenta, state)
     for j in range(size):

@@ -14,7 +14,8 @@ import numpy as np
 import numpy.typing as npt
 
 from scanner.bounce.lanes import LANES
-from scanner.compiled import fused, inlined, kernel, pasted, stack_array
+from scanner.compiled import inlined, kernel, pasted, stack_array
+from scanner.vectors import fused, put, take
 
 Floats = npt.NDArray[np.float64]
 Whole = npt.NDArray[np.int64]
@@ -23,25 +24,33 @@ WEAK = 1e-7
 """Harmonics that together turn tangents by less are left out of the first correction of a chord."""
 
 
+XC, XS, YC, YS, ORDER, SQUARE, CUBE = range(7)
+"""Columns of a plan's series: coefficients of a harmonic, its order k, k^2 and 4 k^3."""
+SERIES_COLUMNS = 7
+
+
 class Plan(NamedTuple):
     """Which harmonics to sum, n of them, and how to come from the power of one to that of the next.
 
     Attributes
     ----------
-    orders
-        Shape (n,): their orders, increasing, the first being 1.
+    series
+        Shape (n, SERIES_COLUMNS): the harmonics by increasing order, the first being 1.
     gap_of
         Shape (n,): number of the power that leads to each order from the one before.
     chain
         Shape (m, 2): each such power is the product of two earlier ones, given by number; number 0 is the first power.
     strong
         So many of them are enough to come close: the others turn no tangent by more than ``WEAK``.
+    mirrored
+        Whether x is a sum of cosines alone and y one of sines, as where t counts from an axis of symmetry.
     """
 
-    orders: Whole
+    series: Floats
     gap_of: Whole
     chain: Whole
     strong: int
+    mirrored: bool
 
 
 class Terms(NamedTuple):
@@ -144,27 +153,70 @@ def make_plan(harmonics: Floats) -> Plan:
     """Plan the sums over the harmonics of a boundary."""
     orders = harmonic_orders(harmonics)
     gap_of, chain = plan_gaps(orders)
-    return Plan(orders, gap_of, chain, count_strong(harmonics, orders))
+    series = np.empty((orders.size, SERIES_COLUMNS))
+    mirrored = True
+    for i in range(orders.size):
+        order = float(orders[i])
+        for row in range(4):
+            series[i, row] = harmonics[row, orders[i]]
+        series[i, ORDER] = order
+        series[i, SQUARE] = order * order
+        series[i, CUBE] = 4.0 * order * order * order
+        mirrored = mirrored and series[i, XS] == 0.0 and series[i, YC] == 0.0
+    return Plan(series, gap_of, chain, count_strong(harmonics, orders), mirrored)
+
+
+@pasted
+def plan_here(harmonics: Floats) -> Plan:
+    """Plan the sums and keep the plan on the stack.
+
+    Whoever hands on an array that is not there has it counted, at every bounce, by instructions that stop all others.
+    """
+    plan = make_plan(harmonics)
+    count = plan.gap_of.shape[0]
+    series = stack_array((count, SERIES_COLUMNS), np.float64)
+    gap_of = stack_array((count,), np.int64)
+    chain = stack_array((plan.chain.shape[0], 2), np.int64)
+    for i in range(count):
+        gap_of[i] = plan.gap_of[i]
+        for column in range(SERIES_COLUMNS):
+            series[i, column] = plan.series[i, column]
+    for number in range(plan.chain.shape[0]):
+        chain[number, 0] = plan.chain[number, 0]
+        chain[number, 1] = plan.chain[number, 1]
+    return Plan(series, gap_of, chain, plan.strong, plan.mirrored)
 
 
 @pasted
 def make_room(plan: Plan) -> tuple[Terms, Gaps]:
     """Make room for the sums of a plan, on the stack."""
-    count = plan.orders.shape[0]
+    count = plan.gap_of.shape[0]
     size = plan.chain.shape[0]
-    terms = Terms(stack_array((count, LANES)), stack_array((count, LANES)))
-    return terms, Gaps(stack_array((size, LANES)), stack_array((size, LANES)))
+    terms = Terms(stack_array((count, LANES), np.float64), stack_array((count, LANES), np.float64))
+    return terms, Gaps(stack_array((size, LANES), np.float64), stack_array((size, LANES), np.float64))
 
 
-@pasted
-def raise_to_gaps(plan: Plan, gaps: Gaps, lanes: int) -> None:
-    """Fill the powers of all gaps from the first one."""
+@inlined
+def raise_to_gaps(plan: Plan, re: float, im: float, gaps: Gaps, first: int) -> None:
+    """Fill the powers of all gaps of a vector of unit numbers."""
     chain = plan.chain
-    gap_re, gap_im = gaps
+    put(gaps.re, 0, first, re)
+    put(gaps.im, 0, first, im)
     for number in range(1, chain.shape[0]):
         left = chain[number, 0]
         right = chain[number, 1]
-        for j in range(lanes):
-            re, im = product(gap_re[left, j], gap_im[left, j], gap_re[right, j], gap_im[right, j])
-            gap_re[number, j] = re
-            gap_im[number, j] = im
+        power_re, power_im = product(
+            take(gaps.re, left, first),
+            take(gaps.im, left, first),
+            take(gaps.re, right, first),
+            take(gaps.im, right, first),
+        )
+        put(gaps.re, number, first, power_re)
+        put(gaps.im, number, first, power_im)
+
+
+@inlined
+def next_power(plan: Plan, gaps: Gaps, number: int, first: int, re: float, im: float) -> tuple[float, float]:
+    """Power of harmonic ``number`` from that of the one before."""
+    gap = plan.gap_of[number]
+    return product(re, im, take(gaps.re, gap, first), take(gaps.im, gap, first))

@@ -17,11 +17,11 @@ from scanner.bounce.lanes import (
     D_SP,
     D_SS,
     FAILED,
+    KEPT_ROWS,
     LANES,
     MOMENTUM,
     POINT_X,
     POINT_Y,
-    STATE_ROWS,
     TURN_IM,
     TURN_RE,
     busy_lanes,
@@ -47,7 +47,7 @@ TRACE_ROWS = 11
 @kernel
 def trace_block(harmonics: Floats, turns: Floats, momenta: Floats, size: int, found: Floats) -> None:
     """Follow ``size`` orbits and fill ``found``, of shape (bounces + 1, TRACE_ROWS, LANES); row 0 is the start."""
-    state = np.empty((STATE_ROWS, LANES))
+    state = np.empty((KEPT_ROWS, LANES))
     buffer = np.full((BUFFER_ROWS, BUFFER, LANES), np.nan)
     start_block(harmonics, turns, momenta, state)
     for bounce in range(found.shape[0]):
@@ -73,12 +73,10 @@ def follow(harmonics: Floats, turns: Floats, momenta: Floats, bounces: int) -> F
     size = turns.size
     turns, momenta = fill_up(turns), fill_up(momenta)
     found = np.empty((bounces + 1, TRACE_ROWS, turns.size))
-    centred = harmonics.copy()
-    centred[:, 0] = 0.0  # far from the origin the differences of points would lose digits
     for first in range(0, turns.size, LANES):
         lanes = slice(first, first + LANES)
         block = np.empty((bounces + 1, TRACE_ROWS, LANES))
-        trace_block(centred, turns[lanes], momenta[lanes], size - first, block)
+        trace_block(harmonics, turns[lanes], momenta[lanes], size - first, block)
         found[:, :, lanes] = block
     found[:, T_X] += harmonics[0, 0]
     found[:, T_Y] += harmonics[2, 0]

@@ -15,6 +15,7 @@ from scanner.bounce.lanes import (
     BUFFER,
     BUFFER_ROWS,
     FAILED,
+    KEPT_ROWS,
     LANES,
     OBSERVABLES,
     P_AFTER,
@@ -24,8 +25,8 @@ from scanner.bounce.lanes import (
     busy_lanes,
     fill_up,
 )
-from scanner.bounce.orbits import bounce_lanes, fill_powers, start_block
-from scanner.bounce.series import make_plan, make_room
+from scanner.bounce.orbits import bounce_lanes, set_out, start_block
+from scanner.bounce.series import make_room, plan_here
 from scanner.compiled import kernel, pasted, stack_array, use_widest_vectors
 from scanner.elementary import angle_turns, fixed_point
 from scanner.indicators.schedule import Schedule
@@ -77,7 +78,7 @@ class Recording:
 @kernel
 def start_blocks(harmonics: Floats, turns: Floats, momenta: Floats, state: Floats) -> None:
     """Set up all blocks; ``state`` has a column an orbit."""
-    here = np.empty((state.shape[0], LANES))
+    here = np.empty((KEPT_ROWS, LANES))
     for first in range(0, turns.size, LANES):
         start_block(harmonics, turns[first : first + LANES], momenta[first : first + LANES], here)
         put_columns(here, state, first)
@@ -86,7 +87,7 @@ def start_blocks(harmonics: Floats, turns: Floats, momenta: Floats, state: Float
 @kernel
 def take_columns(source: Floats, first: int, target: Floats) -> None:
     """Copy a block of columns out of a table of all orbits."""
-    for row in range(target.shape[0]):
+    for row in range(source.shape[0]):
         for j in range(LANES):
             target[row, j] = source[row, first + j]
 
@@ -94,7 +95,7 @@ def take_columns(source: Floats, first: int, target: Floats) -> None:
 @kernel
 def put_columns(source: Floats, target: Floats, first: int) -> None:
     """Copy a block of columns back into a table of all orbits."""
-    for row in range(source.shape[0]):
+    for row in range(target.shape[0]):
         for j in range(LANES):
             target[row, first + j] = source[row, j]
 
@@ -134,17 +135,17 @@ def follow_blocks(
     ``record`` is filled as told in ``Recording`` with the bounces from number ``record_from`` on.
     """
     use_widest_vectors()
-    plan = make_plan(harmonics)
-    here = stack_array((STATE_ROWS, LANES))
-    buffer = stack_array((BUFFER_ROWS, BUFFER, LANES))
-    tangent = stack_array((RUNNING_ROWS, LANES))
-    sums = stack_array((averages.shape[0], LANES))
-    turns = stack_array((LANES,))
+    plan = plan_here(harmonics)
+    here = stack_array((STATE_ROWS, LANES), np.float64)
+    buffer = stack_array((BUFFER_ROWS, BUFFER, LANES), np.float64)
+    tangent = stack_array((RUNNING_ROWS, LANES), np.float64)
+    sums = stack_array((averages.shape[0], LANES), np.float64)
+    turns = stack_array((LANES,), np.float64)
     terms, gaps = make_room(plan)
     for number in range(record.shape[0]):
         block = number * LANES
         take_columns(state, block, here)
-        fill_powers(plan, here, terms, gaps, LANES)
+        set_out(plan, here, terms, gaps)
         take_columns(running, block, tangent)
         take_columns(averages, block, sums)
         lanes = busy_lanes(size - block)
@@ -154,7 +155,7 @@ def follow_blocks(
         for mark in range(marks.shape[0]):
             while first < marks[mark]:
                 count = min(BUFFER, marks[mark] - first)
-                bounce_lanes(harmonics, plan, here, terms, gaps, buffer, count, lanes)
+                bounce_lanes(plan, here, terms, gaps, buffer, count, lanes)
                 absorb(buffer, count, first, windows, weights, sums, tangent, lanes)
                 take_down(buffer, count, first - record_from, turns, record[number])
                 first += count
@@ -191,7 +192,7 @@ class Batch:
         self.harmonics = harmonics
         self._schedule = schedule
         turns, momenta = fill_up(turns), fill_up(momenta)
-        self._state = np.empty((STATE_ROWS, turns.size))
+        self._state = np.empty((KEPT_ROWS, turns.size))
         start_blocks(harmonics, turns, momenta, self._state)
         self._running = np.empty((RUNNING_ROWS, turns.size))
         start_running(self._running)

@@ -9,8 +9,9 @@ import numpy as np
 import numpy.typing as npt
 
 from scanner.bounce.lanes import CHORD, D_PP, D_PS, D_SP, D_SS, LANES, OBSERVABLES
-from scanner.compiled import fused, kernel, pasted
+from scanner.compiled import kernel, pasted
 from scanner.elementary import log
+from scanner.vectors import fused
 
 Floats = npt.NDArray[np.float64]
 Integers = npt.NDArray[np.int64]

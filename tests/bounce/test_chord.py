@@ -5,9 +5,10 @@ import pytest
 from slow_bounce import slow_bounce
 
 from scanner.bounce.bracket import bracket_half_advance
-from scanner.bounce.chord import aim, divide_out_start
-from scanner.bounce.lanes import LANES, STATE_ROWS
+from scanner.bounce.chord import divide_out_start
+from scanner.bounce.lanes import COSINE, LANES, RAY_X, RAY_Y, STATE_ROWS, TANGENT_X, TANGENT_Y
 from scanner.bounce.orbits import start_block
+from scanner.bounce.series import make_plan
 from scanner.bounce.trace import T_ADVANCE, T_CHORD, T_FAILED, T_P, T_PP, T_PS, T_SP, T_SS, follow
 from scanner.tables import build_table
 
@@ -81,8 +82,9 @@ def test_bisection_finds_what_newton_finds() -> None:
     state, highest = np.empty((STATE_ROWS, LANES)), harmonics.shape[1] - 1
     quotient = np.empty((2 * highest + 4, LANES))
     start_block(harmonics, turns, p, state)
-    aim(state, LANES)
-    divide_out_start(harmonics, state, quotient, LANES)
+    cosine, (x, y) = state[COSINE], state[[TANGENT_X, TANGENT_Y]]
+    state[RAY_X], state[RAY_Y] = x * p - y * cosine, x * cosine + y * p
+    divide_out_start(make_plan(harmonics), state, quotient, LANES)
     fast = follow(harmonics, turns, p, 1)[1]
     for lane in range(LANES):
         # The estimate handed over lies outside (0, pi), so that nothing of it can be kept.

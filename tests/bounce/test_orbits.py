@@ -113,6 +113,22 @@ def test_constant_angle_curves(harmonic: int, angle: float) -> None:
     assert np.abs(advance - angle / math.pi).max() < 1e-12
 
 
+@pytest.mark.parametrize("harmonic", [3, 4])
+def test_a_turned_table_has_the_same_orbits(harmonic: int) -> None:
+    """Where x has cosines alone and y sines the sums leave the others out; turned by some angle they cannot."""
+    harmonics = build_table("radial_harmonic", amplitude=0.02, harmonic=harmonic).harmonics
+    assert not harmonics[1:3].any()
+    c, s = math.cos(0.3), math.sin(0.3)
+    turned = np.concatenate([c * harmonics[:2] - s * harmonics[2:], s * harmonics[:2] + c * harmonics[2:]])
+    rng = np.random.default_rng(6)
+    turns, p = rng.random(64), 2 * rng.random(64) - 1
+    plain, other = follow(harmonics, turns, p, 10), follow(turned, turns, p, 10)
+    # Two points of rounding 1e-16 drift apart by less than a factor of 2 a bounce.
+    for row in (T_TURNS, T_P, T_CHORD):
+        assert np.abs(plain[:, row] - other[:, row])[1:].max() < 1e-12
+    assert np.abs(c * plain[:, T_X] - s * plain[:, T_Y] - other[:, T_X]).max() < 1e-12
+
+
 def test_radial_cosine_is_the_limacon() -> None:
     """r = 1 + 2 lam cos(phi) and w = z + lam z^2 are one curve (identity, computed here)."""
     one = build_table("radial_harmonic", amplitude=0.3, harmonic=1)
