@@ -39,6 +39,8 @@ _BIAS_BITS = np.int64(1023 << 52)
 _ROUNDER_BITS = np.int64(0x4338000000000000)
 _FIXED_ROUNDER = 1572864.0  # the same for multiples of FIXED_UNIT, whose lowest 32 bits then stand for one turn
 FIXED_UNIT = 2.0**-32
+_HALF_A_WORD = np.int64(32)
+_LOW_HALF = np.int64((1 << 32) - 1)
 
 
 @inlined
@@ -130,6 +132,18 @@ def inverse_root(x: float) -> float:
 def fixed_point(turns: float) -> np.int32:
     """Angle below 2^19 turns in units of FIXED_UNIT, rounded; whole turns drop out."""
     return np.int32(_bits(turns + _FIXED_ROUNDER))
+
+
+@inlined
+def pair_up(high: np.int32, low: np.int32) -> np.int64:
+    """Two whole numbers in one word."""
+    return np.int64(np.int64(high) << _HALF_A_WORD) | (np.int64(low) & _LOW_HALF)
+
+
+@inlined
+def pair_of(word: np.int64) -> tuple[np.int32, np.int32]:
+    """The two whole numbers of a word."""
+    return np.int32(word >> _HALF_A_WORD), np.int32(word & _LOW_HALF)
 
 
 @inlined

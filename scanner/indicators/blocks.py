@@ -28,13 +28,12 @@ from scanner.bounce.lanes import (
 from scanner.bounce.orbits import bounce_lanes, set_out, start_block
 from scanner.bounce.series import make_room, plan_here
 from scanner.compiled import kernel, pasted, stack_array, use_widest_vectors
-from scanner.elementary import angle_turns, fixed_point
+from scanner.elementary import angle_turns, fixed_point, pair_up
 from scanner.indicators.schedule import Schedule
 from scanner.indicators.streams import GROWTH, PATH, RUNNING_ROWS, absorb, start_running
 
 Floats = npt.NDArray[np.float64]
 Whole = npt.NDArray[np.int64]
-Fixed = npt.NDArray[np.int32]
 Mask = npt.NDArray[np.bool_]
 
 RECORDED = 2048
@@ -63,15 +62,15 @@ class Streams:
 
 @dataclass(frozen=True)
 class Recording:
-    """Where the bounces of a stage from number ``first`` on led, shape (blocks, bounces, 2, LANES).
+    """Where the bounces of a stage from number ``first`` on led, shape (blocks, bounces, LANES).
 
-    Boundary parameter and p / 2 in fixed point, as what is kept of a bounce passes through memory: with twice as many
-    bits that took up to three tenths of the time of following it.  ``columns`` has the place of each orbit, block after
-    block; it means nothing for those that had been left before.
+    Boundary parameter and p / 2 in fixed point, both in one word, as what is kept of a bounce passes through memory:
+    with twice as many bits that took up to three tenths of the time of following it.  ``columns`` has the place of each
+    orbit, block after block; it means nothing for those that had been left before.
     """
 
     first: int
-    rows: Fixed
+    rows: Whole
     columns: Whole
 
 
@@ -101,7 +100,7 @@ def put_columns(source: Floats, target: Floats, first: int) -> None:
 
 
 @pasted
-def take_down(buffer: Floats, count: int, place: int, turns: Floats, record: Fixed) -> None:
+def take_down(buffer: Floats, count: int, place: int, turns: Floats, record: Whole) -> None:
     """Bring the boundary parameters up to date, and record ``count`` bounces from ``place`` on, none before 0."""
     for row in range(count):
         for j in range(LANES):
@@ -109,8 +108,8 @@ def take_down(buffer: Floats, count: int, place: int, turns: Floats, record: Fix
             turns[j] = moved - np.rint(moved)
         if place + row >= 0:
             for j in range(LANES):
-                record[place + row, 0, j] = fixed_point(turns[j])
-                record[place + row, 1, j] = fixed_point(0.5 * buffer[P_AFTER, row, j])
+                half_p = 0.5 * buffer[P_AFTER, row, j]
+                record[place + row, j] = pair_up(fixed_point(turns[j]), fixed_point(half_p))
 
 
 @kernel
@@ -127,7 +126,7 @@ def follow_blocks(
     averages: Floats,
     growth: Floats,
     path: Floats,
-    record: Fixed,
+    record: Whole,
 ) -> None:
     """Follow every block from bounce ``start`` to the last of ``marks``.
 
@@ -209,7 +208,7 @@ class Batch:
         stage = np.flatnonzero((schedule.marks > start) & (schedule.marks <= end))
         among = slice(stage[0], stage[-1] + 1)
         record_from = max(start, end - RECORDED)
-        record = np.empty((self._state.shape[1] // LANES, end - record_from, 2, LANES), dtype=np.int32)
+        record = np.empty((self._state.shape[1] // LANES, end - record_from, LANES), dtype=np.int64)
         follow_blocks(
             self.harmonics,
             schedule.windows,

@@ -8,7 +8,7 @@ import numpy as np
 import numpy.typing as npt
 
 from scanner.indicators.blocks import Batch
-from scanner.indicators.islands import Windings, wind_orbits
+from scanner.indicators.islands import Returns, Windings, collect_returns, wind_orbits
 from scanner.indicators.readings import Readings, digits_of, read_streams
 from scanner.indicators.schedule import Schedule
 from scanner.indicators.verdicts import Verdicts, is_settled, judge
@@ -106,17 +106,23 @@ def follow_orbits(harmonics: Floats, turns: Floats, momenta: Floats, schedule: S
     for first in range(0, turns.size, AT_ONCE):
         part = slice(first, first + AT_ONCE)
         batch = Batch(harmonics, turns[part], momenta[part], schedule)
+        stages = []
         for number in range(len(schedule.horizons)):
-            _visit_horizon(batch, number, first, schedule, chord_scale, course)
+            stages += _visit_horizon(batch, number, first, schedule, chord_scale, course)
             if not batch.orbits.size:
                 break
+        if stages:
+            course.note_windings(np.concatenate([stage.orbits for stage in stages]), wind_orbits(harmonics, stages))
     return course
 
 
 def _visit_horizon(
     batch: Batch, number: int, first: int, schedule: Schedule, chord_scale: float, course: Course
-) -> None:
-    """Bring a batch, whose orbits are numbered from ``first``, to a horizon; leave out what is clear there."""
+) -> list[Returns]:
+    """Bring a batch, whose orbits are numbered from ``first``, to a horizon; leave out what is clear there.
+
+    Gives the returns of the orbits that are left in islands, if there are any.
+    """
     streams = batch.advance(number)
     readings = read_streams(streams, schedule, number, chord_scale)
     verdicts = judge(readings, streams.failed)
@@ -131,12 +137,10 @@ def _visit_horizon(
     course.note_numbers(orbits, readings, verdicts, (leaving & ~chaotic) | (number == schedule.common))
     course.failed[orbits] = streams.failed
     inside = np.flatnonzero(leaving & (verdicts.code == REGULAR_LIBRATIONAL))
+    course.frequency_digits[orbits[inside]] = np.nan  # those of the winding, where there is one
+    returns = []
     if inside.size:
-        windings = wind_orbits(
-            batch.harmonics,
-            batch.recall(inside),
-            verdicts.island_period[inside].astype(np.int64),
-            verdicts.island_rotation[inside].astype(np.int64),
-        )
-        course.note_windings(orbits[inside], windings)
+        island = verdicts.island_period[inside].astype(np.int64), verdicts.island_rotation[inside].astype(np.int64)
+        returns = [collect_returns(orbits[inside], batch.recall(inside), *island)]
     batch.keep(~leaving)
+    return [stage for stage in returns if stage.orbits.size]

@@ -15,7 +15,7 @@ import numpy.typing as npt
 from scanner.bounce.lanes import LANES
 from scanner.bounce.return_map import ReturnMap, find_fixed_points
 from scanner.compiled import kernel
-from scanner.elementary import FIXED_UNIT, angle_turns
+from scanner.elementary import FIXED_UNIT, angle_turns, pair_of
 from scanner.indicators.blocks import Recording
 from scanner.indicators.schedule import quick_weights
 
@@ -72,7 +72,7 @@ class Windings:
 
 @kernel
 def pick_returns(
-    rows: Fixed, columns: Whole, periods: Whole, waits: Whole, places: Whole, start: Fixed, shifts: Floats, p: Floats
+    rows: Whole, columns: Whole, periods: Whole, waits: Whole, places: Whole, start: Fixed, shifts: Floats, p: Floats
 ) -> None:
     """Add every q-th bounce of a recording to the returns of each orbit.
 
@@ -84,74 +84,112 @@ def pick_returns(
         lane = columns[j] % LANES
         row = waits[j] - 1
         while row < rows.shape[1]:
+            turns, half_p = pair_of(rows[block, row, lane])
             if places[j] < 0:
-                start[j] = rows[block, row, 0, lane]
+                start[j] = turns
             places[j] += 1
-            shifts[j, places[j]] = FIXED_UNIT * np.int32(rows[block, row, 0, lane] - start[j])  # whole turns drop out
-            p[j, places[j]] = 2.0 * FIXED_UNIT * rows[block, row, 1, lane]
+            shifts[j, places[j]] = FIXED_UNIT * np.int32(turns - start[j])  # whole turns drop out
+            p[j, places[j]] = 2.0 * FIXED_UNIT * half_p
             row += periods[j]
         waits[j] = row - rows.shape[1] + 1
 
 
-def wind_orbits(harmonics: Floats, recordings: list[Recording], periods: Whole, rotations: Whole) -> Windings:
-    """Find the centres and the windings of island orbits.
+@dataclass(frozen=True)
+class Returns:
+    """Every q-th bounce of n orbits from the first that is kept on: returns to one part of the island.
+
+    Attributes
+    ----------
+    orbits
+        Shape (n,): their numbers.
+    turns
+        Shape (n,): boundary parameter at the first return.
+    shifts, p
+        Shape (n, places): parameter less ``turns``, and momentum.
+    counts
+        Shape (n,): how many returns there are after the first, FEWEST_RETURNS or more.
+    periods, rotations
+        Shape (n,): q and p of each orbit's island.
+    """
+
+    orbits: Whole
+    turns: Floats
+    shifts: Floats
+    p: Floats
+    counts: Whole
+    periods: Whole
+    rotations: Whole
+
+
+def collect_returns(orbits: Whole, recordings: list[Recording], periods: Whole, rotations: Whole) -> Returns:
+    """Collect the returns of island orbits, and leave out those that have too few.
 
     Parameters
     ----------
-    harmonics
-        Boundary, shape (4, K + 1).
+    orbits
+        Their numbers, shape (n,), n > 0.
     recordings
         Their last bounces, with columns of shape (n,).
     periods, rotations
         q and p of each orbit's island, shape (n,).
     """
     length = sum(part.rows.shape[1] for part in recordings)
-    shifts, p = np.empty((2, periods.size, length // 2 + 1))
+    shifts, p = np.empty((2, periods.size, length // int(periods.min()) + 1))
     # A whole number of q-fold maps from the start of the orbit, so that the centre is that of the start's part.
     waits = periods - recordings[0].first % periods
     places = np.full(periods.size, -1)
     start = np.zeros(periods.size, dtype=np.int32)
     for part in recordings:
         pick_returns(part.rows, part.columns, periods, waits, places, start, shifts, p)
-    found = np.full((6, periods.size), np.nan)
-    enough = np.flatnonzero(places >= FEWEST_RETURNS)
-    if enough.size:
-        found[:, enough] = _wind(
-            harmonics,
-            np.float64(FIXED_UNIT) * start[enough],
-            shifts[enough],
-            p[enough],
-            places[enough],
-            periods[enough],
-            rotations[enough],
-        )
-    return Windings(*found)
+    enough = places >= FEWEST_RETURNS
+    return Returns(
+        orbits=orbits[enough],
+        turns=np.float64(FIXED_UNIT) * start[enough],
+        shifts=shifts[enough],
+        p=p[enough],
+        counts=places[enough],
+        periods=periods[enough],
+        rotations=rotations[enough],
+    )
 
 
-def _wind(
-    harmonics: Floats,
-    turns: Floats,
-    shifts: Floats,
-    p: Floats,
-    counts: Whole,
-    periods: Whole,
-    rotations: Whole,
-) -> Floats:
-    """The rows of ``Windings`` for orbits with enough returns, ``counts`` after the first, which is at ``turns``."""
-    weights, places = _weights_of(counts)
-    mean_shift, mean_p = average_points(shifts, p, counts, weights, places)
-    centre_turns, centre_p, at = find_fixed_points(harmonics, turns + mean_shift, mean_p, periods, rotations)
-    shear, stretch = _normal_form(at)
-    winding, change, at_rest = average_windings(
-        shifts, p, counts, weights, places, centre_turns - turns, centre_p, shear, stretch
+def wind_orbits(harmonics: Floats, stages: list[Returns]) -> Windings:
+    """Find the centres of islands and the windings about them, of the orbits of some stages in turn.
+
+    The centres are looked for together, as Newton's method takes as many rounds as the slowest orbit.
+
+    Parameters
+    ----------
+    harmonics
+        Boundary, shape (4, K + 1).
+    stages
+        Returns of n orbits in all.
+    """
+    windows = [_windows_of(stage.counts) for stage in stages]
+    shift, p = np.concatenate(
+        [average_points(stage.shifts, stage.p, stage.counts, *at) for stage, at in zip(stages, windows, strict=True)],
+        axis=1,
+    )
+    turns, periods, rotations = (
+        np.concatenate([getattr(stage, name) for stage in stages]) for name in ("turns", "periods", "rotations")
+    )
+    centre_turns, centre_p, at = find_fixed_points(harmonics, turns + shift, p, periods, rotations)
+    centres = np.stack([centre_turns - turns, centre_p, *_normal_form(at)])
+    ends = np.cumsum([stage.counts.size for stage in stages])
+    winding, change, at_rest = np.concatenate(
+        [
+            average_windings(stage.shifts, stage.p, stage.counts, *window, *centre)
+            for stage, window, centre in zip(stages, windows, np.split(centres, ends[:-1], axis=1), strict=True)
+        ],
+        axis=1,
     )
     known = np.where(np.isfinite(winding), 1.0, np.nan)
     # A centre at the origin of the boundary stays there, to whichever side it was rounded.
-    centre = np.maximum((centre_turns + SAME_PLACE) % 1.0 - SAME_PLACE, 0.0)
-    return np.stack([winding, change, centre * known, centre_p * known, at.trace, at_rest])
+    centre_turns = np.maximum((centre_turns + SAME_PLACE) % 1.0 - SAME_PLACE, 0.0)
+    return Windings(winding, change, centre_turns * known, centre_p * known, at.trace, at_rest)
 
 
-def _weights_of(counts: Whole) -> tuple[Floats, Whole]:
+def _windows_of(counts: Whole) -> tuple[Floats, Whole]:
     """Weights of windows of each count and of half of it, and where the two start for each orbit, shape (2, n)."""
     lengths, which = np.unique(np.stack([counts, counts // 2]), return_inverse=True)
     starts = np.cumsum(lengths) - lengths
@@ -171,16 +209,15 @@ def _normal_form(at: ReturnMap) -> tuple[Floats, Floats]:
 
 
 @kernel
-def average_points(shifts: Floats, p: Floats, counts: Whole, weights: Floats, places: Whole) -> tuple[Floats, Floats]:
-    """Weighted averages of the returns of each orbit: a point near its island's centre."""
-    mean_shift = np.zeros(counts.size)
-    mean_p = np.zeros(counts.size)
+def average_points(shifts: Floats, p: Floats, counts: Whole, weights: Floats, places: Whole) -> Floats:
+    """Weighted averages of shift and p over the returns of each orbit, shape (2, n): near its island's centre."""
+    means = np.zeros((2, counts.size))
     for j in range(counts.size):
         for n in range(counts[j]):
             weight = weights[places[0, j] + n]
-            mean_shift[j] += weight * shifts[j, n]
-            mean_p[j] += weight * p[j, n]
-    return mean_shift, mean_p
+            means[0, j] += weight * shifts[j, n]
+            means[1, j] += weight * p[j, n]
+    return means
 
 
 @kernel
@@ -194,14 +231,12 @@ def average_windings(
     centre_p: Floats,
     shear: Floats,
     stretch: Floats,
-) -> tuple[Floats, Floats, Floats]:
+) -> Floats:
     """Winding of each orbit about its centre, folded to [0, 1/2], its change between two halves, and ``at_rest``.
 
-    The first two are NaN where the centre is not elliptic or not that of the orbit's island.
+    Shape (3, n); the first two are NaN where the centre is not elliptic or not that of the orbit's island.
     """
-    winding = np.full(counts.size, np.nan)
-    change = np.full(counts.size, np.nan)
-    at_rest = np.zeros(counts.size)
+    found = np.full((3, counts.size), np.nan)
     for j in range(counts.size):
         count = counts[j]
         angles = np.empty(count + 1)
@@ -217,7 +252,7 @@ def average_windings(
             above += 1 if y > 0.0 else 0
             right_above += 1 if x > 0.0 and y > 0.0 else 0
             angles[n] = angle_turns(y + shear[j] * x, stretch[j] * x)
-        at_rest[j] = 0.0 if moved > 0 else 1.0
+        found[2, j] = 0.0 if moved > 0 else 1.0
         steps = np.empty(count)
         for n in range(count):
             step = angles[n + 1] - angles[n]
@@ -238,9 +273,9 @@ def average_windings(
         for n in range(half):
             early += weights[places[1, j] + n] * steps[count - 2 * half + n]
             late += weights[places[1, j] + n] * steps[count - half + n]
-        winding[j] = abs(whole - math.floor(whole + 0.5))
-        change[j] = late - early
-    return winding, change, at_rest
+        found[0, j] = abs(whole - math.floor(whole + 0.5))
+        found[1, j] = late - early
+    return found
 
 
 @kernel

@@ -91,7 +91,7 @@ def window_weights(length: int) -> npt.NDArray[np.float64]:
     return weights
 
 
-@lru_cache(maxsize=256)
+@lru_cache(maxsize=2048)  # orbits in islands ask for about as many different lengths as there are returns
 def quick_weights(length: int) -> npt.NDArray[np.float64]:
     """Weights sin^8(pi t) at the same midpoints, with sum 1: the Hann window of fourth order.
 
