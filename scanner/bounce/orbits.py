@@ -49,10 +49,16 @@ from scanner.bounce.lanes import (
     TURN_RE,
 )
 from scanner.bounce.series import (
-    ORDER,
-    SQUARE,
+    X1C,
+    X1S,
+    X2C,
+    X2S,
     XC,
     XS,
+    Y1C,
+    Y1S,
+    Y2C,
+    Y2S,
     YC,
     YS,
     Gaps,
@@ -77,36 +83,27 @@ Derivatives = tuple[float, float, float, float, float, float]
 
 @inlined
 def sum_series(plan: Plan, re: float, im: float, terms: Terms, gaps: Gaps, first: int) -> Derivatives:
-    """Sum the boundary at exp(i t), and keep the powers of exp(i t)."""
+    """Sum the boundary at exp(i t), and keep the powers of exp(i t).
+
+    The first harmonic is at hand; its second derivative is minus the point itself.
+    """
     series = plan.series
-    xc = series[0, XC]
-    xs = series[0, XS]
-    yc = series[0, YC]
-    ys = series[0, YS]
-    x0 = sum_of_products(xc, re, xs, im)
-    y0 = sum_of_products(yc, re, ys, im)
-    x1 = difference_of_products(xs, re, xc, im)
-    y1 = difference_of_products(ys, re, yc, im)
+    x0 = sum_of_products(series[0, XC], re, series[0, XS], im)
+    y0 = sum_of_products(series[0, YC], re, series[0, YS], im)
+    x1 = sum_of_products(series[0, X1C], re, series[0, X1S], im)
+    y1 = sum_of_products(series[0, Y1C], re, series[0, Y1S], im)
     x2 = -x0
     y2 = -y0
     for i in range(1, series.shape[0]):
-        xc = series[i, XC]
-        xs = series[i, XS]
-        yc = series[i, YC]
-        ys = series[i, YS]
-        order = series[i, ORDER]
-        square = series[i, SQUARE]
         re, im = next_power(plan, gaps, i, first, re, im)
         put(terms.re, i, first, re)
         put(terms.im, i, first, im)
-        x = sum_of_products(xc, re, xs, im)
-        y = sum_of_products(yc, re, ys, im)
-        x0 += x
-        y0 += y
-        x1 = fused(order, difference_of_products(xs, re, xc, im), x1)
-        y1 = fused(order, difference_of_products(ys, re, yc, im), y1)
-        x2 = fused(-square, x, x2)
-        y2 = fused(-square, y, y2)
+        x0 = fused(series[i, XC], re, fused(series[i, XS], im, x0))
+        y0 = fused(series[i, YC], re, fused(series[i, YS], im, y0))
+        x1 = fused(series[i, X1C], re, fused(series[i, X1S], im, x1))
+        y1 = fused(series[i, Y1C], re, fused(series[i, Y1S], im, y1))
+        x2 = fused(series[i, X2C], re, fused(series[i, X2S], im, x2))
+        y2 = fused(series[i, Y2C], re, fused(series[i, Y2S], im, y2))
     return x0, y0, x1, y1, x2, y2
 
 
@@ -114,28 +111,22 @@ def sum_series(plan: Plan, re: float, im: float, terms: Terms, gaps: Gaps, first
 def sum_mirrored_series(plan: Plan, re: float, im: float, terms: Terms, gaps: Gaps, first: int) -> Derivatives:
     """Do what ``sum_series`` does, for a mirrored boundary with half the work."""
     series = plan.series
-    xc = series[0, XC]
-    ys = series[0, YS]
-    x0 = xc * re
-    y0 = ys * im
-    x1 = -xc * im
-    y1 = ys * re
+    x0 = series[0, XC] * re
+    y0 = series[0, YS] * im
+    x1 = series[0, X1S] * im
+    y1 = series[0, Y1C] * re
     x2 = -x0
     y2 = -y0
     for i in range(1, series.shape[0]):
-        xc = series[i, XC]
-        ys = series[i, YS]
-        order = series[i, ORDER]
-        square = series[i, SQUARE]
         re, im = next_power(plan, gaps, i, first, re, im)
         put(terms.re, i, first, re)
         put(terms.im, i, first, im)
-        x0 = fused(xc, re, x0)
-        y0 = fused(ys, im, y0)
-        x1 = fused(-order * xc, im, x1)
-        y1 = fused(order * ys, re, y1)
-        x2 = fused(-square * xc, re, x2)
-        y2 = fused(-square * ys, im, y2)
+        x0 = fused(series[i, XC], re, x0)
+        y0 = fused(series[i, YS], im, y0)
+        x1 = fused(series[i, X1S], im, x1)
+        y1 = fused(series[i, Y1C], re, y1)
+        x2 = fused(series[i, X2C], re, x2)
+        y2 = fused(series[i, Y2S], im, y2)
     return x0, y0, x1, y1, x2, y2
 
 

@@ -24,9 +24,10 @@ WEAK = 1e-7
 """Harmonics that together turn tangents by less are left out of the first correction of a chord."""
 
 
-XC, XS, YC, YS, ORDER, SQUARE, CUBE = range(7)
-"""Columns of a plan's series: coefficients of a harmonic, its order k, k^2 and 4 k^3."""
-SERIES_COLUMNS = 7
+XC, XS, YC, YS, X1C, X1S, Y1C, Y1S, X2C, X2S, Y2C, Y2S, ORDER, SQUARE, CUBE = range(15)
+"""Columns of a plan's series: what of the cosine and of the sine of a harmonic goes into x and y, into their first and
+into their second derivatives; its order k, k^2 and 4 k^3."""
+SERIES_COLUMNS = 15
 
 
 class Plan(NamedTuple):
@@ -157,11 +158,17 @@ def make_plan(harmonics: Floats) -> Plan:
     mirrored = True
     for i in range(orders.size):
         order = float(orders[i])
+        square = order * order
         for row in range(4):
             series[i, row] = harmonics[row, orders[i]]
+            series[i, X2C + row] = -square * harmonics[row, orders[i]]
+        series[i, X1C] = order * series[i, XS]
+        series[i, X1S] = -order * series[i, XC]
+        series[i, Y1C] = order * series[i, YS]
+        series[i, Y1S] = -order * series[i, YC]
         series[i, ORDER] = order
-        series[i, SQUARE] = order * order
-        series[i, CUBE] = 4.0 * order * order * order
+        series[i, SQUARE] = square
+        series[i, CUBE] = 4.0 * square * order
         mirrored = mirrored and series[i, XS] == 0.0 and series[i, YC] == 0.0
     return Plan(series, gap_of, chain, count_strong(harmonics, orders), mirrored)
 
