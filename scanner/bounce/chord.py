@@ -180,7 +180,9 @@ def add_harmonics(
 def correct(plan: Plan, count: int, state: Floats, terms: Terms, gaps: Gaps, first: int) -> None:
     """One Householder step of fourth order on g, by the first ``count`` harmonics.
 
-    With x for the step over s = sin(h), the derivatives of g enter as those by x, times s: s^(m + 1) g^(m).
+    The unknown is x, twice the tangent of half the step, over s = sin(h): nearly the step over s, and what turns v by
+    the step follows from it without a series.  The derivatives of g by x enter times s: they are s^(m + 1) g^(m), the
+    third of them less s^4 g' / 2.
     """
     c = take(state, HALF_COS, first)
     s = take(state, HALF_SIN, first)
@@ -191,25 +193,24 @@ def correct(plan: Plan, count: int, state: Floats, terms: Terms, gaps: Gaps, fir
     twist = fused(8.0, part_3, take(state, START_3, first))
     g1 = difference_of_products(s, slope, c, g0)
     g2 = fused(square, bend + g0, -2.0 * c * g1)
-    g3 = fused(square, fused(s, twist, fused(c, g0, 3.0 * g1)), -3.0 * c * g2)
+    g3 = fused(square, fused(s, twist, fused(c, g0, 2.5 * g1)), -3.0 * c * g2)
     slope_square = g1 * g1
     product_02 = g0 * g2
-    step = g0 * fused(3.0, product_02, -6.0 * slope_square)
-    step = step / fused(6.0 * g1, slope_square - product_02, g0 * g0 * g3)
+    top = g0 * fused(3.0, product_02, -6.0 * slope_square)
+    bottom = fused(6.0 * g1, slope_square - product_02, g0 * g0 * g3)
     # A settled lane takes no further step, so that an orbit does not depend on its neighbours by a rounding.
-    step = where(take(state, SETTLED, first) > 0.0, 0.0, step)
-    size = abs(step)
-    fourth = step * step
+    top = where(take(state, SETTLED, first) > 0.0, 0.0, top)
+    half = 0.5 * s * top
+    scale = 1.0 / fused(half, half, bottom * bottom)
+    sine = top * bottom * scale  # of the step, over s
+    size = abs(sine)
+    fourth = sine * sine
     fourth *= fourth
     small = (fourth * size < take(state, REACH, first)) | (size * s < STEP_ABSOLUTE)
     small = small & (size < LONGEST_LAST_STEP) & (s > 0.0)
     put(state, REACH, first, REMAINDER * fourth)
     put(state, SETTLED, first, where(small, 1.0, 0.0))
-    # exp(i step) with unit modulus whatever the step: the tangent of half of it to fifth order.
-    half = 0.5 * step * s
-    tangent = half * fused(half * half, 1.0 / 3.0, 1.0)
-    scale = 1.0 / fused(tangent, tangent, 1.0)
-    c, s = product(c, s, fused(-tangent, tangent, 1.0) * scale, 2.0 * tangent * scale)
+    c, s = product(c, s, fused(-2.0 * half, half * scale, 1.0), s * sine)
     put(state, HALF_COS, first, c)
     put(state, HALF_SIN, first, s)
 

@@ -137,10 +137,11 @@ def _visit_horizon(
     course.note_numbers(orbits, readings, verdicts, (leaving & ~chaotic) | (number == schedule.common))
     course.failed[orbits] = streams.failed
     inside = np.flatnonzero(leaving & (verdicts.code == REGULAR_LIBRATIONAL))
-    course.frequency_digits[orbits[inside]] = np.nan  # those of the winding, where there is one
-    returns = []
+    stages = []
     if inside.size:
         island = verdicts.island_period[inside].astype(np.int64), verdicts.island_rotation[inside].astype(np.int64)
-        returns = [collect_returns(orbits[inside], batch.recall(inside), *island)]
+        stages = [collect_returns(orbits[inside], batch.recall(inside), *island)]
+        # Of the others there are too few returns to know the frequency.
+        course.frequency_digits[np.setdiff1d(orbits[inside], stages[0].orbits)] = np.nan
     batch.keep(~leaving)
-    return [stage for stage in returns if stage.orbits.size]
+    return [stage for stage in stages if stage.orbits.size]
