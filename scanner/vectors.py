@@ -4,7 +4,7 @@ A vector holds ``WIDTH`` doubles and is no array: it is taken from a row of one 
 Arithmetic, comparisons, ``fused``, ``where``, ``abs`` and square roots do to each of its numbers what they do to a
 plain one, bit for bit, so that the same function serves both; a plain number beside a vector stands for as many equal
 ones.  Left to itself, the compiler decides which loops over arrays become vector instructions, and keeps their running
-sums in memory; vectors leave it no choice.  Where registers are less wide, several hold one.
+sums in memory; vectors leave it no choice.
 """
 
 from __future__ import annotations
@@ -17,14 +17,23 @@ from typing import Any, cast
 import numpy as np
 import numpy.typing as npt
 from llvmlite import ir
-from numba.core import cgutils, types
+from llvmlite.binding import get_host_cpu_features
+from numba.core import cgutils, config, types
 from numba.extending import intrinsic, lower_builtin, models, register_model, type_callable
 
 Floats = npt.NDArray[np.float64]
 Build = Callable[..., Any]
 
-WIDTH = 16
-"""Numbers in a vector: two of the widest registers, so that one is worked on while the other one waits."""
+
+def _numbers_in_a_register() -> int:
+    """How many doubles the widest registers hold that kernels are compiled for."""
+    chosen = config.CPU_FEATURES  # type: ignore[attr-defined]
+    wide = get_host_cpu_features().get("avx512f", False) if chosen is None else "+avx512f" in chosen
+    return 8 if wide else 4
+
+
+WIDTH = 2 * _numbers_in_a_register()
+"""Numbers in a vector: two registers, so that one is worked on while the other one waits.  It decides no result."""
 ALIGNMENT = 8  # bytes, that of any double: where a row is aligned better nothing is lost
 
 VECTOR = ir.VectorType(ir.DoubleType(), WIDTH)
