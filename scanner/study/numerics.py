@@ -10,6 +10,7 @@ PACKAGE = Path(__file__).parents[1]
 
 DECIDING = (
     "compiled.py",
+    "vectors.py",
     "elementary.py",
     "quantities.py",
     "cells.py",
