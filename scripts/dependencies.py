@@ -14,7 +14,7 @@ from pathlib import Path
 
 ROOT = Path(__file__).parent.parent
 TOOLS = ("test", "lint")
-REQUIREMENT = re.compile(r"(?P<name>[A-Za-z0-9._-]+)(\[.*\])?>=(?P<lowest>[0-9.]+)")
+REQUIREMENT = re.compile(r"(?P<name>[A-Za-z0-9._-]+)(\[.*\])?>=(?P<lowest>[0-9.]+)(,<[0-9.]+)?")
 
 
 def declared(without: tuple[str, ...] = ()) -> dict[str, str]:
@@ -28,7 +28,7 @@ def declared(without: tuple[str, ...] = ()) -> dict[str, str]:
     for requirement in requirements:
         match = REQUIREMENT.fullmatch(requirement)
         if match is None:
-            sys.exit(f"pyproject.toml: {requirement!r} is not of the form name>=version")
+            sys.exit(f"pyproject.toml: {requirement!r} is not of the form name>=version or name>=version,<version")
         found[normalised(match["name"])] = match["lowest"]
     return found
 

@@ -2,6 +2,7 @@
 
 import subprocess
 import sys
+from pathlib import Path
 
 import pytest
 
@@ -47,3 +48,11 @@ def test_every_stored_quantity_is_labelled(quantity):
         assert quantity.flags[0] == "pending"
         assert attributes["flag_values"] == list(range(len(quantity.flags)))
         assert attributes["flag_meanings"].split() == list(quantity.flags)
+
+
+def test_the_lowest_version_of_every_requirement_is_told():
+    script = Path(__file__).parents[1] / "scripts" / "dependencies.py"
+    told = subprocess.run([sys.executable, script, "--lowest"], capture_output=True, text=True, check=True).stdout
+    names = [line.partition("==")[0] for line in told.splitlines()]
+    assert {"numba", "dask", "zarr", "pytest"} <= set(names)
+    assert all("==" in line for line in told.splitlines())
