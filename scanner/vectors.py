@@ -1,7 +1,7 @@
 """Numbers of several orbits at once, as values of a kernel that stay in the processor's registers.
 
 A vector holds ``WIDTH`` doubles and is no array: it is taken from a row of one and put back when the work is done.
-Arithmetic, comparisons, ``fused``, ``where``, ``abs`` and square roots do to each of its numbers what they do to a
+Arithmetic, comparisons, ``fused``, ``where``, ``abs`` and ``copysign`` do to each of its numbers what they do to a
 plain one, bit for bit, so that the same function serves both; a plain number beside a vector stands for as many equal
 ones.  Left to itself, the compiler decides which loops over arrays become vector instructions, and keeps their running
 sums in memory; vectors leave it no choice.

@@ -100,6 +100,43 @@ def measured_rows(per_table: int, bounces: int, repeats: int) -> Iterator[list[s
         yield [name, f"{there} of {table.harmonics.shape[1] - 1}", *cells, *ratios]
 
 
+def saving_rows(per_table: int, bounces: int, repeats: int) -> Iterator[list[str]]:
+    """Rows of what is saved: share of islands, seconds a table in both ways, their ratio, bounces an orbit and more."""
+    for name in ("ellipse", "radial_harmonic 2", "radial_harmonic 3", "limacon", "normal_harmonic 4"):
+        table = build_table(name.split()[0], **TABLES[name])
+        s, p = section_points(table, seed=1, replicates=1, orbits=per_table)
+        found = orbit_numbers(table, s, p, bounces)
+        rivals: dict[str, Callable[[], object]] = {
+            "all": partial(orbit_numbers, table, s, p, bounces, adaptive=False),
+            "early": partial(orbit_numbers, table, s, p, bounces),
+            "resonances": partial(survey_resonances, table, 8),
+        }
+        seconds = interleaved_least(rivals, repeats)
+        used = np.asarray(found["bounces_used"])
+        yield [
+            name,
+            f"{np.mean(found['verdict'] == REGULAR_LIBRATIONAL):.0%}",
+            f"{seconds['all']:.3f}",
+            f"{seconds['early']:.3f}",
+            f"{seconds['all'] / seconds['early']:.1f}",
+            f"{used.mean():.0f}",
+            f"{seconds['early'] / used.sum() * 1e9:.0f}",
+            f"{seconds['resonances'] * 1e3:.1f} ms",
+        ]
+
+
+def show_table(titles: list[str], rows: Iterator[list[str]], to: Path | None) -> None:
+    """Print rows as they come, and write them as Markdown in the end if there is a place for that."""
+    lines = [f"| {' | '.join(titles)} |", "|---|" + "---:|" * (len(titles) - 1)]
+    print(f"{titles[0]:<22}" + "".join(f"{title:>13}" for title in titles[1:]))
+    for row in rows:
+        print(f"{row[0]:<22}" + "".join(f"{cell:>13}" for cell in row[1:]), flush=True)
+        lines.append(f"| {' | '.join(row)} |")
+    if to is not None:
+        to.write_text("\n".join(lines) + "\n")
+        print(f"written to {to}")
+
+
 @click.group(invoke_without_command=True)
 @click.pass_context
 def main(context: click.Context) -> None:
@@ -118,47 +155,21 @@ def orbits(per_table: int, bounces: int, repeats: int, to: Path | None) -> None:
     if not c_targets():
         print("no gcc or clang here: the columns of the baseline in C stay empty")
     print(f"{per_table} orbits of {bounces} bounces, least of {repeats}; ns per bounce on one core")
-    titles = ["table", "harmonics", *COLUMNS, "C ratio", "AVX2 ratio"]
-    print(f"{titles[0]:<22}{titles[1]:>12}" + "".join(f"{title:>12}" for title in titles[2:]))
-    lines = [f"| {' | '.join(titles)} |", "|---|" + "---:|" * (len(titles) - 1)]
-    for row in measured_rows(per_table, bounces, repeats):
-        print(f"{row[0]:<22}{row[1]:>12}" + "".join(f"{cell:>12}" for cell in row[2:]), flush=True)
-        lines.append(f"| {' | '.join(row)} |")
-    if to is not None:
-        to.write_text("\n".join(lines) + "\n")
-        print(f"written to {to}")
+    show_table(
+        ["table", "harmonics", *COLUMNS, "C ratio", "AVX2 ratio"], measured_rows(per_table, bounces, repeats), to
+    )
 
 
 @main.command()
 @click.option("--per-table", default=1024, show_default=True, help="Orbits per table.")
 @click.option("--bounces", default=8192, show_default=True, help="Bounces per orbit.")
 @click.option("--repeats", default=5, show_default=True, help="Rounds that count.")
-def extras(per_table: int, bounces: int, repeats: int) -> None:
+@click.option("--to", type=click.Path(dir_okay=False, path_type=Path), help="Write the table there, as Markdown.")
+def extras(per_table: int, bounces: int, repeats: int, to: Path | None) -> None:
     """Time what orbits that are left early save, at the same error, and what periodic orbits cost."""
     print(f"{per_table} orbits of up to {bounces} bounces, least of {repeats}; seconds a table on one core")
-    titles = ("islands", "all", "left early", "ratio", "bounces", "ns each", "periods <= 8")
-    print(f"{'table':<22}" + "".join(f"{title:>13}" for title in titles))
-    for name in ("ellipse", "radial_harmonic 2", "radial_harmonic 3", "limacon", "normal_harmonic 4"):
-        table = build_table(name.split()[0], **TABLES[name])
-        s, p = section_points(table, seed=1, replicates=1, orbits=per_table)
-        found = orbit_numbers(table, s, p, bounces)
-        rivals: dict[str, Callable[[], object]] = {
-            "all": partial(orbit_numbers, table, s, p, bounces, adaptive=False),
-            "early": partial(orbit_numbers, table, s, p, bounces),
-            "resonances": partial(survey_resonances, table, 8),
-        }
-        seconds = interleaved_least(rivals, repeats)
-        used = np.asarray(found["bounces_used"])
-        cells = (
-            f"{np.mean(found['verdict'] == REGULAR_LIBRATIONAL):.0%}",
-            f"{seconds['all']:.3f}",
-            f"{seconds['early']:.3f}",
-            f"{seconds['all'] / seconds['early']:.1f}",
-            f"{used.mean():.0f}",
-            f"{seconds['early'] / used.sum() * 1e9:.0f}",
-            f"{seconds['resonances'] * 1e3:.1f} ms",
-        )
-        print(f"{name:<22}" + "".join(f"{cell:>13}" for cell in cells), flush=True)
+    titles = ["table", "islands", "all", "left early", "ratio", "bounces", "ns each", "periods <= 8"]
+    show_table(titles, saving_rows(per_table, bounces, repeats), to)
 
 
 @main.command()

@@ -73,7 +73,18 @@ def test_fixed_point_rounds_to_multiples_of_its_unit_and_drops_whole_turns():
         assert -(2**31) <= fixed(angle) < 2**31
 
 
-def test_inverse_roots_are_within_two_units_of_the_last_place():
+def test_two_whole_numbers_come_back_out_of_one_word():
+    @numba.njit
+    def there_and_back(high, low):
+        return elementary.pair_of(elementary.pair_up(high, low))
+
+    ends = [-(2**31), -1, 0, 1, 2**31 - 1]
+    for high in ends:
+        for low in ends:
+            assert there_and_back(np.int32(high), np.int32(low)) == (high, low)
+
+
+def test_inverse_roots_are_within_one_and_a_half_units_of_the_last_place():
     @numba.njit
     def inverse_root(x):
         return elementary.inverse_root(x)

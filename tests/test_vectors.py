@@ -11,7 +11,8 @@ from scanner.vectors import WIDTH, fused, how_many, put, take, where
 
 RNG = np.random.default_rng(20261202)
 SPECIAL = [0.0, -0.0, np.inf, -np.inf, np.nan, 5e-324, 1.0, -1.0]
-OPERANDS = RNG.normal(size=(3, 2 * WIDTH)) * 10.0 ** RNG.uniform(-20, 20, (3, 2 * WIDTH))
+SIZE = 64
+OPERANDS = RNG.normal(size=(3, SIZE)) * 10.0 ** RNG.uniform(-20, 20, (3, SIZE))
 for row in range(3):
     OPERANDS[row, row : row + len(SPECIAL)] = SPECIAL
 
@@ -60,14 +61,14 @@ def test_vectors_have_the_bits_of_plain_numbers(function) -> None:
         for first in range(0, rows.shape[1], WIDTH):
             put(found, 0, first, compiled(take(rows, 0, first), take(rows, 1, first), take(rows, 2, first)))
 
-    expected, found = np.empty((2, 1, OPERANDS.shape[1]))
+    expected, found = np.empty((2, 1, SIZE))
     with np.errstate(all="ignore"):
         one_by_one(OPERANDS, expected)
         by_vectors(OPERANDS, found)
     # But for the sign of what is not a number, which has no meaning.
     assert np.array_equal(found, expected, equal_nan=True)
     assert np.array_equal(np.signbit(found) | np.isnan(found), np.signbit(expected) | np.isnan(found))
-    assert np.isfinite(found).sum() > WIDTH
+    assert np.isfinite(found).sum() > SIZE // 2  # the comparison is of numbers, not of NaN with NaN
 
 
 def test_plain_numbers_and_vectors_go_where_they_are_put() -> None:
@@ -93,4 +94,10 @@ def test_how_many_counts_where_a_comparison_holds() -> None:
         return how_many(take(rows, 0, 0) > bound)
 
     rows = np.arange(float(WIDTH)).reshape(1, WIDTH)
-    assert [above(rows, bound) for bound in (-1.0, 0.0, 4.5, WIDTH - 1.0, np.nan)] == [WIDTH, WIDTH - 1, 11, 0, 0]
+    assert [above(rows, bound) for bound in (-1.0, 0.0, 4.5, WIDTH - 1.0, np.nan)] == [
+        WIDTH,
+        WIDTH - 1,
+        WIDTH - 5,
+        0,
+        0,
+    ]

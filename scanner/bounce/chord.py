@@ -65,6 +65,7 @@ from scanner.bounce.series import (
     difference_of_products,
     next_power,
     product,
+    put_term,
     raise_to_gaps,
     sum_of_products,
 )
@@ -124,8 +125,7 @@ def set_up_sums(plan: Plan, rx: float, ry: float, state: Floats, terms: Terms, f
     for i in range(plan.series.shape[0]):
         odd, even = project(plan, i, rx, ry)
         re, im = product(odd, even, take(terms.re, i, first), take(terms.im, i, first))
-        put(terms.re, i, first, re)
-        put(terms.im, i, first, im)
+        put_term(terms, i, first, re, im)
         start_3 = fused(-plan.series[i, CUBE], re, start_3)
     put(state, START_1, first, start_1)
     put(state, START_2, first, 2.0 * start_2)

@@ -66,9 +66,10 @@ from scanner.bounce.series import (
     Terms,
     difference_of_products,
     make_room,
-    next_power,
+    next_term,
     plan_here,
     product,
+    put_term,
     raise_to_gaps,
     sum_of_products,
 )
@@ -95,9 +96,7 @@ def sum_series(plan: Plan, re: float, im: float, terms: Terms, gaps: Gaps, first
     x2 = -x0
     y2 = -y0
     for i in range(1, series.shape[0]):
-        re, im = next_power(plan, gaps, i, first, re, im)
-        put(terms.re, i, first, re)
-        put(terms.im, i, first, im)
+        re, im = next_term(plan, terms, gaps, i, first, re, im)
         x0 = fused(series[i, XC], re, fused(series[i, XS], im, x0))
         y0 = fused(series[i, YC], re, fused(series[i, YS], im, y0))
         x1 = fused(series[i, X1C], re, fused(series[i, X1S], im, x1))
@@ -118,9 +117,7 @@ def sum_mirrored_series(plan: Plan, re: float, im: float, terms: Terms, gaps: Ga
     x2 = -x0
     y2 = -y0
     for i in range(1, series.shape[0]):
-        re, im = next_power(plan, gaps, i, first, re, im)
-        put(terms.re, i, first, re)
-        put(terms.im, i, first, im)
+        re, im = next_term(plan, terms, gaps, i, first, re, im)
         x0 = fused(series[i, XC], re, x0)
         y0 = fused(series[i, YS], im, y0)
         x1 = fused(series[i, X1S], im, x1)
@@ -137,8 +134,7 @@ def evaluate_boundary(
     """Sum the boundary at exp(i t), and prepare what the next chord needs to know of this end."""
     put(state, TURN_RE, first, re)
     put(state, TURN_IM, first, im)
-    put(terms.re, 0, first, re)
-    put(terms.im, 0, first, im)
+    put_term(terms, 0, first, re, im)
     raise_to_gaps(plan, re, im, gaps, first)
     if plan.mirrored:
         x0, y0, x1, y1, x2, y2 = sum_mirrored_series(plan, re, im, terms, gaps, first)

@@ -227,3 +227,20 @@ def next_power(plan: Plan, gaps: Gaps, number: int, first: int, re: float, im: f
     """Power of harmonic ``number`` from that of the one before."""
     gap = plan.gap_of[number]
     return product(re, im, take(gaps.re, gap, first), take(gaps.im, gap, first))
+
+
+@inlined
+def put_term(terms: Terms, number: int, first: int, re: float, im: float) -> None:
+    """Keep a power or a coefficient of harmonic ``number``."""
+    put(terms.re, number, first, re)
+    put(terms.im, number, first, im)
+
+
+@inlined
+def next_term(
+    plan: Plan, terms: Terms, gaps: Gaps, number: int, first: int, re: float, im: float
+) -> tuple[float, float]:
+    """Power of harmonic ``number`` from that of the one before; kept."""
+    re, im = next_power(plan, gaps, number, first, re, im)
+    put_term(terms, number, first, re, im)
+    return re, im
